@@ -1,0 +1,343 @@
+//! Building a network piece by piece, with every guarantee of [`Network`] checked on the way.
+
+use std::collections::HashSet;
+
+use super::{
+    Bank, Direction, Line, LineId, Network, Node, NodeId, NodeKind, PumpSetting, Settings,
+    ValveSetting,
+};
+use crate::fluid::Fluid;
+use crate::part::pump::{Covers, Pump, PumpModel};
+use crate::part::valve::Valve;
+use crate::part::{Part, PumpId, ValveId};
+
+/// Why a network could not be built.
+#[derive(Clone, Debug, PartialEq)]
+pub enum BuildError {
+    /// A name is used twice.
+    NameTwice(String),
+    /// A line has no part.
+    EmptyLine(String),
+    /// A line starts and ends at the same node.
+    SelfLoop(String),
+    /// A figure is not finite or out of range.
+    OutOfRange {
+        /// Of what.
+        name: String,
+        /// Which figure.
+        figure: &'static str,
+        /// Its value, SI.
+        value: f64,
+    },
+    /// An id is not from this network, or a pump or valve stands in no line or in two.
+    Foreign(String),
+    /// No reservoir, tank or outlet holds a head.
+    NoFixedHead,
+    /// More than `u32::MAX` nodes or lines.
+    TooLarge,
+}
+
+impl std::fmt::Display for BuildError {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            Self::NameTwice(name) => write!(f, "the name `{name}` is used twice"),
+            Self::EmptyLine(name) => write!(f, "line `{name}` has no part"),
+            Self::SelfLoop(name) => write!(f, "line `{name}` starts and ends at the same node"),
+            Self::OutOfRange {
+                name,
+                figure,
+                value,
+            } => {
+                write!(f, "{figure} of `{name}` is out of range: {value}")
+            }
+            Self::Foreign(name) => write!(
+                f,
+                "`{name}` refers to something that is not in this network, or twice"
+            ),
+            Self::NoFixedHead => write!(f, "no reservoir, tank or outlet holds a head"),
+            Self::TooLarge => write!(f, "the network is too large"),
+        }
+    }
+}
+
+impl std::error::Error for BuildError {}
+
+/// Collects nodes, pump models, pumps, valves and lines; [`NetworkBuilder::build`] checks them.
+///
+/// ```
+/// use dutybank::fluid::Fluid;
+/// use dutybank::network::{NetworkBuilder, NodeKind};
+/// use dutybank::part::{Part, friction::{Friction, Pipe}};
+///
+/// let fluid = Fluid::water(20.0)?;
+/// let mut net = NetworkBuilder::new(fluid, 9.80665, 101_325.0);
+/// let tower = net.node("tower", NodeKind::Reservoir { pressure: 0.0 }, 0.0, 30.0);
+/// let tap = net.node("tap", NodeKind::Point { elevation: 2.0 }, 0.004, 0.0);
+/// let friction = Friction::roughness(120.0, 0.08, 1e-4, fluid.kinematic_viscosity, 9.80665);
+/// net.line("main", tower, tap, vec![Part::Pipe(Pipe { length: 120.0, bore: 0.08, friction })]);
+/// let network = net.build()?;
+/// assert_eq!(network.lines().len(), 1);
+/// # Ok::<(), Box<dyn std::error::Error>>(())
+/// ```
+pub struct NetworkBuilder {
+    network: Network,
+}
+
+impl NetworkBuilder {
+    /// Nothing yet but the liquid, gravity (m/s2) and air pressure (absolute, Pa).
+    pub fn new(fluid: Fluid, gravity: f64, barometer: f64) -> Self {
+        Self {
+            network: Network {
+                nodes: Vec::new(),
+                lines: Vec::new(),
+                directions: Vec::new(),
+                banks: Vec::new(),
+                pumps: Vec::new(),
+                pump_lines: Vec::new(),
+                valves: Vec::new(),
+                models: Vec::new(),
+                covers: Vec::new(),
+                settings: Settings::new(),
+                fluid,
+                gravity,
+                barometer,
+            },
+        }
+    }
+
+    /// Adds a node with its draw (m3/s, at a point) and its level or surface (m, at a tank or reservoir).
+    pub fn node(
+        &mut self,
+        name: impl Into<String>,
+        kind: NodeKind,
+        draw: f64,
+        level: f64,
+    ) -> NodeId {
+        let id = NodeId(self.network.nodes.len() as u32);
+        self.network.nodes.push(Node {
+            name: name.into(),
+            kind,
+        });
+        self.network.settings.add_node(draw, level);
+        id
+    }
+
+    /// Adds a pump model; returns its position for [`Pump::model`].
+    pub fn model(&mut self, model: PumpModel) -> usize {
+        self.network.covers.push(Covers::of(&model.head));
+        self.network.models.push(model);
+        self.network.models.len() - 1
+    }
+
+    /// Adds a pump; put its id into one line as [`Part::Pump`].
+    pub fn pump(&mut self, pump: Pump, setting: PumpSetting) -> PumpId {
+        let id = PumpId(self.network.pumps.len() as u32);
+        self.network.pumps.push(pump);
+        self.network.settings.add_pump(setting);
+        id
+    }
+
+    /// Adds a valve; put its id into one line as [`Part::Valve`].
+    pub fn valve(&mut self, valve: Valve, setting: ValveSetting) -> ValveId {
+        let id = ValveId(self.network.valves.len() as u32);
+        self.network.valves.push(valve);
+        self.network.settings.add_valve(setting);
+        id
+    }
+
+    /// Adds a line.
+    pub fn line(
+        &mut self,
+        name: impl Into<String>,
+        from: NodeId,
+        to: NodeId,
+        parts: Vec<Part>,
+    ) -> LineId {
+        let id = LineId(self.network.lines.len() as u32);
+        self.network.lines.push(Line {
+            name: name.into(),
+            from,
+            to,
+            parts,
+        });
+        id
+    }
+
+    /// Names lines that stand side by side as one bank.
+    pub fn bank(&mut self, name: impl Into<String>, lines: Vec<LineId>) {
+        self.network.banks.push(Bank {
+            name: name.into(),
+            lines,
+        });
+    }
+
+    /// Checks the whole.
+    ///
+    /// # Errors
+    /// The first [`BuildError`] found.
+    pub fn build(mut self) -> Result<Network, BuildError> {
+        self.check_size()?;
+        self.check_names()?;
+        self.check_nodes()?;
+        self.check_lines()?;
+        self.check_pumps()?;
+        let network = &mut self.network;
+        network.directions = network
+            .lines
+            .iter()
+            .map(|line| direction(line, &network.nodes))
+            .collect();
+        Ok(self.network)
+    }
+
+    fn check_size(&self) -> Result<(), BuildError> {
+        let limit = u32::MAX as usize / 4;
+        let fits = self.network.nodes.len() < limit && self.network.lines.len() < limit;
+        fits.then_some(()).ok_or(BuildError::TooLarge)
+    }
+
+    fn check_names(&self) -> Result<(), BuildError> {
+        fn unique<'a>(names: impl Iterator<Item = &'a String>) -> Result<(), BuildError> {
+            let mut seen = HashSet::new();
+            names
+                .map(|name| {
+                    seen.insert(name)
+                        .then_some(())
+                        .ok_or_else(|| BuildError::NameTwice(name.clone()))
+                })
+                .collect()
+        }
+        unique(self.network.nodes.iter().map(|node| &node.name))?;
+        unique(self.network.lines.iter().map(|line| &line.name))?;
+        unique(self.network.pumps.iter().map(|pump| &pump.name))?;
+        unique(self.network.models.iter().map(|model| &model.name))
+    }
+
+    fn check_nodes(&self) -> Result<(), BuildError> {
+        let network = &self.network;
+        for (id, node) in network.node_ids().zip(&network.nodes) {
+            finite(&node.name, "draw", network.settings.draw(id))?;
+            finite(&node.name, "level", network.settings.level(id))?;
+            match node.kind {
+                NodeKind::Point { elevation } | NodeKind::Outlet { elevation } => {
+                    finite(&node.name, "elevation", elevation)?;
+                }
+                NodeKind::Reservoir { pressure } => finite(&node.name, "pressure", pressure)?,
+                NodeKind::Tank { floor, pressure } => {
+                    finite(&node.name, "floor", floor)?;
+                    finite(&node.name, "pressure", pressure)?;
+                }
+            }
+        }
+        let holds_head = |node: &Node| !matches!(node.kind, NodeKind::Point { .. });
+        network
+            .nodes
+            .iter()
+            .any(holds_head)
+            .then_some(())
+            .ok_or(BuildError::NoFixedHead)
+    }
+
+    fn check_lines(&mut self) -> Result<(), BuildError> {
+        let network = &mut self.network;
+        let mut pump_lines = vec![None; network.pumps.len()];
+        let mut valve_seen = vec![false; network.valves.len()];
+        for (index, line) in network.lines.iter().enumerate() {
+            let foreign = || BuildError::Foreign(line.name.clone());
+            if line.from.index().max(line.to.index()) >= network.nodes.len() {
+                return Err(foreign());
+            }
+            if line.from == line.to {
+                return Err(BuildError::SelfLoop(line.name.clone()));
+            }
+            if line.parts.is_empty() {
+                return Err(BuildError::EmptyLine(line.name.clone()));
+            }
+            for part in &line.parts {
+                match part {
+                    Part::Pump(id) => {
+                        let place = pump_lines.get_mut(id.index()).ok_or_else(foreign)?;
+                        if place.replace(LineId(index as u32)).is_some() {
+                            return Err(foreign());
+                        }
+                    }
+                    Part::Valve(id) => {
+                        let seen = valve_seen.get_mut(id.index()).ok_or_else(foreign)?;
+                        if std::mem::replace(seen, true) {
+                            return Err(foreign());
+                        }
+                    }
+                    Part::Pipe(pipe) => {
+                        above_zero(&line.name, "length", pipe.length)?;
+                        above_zero(&line.name, "bore", pipe.bore)?;
+                    }
+                    Part::Loss(loss) | Part::CheckValve(loss) => {
+                        not_negative(&line.name, "loss", loss.r())?
+                    }
+                }
+            }
+        }
+        network.pump_lines = pump_lines
+            .into_iter()
+            .zip(&network.pumps)
+            .map(|(line, pump)| line.ok_or_else(|| BuildError::Foreign(pump.name.clone())))
+            .collect::<Result<_, _>>()?;
+        Ok(())
+    }
+
+    fn check_pumps(&self) -> Result<(), BuildError> {
+        let network = &self.network;
+        for (id, pump) in network.pump_ids().zip(&network.pumps) {
+            if pump.model >= network.models.len() {
+                return Err(BuildError::Foreign(pump.name.clone()));
+            }
+            finite(&pump.name, "elevation", pump.elevation)?;
+            let setting = network.settings.pump(id);
+            above_zero(&pump.name, "speed", setting.speed)?;
+            above_zero(&pump.name, "impeller", setting.trim)?;
+            if !(0.0..1.0).contains(&setting.wear) {
+                return Err(out_of_range(&pump.name, "wear", setting.wear));
+            }
+        }
+        Ok(())
+    }
+}
+
+/// Which way water can go, by check valves in the line and outlets at its ends.
+fn direction(line: &Line, nodes: &[Node]) -> Direction {
+    let outlet = |id: NodeId| matches!(nodes[id.index()].kind, NodeKind::Outlet { .. });
+    let forward_only = line.has_check_valve() || outlet(line.to);
+    match (forward_only, outlet(line.from)) {
+        (false, false) => Direction::Both,
+        (true, false) => Direction::Forward,
+        (false, true) => Direction::Backward,
+        (true, true) => Direction::Neither,
+    }
+}
+
+fn out_of_range(name: &str, figure: &'static str, value: f64) -> BuildError {
+    BuildError::OutOfRange {
+        name: name.to_owned(),
+        figure,
+        value,
+    }
+}
+
+fn finite(name: &str, figure: &'static str, value: f64) -> Result<(), BuildError> {
+    value
+        .is_finite()
+        .then_some(())
+        .ok_or_else(|| out_of_range(name, figure, value))
+}
+
+fn above_zero(name: &str, figure: &'static str, value: f64) -> Result<(), BuildError> {
+    (value.is_finite() && value > 0.0)
+        .then_some(())
+        .ok_or_else(|| out_of_range(name, figure, value))
+}
+
+fn not_negative(name: &str, figure: &'static str, value: f64) -> Result<(), BuildError> {
+    (value.is_finite() && value >= 0.0)
+        .then_some(())
+        .ok_or_else(|| out_of_range(name, figure, value))
+}

@@ -1,0 +1,334 @@
+//! The network: nodes, lines and what stands in them, checked and immutable; and the settings that may change.
+//!
+//! Names appear here so that answers can be told in the user's words; nothing below this module looks at them. No
+//! input or output.
+
+mod build;
+mod reach;
+mod settings;
+
+pub use build::{BuildError, NetworkBuilder};
+pub use reach::{Passage, Reach, Standing, Unreachable};
+pub use settings::{PumpSetting, Settings, ValveSetting};
+
+use crate::fluid::Fluid;
+use crate::part::pump::{Covers, Pump, PumpModel};
+use crate::part::valve::Valve;
+use crate::part::{Part, PumpId, ValveId};
+
+/// Which node of a network; handed out by the network alone.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
+pub struct NodeId(pub(crate) u32);
+
+/// Which line of a network; handed out by the network alone.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
+pub struct LineId(pub(crate) u32);
+
+impl NodeId {
+    /// Position among the network's nodes.
+    pub fn index(self) -> usize {
+        self.0 as usize
+    }
+}
+
+impl LineId {
+    /// Position among the network's lines.
+    pub fn index(self) -> usize {
+        self.0 as usize
+    }
+}
+
+/// A node: where lines meet, or where the system ends.
+#[derive(Clone, Debug)]
+pub struct Node {
+    /// The user's name for it.
+    pub name: String,
+    /// What it is.
+    pub kind: NodeKind,
+}
+
+/// What a node is. Elevations in m above the datum, pressures gauge in Pa.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum NodeKind {
+    /// Where lines meet; no storage.
+    Point {
+        /// Elevation.
+        elevation: f64,
+    },
+    /// A free surface that stays where it is (the surface is a setting).
+    Reservoir {
+        /// Gas pressure on the surface.
+        pressure: f64,
+    },
+    /// A tank; fixed at its level (a setting) in a steady solution.
+    Tank {
+        /// Elevation of the floor.
+        floor: f64,
+        /// Gas pressure on the surface.
+        pressure: f64,
+    },
+    /// Free discharge to the open air; nothing comes back in.
+    Outlet {
+        /// Elevation of the discharge.
+        elevation: f64,
+    },
+}
+
+/// A line: one flow between two nodes through its parts, in order.
+#[derive(Clone, Debug)]
+pub struct Line {
+    /// The user's name for it; a member of a bank is `bank.k`.
+    pub name: String,
+    /// First node.
+    pub from: NodeId,
+    /// Last node; flow is positive towards it.
+    pub to: NodeId,
+    /// Its parts in the order in which water flowing forward meets them; at least one.
+    pub parts: Vec<Part>,
+}
+
+impl Line {
+    /// Whether a check valve stands in the line.
+    pub fn has_check_valve(&self) -> bool {
+        self.parts
+            .iter()
+            .any(|part| matches!(part, Part::CheckValve(_)))
+    }
+
+    /// The pumps in the line, in order.
+    pub fn pumps(&self) -> impl Iterator<Item = PumpId> + '_ {
+        self.parts.iter().filter_map(|part| match part {
+            Part::Pump(id) => Some(*id),
+            _ => None,
+        })
+    }
+
+    /// The smallest bore among the line's pipes, m: where its velocity is highest.
+    pub fn narrowest_bore(&self) -> Option<f64> {
+        self.parts
+            .iter()
+            .filter_map(|part| match part {
+                Part::Pipe(pipe) => Some(pipe.bore),
+                _ => None,
+            })
+            .min_by(f64::total_cmp)
+    }
+}
+
+/// A bank: equal lines side by side.
+#[derive(Clone, Debug)]
+pub struct Bank {
+    /// The user's name for it.
+    pub name: String,
+    /// Its members.
+    pub lines: Vec<LineId>,
+}
+
+/// Which way water can go through a line.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Direction {
+    /// Both ways.
+    Both,
+    /// From `from` to `to` only.
+    Forward,
+    /// From `to` to `from` only.
+    Backward,
+    /// Neither: a check valve and an outlet face each other.
+    Neither,
+}
+
+impl Direction {
+    /// Whether forward flow can pass.
+    pub fn forward(self) -> bool {
+        matches!(self, Self::Both | Self::Forward)
+    }
+
+    /// Whether backward flow can pass.
+    pub fn backward(self) -> bool {
+        matches!(self, Self::Both | Self::Backward)
+    }
+}
+
+/// A network: names unique, each line joins two of its nodes and has a part, every figure finite and in range.
+/// Immutable; what may change is in [`Settings`].
+#[derive(Clone, Debug)]
+pub struct Network {
+    nodes: Vec<Node>,
+    lines: Vec<Line>,
+    directions: Vec<Direction>,
+    banks: Vec<Bank>,
+    pumps: Vec<Pump>,
+    pump_lines: Vec<LineId>,
+    valves: Vec<Valve>,
+    models: Vec<PumpModel>,
+    covers: Vec<Option<Covers>>,
+    settings: Settings,
+    fluid: Fluid,
+    gravity: f64,
+    barometer: f64,
+}
+
+impl Network {
+    /// Nodes in order; `nodes()[id.index()]`.
+    pub fn nodes(&self) -> &[Node] {
+        &self.nodes
+    }
+
+    /// Lines in order.
+    pub fn lines(&self) -> &[Line] {
+        &self.lines
+    }
+
+    /// Banks in order.
+    pub fn banks(&self) -> &[Bank] {
+        &self.banks
+    }
+
+    /// Pumps in order.
+    pub fn pumps(&self) -> &[Pump] {
+        &self.pumps
+    }
+
+    /// Pump models in order.
+    pub fn models(&self) -> &[PumpModel] {
+        &self.models
+    }
+
+    /// A node.
+    pub fn node(&self, id: NodeId) -> &Node {
+        &self.nodes[id.index()]
+    }
+
+    /// A line.
+    pub fn line(&self, id: LineId) -> &Line {
+        &self.lines[id.index()]
+    }
+
+    /// A pump.
+    pub fn pump(&self, id: PumpId) -> &Pump {
+        &self.pumps[id.index()]
+    }
+
+    /// A pump's model.
+    pub fn model(&self, id: PumpId) -> &PumpModel {
+        &self.models[self.pump(id).model]
+    }
+
+    /// The line a pump stands in.
+    pub fn line_of(&self, id: PumpId) -> LineId {
+        self.pump_lines[id.index()]
+    }
+
+    /// A valve.
+    pub fn valve(&self, id: ValveId) -> &Valve {
+        &self.valves[id.index()]
+    }
+
+    /// The falling stand-ins for a pump's head curve, if that droops.
+    pub fn covers(&self, id: PumpId) -> Option<&Covers> {
+        self.covers[self.pump(id).model].as_ref()
+    }
+
+    /// Which way water can go through a line, by its check valves and the outlets at its ends.
+    pub fn direction(&self, id: LineId) -> Direction {
+        self.directions[id.index()]
+    }
+
+    /// All node ids.
+    pub fn node_ids(&self) -> impl ExactSizeIterator<Item = NodeId> + use<> {
+        (0..self.nodes.len() as u32).map(NodeId)
+    }
+
+    /// All line ids.
+    pub fn line_ids(&self) -> impl ExactSizeIterator<Item = LineId> + use<> {
+        (0..self.lines.len() as u32).map(LineId)
+    }
+
+    /// All pump ids.
+    pub fn pump_ids(&self) -> impl ExactSizeIterator<Item = PumpId> + use<> {
+        (0..self.pumps.len() as u32).map(PumpId)
+    }
+
+    /// The node of that name.
+    pub fn find_node(&self, name: &str) -> Option<NodeId> {
+        self.nodes
+            .iter()
+            .position(|node| node.name == name)
+            .map(|i| NodeId(i as u32))
+    }
+
+    /// The line of that name.
+    pub fn find_line(&self, name: &str) -> Option<LineId> {
+        self.lines
+            .iter()
+            .position(|line| line.name == name)
+            .map(|i| LineId(i as u32))
+    }
+
+    /// The pump of that name.
+    pub fn find_pump(&self, name: &str) -> Option<PumpId> {
+        self.pumps
+            .iter()
+            .position(|pump| pump.name == name)
+            .map(|i| PumpId(i as u32))
+    }
+
+    /// The settings as the network was built.
+    pub fn settings(&self) -> &Settings {
+        &self.settings
+    }
+
+    /// The liquid.
+    pub fn fluid(&self) -> &Fluid {
+        &self.fluid
+    }
+
+    /// Acceleration of gravity, m/s2.
+    pub fn gravity(&self) -> f64 {
+        self.gravity
+    }
+
+    /// Air pressure, absolute, Pa.
+    pub fn barometer(&self) -> f64 {
+        self.barometer
+    }
+
+    /// Whether a node is a point: no fixed head.
+    pub fn is_point(&self, id: NodeId) -> bool {
+        matches!(self.node(id).kind, NodeKind::Point { .. })
+    }
+
+    /// Total head (m above the datum) that a node is held at, or none for a point.
+    pub fn fixed_head(&self, id: NodeId, settings: &Settings) -> Option<f64> {
+        let pressure_head = |pressure: f64| pressure / (self.fluid.density * self.gravity);
+        let level = settings.level(id);
+        match self.node(id).kind {
+            NodeKind::Point { .. } => None,
+            NodeKind::Reservoir { pressure } => Some(level + pressure_head(pressure)),
+            NodeKind::Tank { floor, pressure } => Some(floor + level + pressure_head(pressure)),
+            NodeKind::Outlet { elevation } => Some(elevation),
+        }
+    }
+
+    /// Elevation at which a node's pressure is stated, m; a reservoir's is its surface.
+    pub fn elevation(&self, id: NodeId, settings: &Settings) -> f64 {
+        match self.node(id).kind {
+            NodeKind::Point { elevation } | NodeKind::Outlet { elevation } => elevation,
+            NodeKind::Reservoir { .. } => settings.level(id),
+            NodeKind::Tank { floor, .. } => floor,
+        }
+    }
+
+    /// Gauge pressure (Pa) at a node whose total head is `head`.
+    ///
+    /// p = rho g (head - elevation); at a reservoir its gas pressure, at a tank that at its floor, at an outlet 0.
+    pub fn pressure(&self, id: NodeId, head: f64, settings: &Settings) -> f64 {
+        match self.node(id).kind {
+            NodeKind::Reservoir { pressure } => pressure,
+            NodeKind::Outlet { .. } => 0.0,
+            NodeKind::Point { .. } | NodeKind::Tank { .. } => {
+                self.fluid.density * self.gravity * (head - self.elevation(id, settings))
+            }
+        }
+    }
+}

@@ -1,0 +1,159 @@
+//! Centrifugal pumps: a model's curves, and what they become at another speed, trim and wear.
+
+use super::curve::{Cover, Curve, CurvePoint};
+use super::quadratic::QuadraticLoss;
+use super::{HeadLaw, HeadLoss};
+
+/// A pump model: the curves of its data sheet at its own speed and full impeller.
+#[derive(Clone, Debug)]
+pub struct PumpModel {
+    /// The user's name for it.
+    pub name: String,
+    /// Speed of the curves, revolutions per second.
+    pub speed: Option<f64>,
+    /// Full impeller diameter, m.
+    pub impeller: Option<f64>,
+    /// Head over flow, m.
+    pub head: Curve,
+    /// How shaft power follows from flow.
+    pub power: PowerCurve,
+    /// NPSH required over flow, m.
+    pub npsh_required: Option<Curve>,
+    /// Flow at best efficiency, m3/s.
+    pub best_efficiency_flow: Option<f64>,
+    /// The motor.
+    pub motor: Option<Motor>,
+}
+
+/// What the data sheet gives for power.
+#[derive(Clone, Debug)]
+pub enum PowerCurve {
+    /// Neither power nor efficiency.
+    Unknown,
+    /// Efficiency over flow, as a ratio.
+    Efficiency(Curve),
+    /// Shaft power over flow for 1000 kg/m3, W.
+    Shaft(Curve),
+}
+
+/// A motor.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Motor {
+    /// Rated shaft power, W.
+    pub rated: f64,
+    /// Efficiency as a ratio; 1 where it is not given is not assumed.
+    pub efficiency: Option<f64>,
+}
+
+/// Density for which data sheets state shaft power, kg/m3.
+const DATA_SHEET_DENSITY: f64 = 1000.0;
+
+impl PumpModel {
+    /// Head at no flow, m.
+    pub fn shutoff_head(&self) -> f64 {
+        self.head.at(0.0).value
+    }
+
+    /// Last flow of the head curve, m3/s.
+    pub fn end_of_curve(&self) -> f64 {
+        self.head.domain().1
+    }
+
+    /// First flow of the head curve, m3/s.
+    pub fn start_of_curve(&self) -> f64 {
+        self.head.domain().0
+    }
+
+    /// Shaft power (W) at the model's speed, unworn, with liquid of `density` (kg/m3).
+    ///
+    /// P = rho g q H / E; at no flow its limit rho g H(0) / E'(0). None where the sheet gives no power or the
+    /// efficiency is not above zero at a flow where it has to be.
+    pub fn shaft_power(&self, q: f64, density: f64, gravity: f64) -> Option<f64> {
+        match &self.power {
+            PowerCurve::Unknown => None,
+            PowerCurve::Shaft(curve) => Some(curve.at(q).value * density / DATA_SHEET_DENSITY),
+            PowerCurve::Efficiency(curve) => {
+                let efficiency = curve.at(q);
+                // As q -> 0 with E(0) = 0, q/E -> 1/E'(0).
+                let flow_over_efficiency =
+                    if q.abs() < 1e-9 * self.end_of_curve() && efficiency.value.abs() < 1e-9 {
+                        (efficiency.slope > 0.0).then(|| 1.0 / efficiency.slope)
+                    } else {
+                        (efficiency.value > 0.0).then(|| q / efficiency.value)
+                    };
+                Some(density * gravity * self.head.at(q).value * flow_over_efficiency?)
+            }
+        }
+    }
+}
+
+/// The head a pump adds at its speed, trim and wear, as a loss: `h(q) = -(1 - wear) s2 H(q/s)`.
+///
+/// s is the speed ratio times the trim ratio, above zero.
+///
+/// # Source
+/// Affinity laws: any text on turbomachinery, e.g. Y. A. Çengel, J. M. Cimbala, Fluid Mechanics, section 14-3. Wear as
+/// head lost at unchanged shaft power: common practice, no source.
+#[derive(Clone, Copy, Debug)]
+pub struct PumpLaw<'a> {
+    /// The model's head curve.
+    pub head: &'a Curve,
+    /// Speed ratio times trim ratio.
+    pub ratio: f64,
+    /// Share of the head lost to wear, 0 to below 1.
+    pub wear: f64,
+}
+
+impl HeadLaw for PumpLaw<'_> {
+    #[inline]
+    fn loss(&self, q: f64) -> HeadLoss {
+        let s = self.ratio;
+        let CurvePoint { value, slope } = self.head.at(q / s);
+        // h = -(1-w) s2 H(q/s),  dh/dq = -(1-w) s H'(q/s)
+        let kept = (1.0 - self.wear) * s;
+        HeadLoss {
+            head: -kept * s * value,
+            slope: -kept * slope,
+        }
+    }
+}
+
+/// A pump in its line: what does not change while the network stands.
+#[derive(Clone, Debug)]
+pub struct Pump {
+    /// The user's name for it.
+    pub name: String,
+    /// Position of its model among the network's models.
+    pub model: usize,
+    /// Elevation of its inlet, m.
+    pub elevation: f64,
+    /// Whether the file gave that elevation, or it was taken from the line's first node.
+    pub elevation_given: bool,
+    /// Loss of the standing pump, where water can pass it when stopped.
+    pub when_stopped: Option<QuadraticLoss>,
+}
+
+/// The falling stand-ins of a drooping head curve; see [`Curve::falling_cover`].
+#[derive(Clone, Debug)]
+pub struct Covers {
+    upper: Curve,
+    lower: Curve,
+}
+
+impl Covers {
+    /// For a drooping curve; none where the curve falls throughout.
+    pub fn of(curve: &Curve) -> Option<Self> {
+        (!curve.rising_stretches().is_empty()).then(|| Self {
+            upper: curve.falling_cover(Cover::Upper),
+            lower: curve.falling_cover(Cover::Lower),
+        })
+    }
+
+    /// One of the two.
+    pub fn get(&self, cover: Cover) -> &Curve {
+        match cover {
+            Cover::Upper => &self.upper,
+            Cover::Lower => &self.lower,
+        }
+    }
+}

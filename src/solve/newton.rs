@@ -1,0 +1,200 @@
+//! The fast path: Newton on heads and flows together, one-way lines as a primal–dual active set.
+//!
+//! ```text
+//! line j, open:   g(q) - (h_from - h_to) = 0          residual r
+//! node i:         sum in q - sum out q - draw = 0     residual e
+//! ```
+//!
+//! A Newton step changes an open line's flow by `dq = y (dh_from - dh_to - r)`, y = 1/g'(q). Put into the node balances, this
+//! leaves a symmetric positive definite system in the changes of head:
+//!
+//! ```text
+//! sum_j y (dh_i - dh_other) = e_i + sum_out y r - sum_in y r
+//! ```
+//!
+//! Both are solved for as changes, never as new values: flows then meet the (linear) node balances to rounding even
+//! where a tiny slope turns the rounding of a head into a large flow.
+//!
+//! A one-way line that would flow against its sense is shut, and opens again when the head along it exceeds the loss at
+//! no flow: the active set of the complementarity problem, not a rule of thumb about valves.
+//!
+//! # Source
+//! E. Todini, S. Pilati, "A gradient method for the analysis of pipe networks" (1987); M. Hintermüller, K. Ito, K. Kunisch, "The
+//! primal-dual active set strategy as a semismooth Newton method", SIAM J. Optim. 13, 2002.
+
+use super::system::{State, System};
+use super::tolerance::{HEAD, SLOPE_FLOOR, flow_tolerance};
+
+/// How the iterations ended.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Outcome {
+    Converged,
+    Stalled,
+}
+
+/// Iterations done, and factorisations.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub(super) struct Effort {
+    pub iterations: u32,
+    pub factorisations: u32,
+}
+
+/// Scratch of the fast path.
+pub(super) struct Newton {
+    residual: Vec<f64>,
+    conductance: Vec<f64>,
+    /// Per node: imbalance, then right side.
+    imbalance: Vec<f64>,
+    /// Per unknown.
+    step: Vec<f64>,
+}
+
+impl Newton {
+    pub fn new(system: &System) -> Self {
+        let unknowns = system.free.iter().flatten().count();
+        Self {
+            residual: vec![0.0; system.roles.len()],
+            conductance: vec![0.0; system.roles.len()],
+            imbalance: vec![0.0; system.held.len()],
+            step: vec![0.0; unknowns],
+        }
+    }
+
+    /// Iterates from `state` until both residuals are within tolerance and no one-way line changed.
+    pub fn solve(
+        &mut self,
+        system: &mut System,
+        state: &mut State,
+        limit: u32,
+        effort: &mut Effort,
+    ) -> Outcome {
+        let mut settled = true;
+        for _ in 0..limit {
+            effort.iterations += 1;
+            let worst = self.evaluate(system, state);
+            if !worst.is_finite() {
+                return Outcome::Stalled;
+            }
+            if worst <= 1.0 && settled {
+                return Outcome::Converged;
+            }
+            self.assemble(system, state);
+            effort.factorisations += 1;
+            if !system.factor.factorise() {
+                return Outcome::Stalled;
+            }
+            system.factor.solve(&mut self.step);
+            settled = self.advance(system, state);
+        }
+        Outcome::Stalled
+    }
+
+    /// Residuals and conductances at `state`; returns the worst residual over its tolerance.
+    fn evaluate(&mut self, system: &System, state: &State) -> f64 {
+        let mut worst_head: f64 = 0.0;
+        let mut largest_flow: f64 = 0.0;
+        for (imbalance, draw) in self.imbalance.iter_mut().zip(&system.draws) {
+            *imbalance = -draw;
+        }
+        for &line in &system.live {
+            let line = line as usize;
+            if state.shut[line] {
+                continue;
+            }
+            let q = state.flows[line];
+            let loss = system.loss(line, q);
+            let (from, to) = system.ends[line];
+            let (above, below) = (state.heads[from as usize], state.heads[to as usize]);
+            let r = loss.head - (above - below);
+            self.residual[line] = r;
+            // A law that is flat at no flow would leave the system singular there.
+            self.conductance[line] = 1.0 / loss.slope.max(SLOPE_FLOOR);
+            let scale =
+                HEAD.absolute + HEAD.relative * loss.head.abs().max(above.abs()).max(below.abs());
+            worst_head = worst_head.max(r.abs() / scale);
+            largest_flow = largest_flow.max(q.abs());
+            self.imbalance[from as usize] -= q;
+            self.imbalance[to as usize] += q;
+            // `max` passes a NaN over
+            if r.is_nan() {
+                return f64::NAN;
+            }
+        }
+        let mut worst_flow: f64 = 0.0;
+        for (imbalance, free) in self.imbalance.iter().zip(&system.free) {
+            if free.is_some() {
+                worst_flow = worst_flow.max(imbalance.abs());
+            }
+        }
+        worst_head.max(worst_flow / flow_tolerance(largest_flow))
+    }
+
+    fn assemble(&mut self, system: &mut System, state: &State) {
+        let factor = &mut system.factor;
+        factor.clear();
+        self.step.fill(0.0);
+        for (node, free) in system.free.iter().enumerate() {
+            if let Some(i) = *free {
+                self.step[i as usize] = self.imbalance[node];
+            }
+        }
+        for &line in &system.live {
+            let line = line as usize;
+            if state.shut[line] {
+                continue;
+            }
+            let y = self.conductance[line];
+            let yr = y * self.residual[line];
+            let (from, to) = system.ends[line];
+            let (a, b) = (system.free[from as usize], system.free[to as usize]);
+            if let Some(i) = a {
+                factor.add_diagonal(i, y);
+                self.step[i as usize] += yr;
+            }
+            if let Some(i) = b {
+                factor.add_diagonal(i, y);
+                self.step[i as usize] -= yr;
+            }
+            if let (Some(_), Some(_), Some(slot)) = (a, b, system.slots[line]) {
+                factor.add(slot, -y);
+            }
+        }
+    }
+
+    /// Takes the step; true if no one-way line changed.
+    fn advance(&mut self, system: &System, state: &mut State) -> bool {
+        for (node, head) in state.heads.iter_mut().enumerate() {
+            if let Some(i) = system.free[node] {
+                *head += self.step[i as usize];
+            }
+        }
+        let change = |node: u32| system.free[node as usize].map_or(0.0, |i| self.step[i as usize]);
+        let mut settled = true;
+        for &line in &system.live {
+            let line = line as usize;
+            let sense = system.sense[line];
+            if state.shut[line] {
+                if system.push(state, line) > HEAD.absolute {
+                    system.open_line(state, line);
+                    settled = false;
+                }
+                continue;
+            }
+            let (from, to) = system.ends[line];
+            let old = state.flows[line];
+            let new =
+                old + self.conductance[line] * (change(from) - change(to) - self.residual[line]);
+            state.flows[line] = if sense * new >= 0.0 {
+                new
+            } else if sense * new > -1e-12 * (sense * old).max(0.0) - 1e-18 {
+                // Continuity alone makes it stand still; shutting it would leave its far end without a head.
+                0.0
+            } else {
+                state.shut[line] = true;
+                settled = false;
+                0.0
+            };
+        }
+        settled
+    }
+}

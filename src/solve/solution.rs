@@ -1,0 +1,55 @@
+//! The answer: heads, flows and states that met their certificate.
+
+use super::certificate::Balance;
+use crate::network::{LineId, NodeId};
+
+/// What a line does.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Default)]
+pub enum LineState {
+    /// A valve in it is shut.
+    Closed,
+    /// A pump in it is stopped and lets nothing pass.
+    Stopped,
+    /// Held shut by its check valve, or it leads to an outlet that the water does not reach.
+    Checked,
+    /// None of these.
+    #[default]
+    Open,
+}
+
+/// A solved network. Exists only if its balances, recomputed from the answer, met the tolerance.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct Solution {
+    pub(super) heads: Vec<f64>,
+    pub(super) flows: Vec<f64>,
+    pub(super) states: Vec<LineState>,
+    pub(super) balance: Balance,
+}
+
+impl Solution {
+    /// Total head at a node, m above the datum; none at a node that no fixed head can reach.
+    pub fn head(&self, node: NodeId) -> Option<f64> {
+        let head = self.heads[node.index()];
+        (!head.is_nan()).then_some(head)
+    }
+
+    /// Flow in a line, m3/s, positive from its `from` to its `to`.
+    pub fn flow(&self, line: LineId) -> f64 {
+        self.flows[line.index()]
+    }
+
+    /// What a line does.
+    pub fn state(&self, line: LineId) -> LineState {
+        self.states[line.index()]
+    }
+
+    /// Flows of all lines, one per line, m3/s.
+    pub fn flows(&self) -> &[f64] {
+        &self.flows
+    }
+
+    /// How good the answer is.
+    pub fn balance(&self) -> &Balance {
+        &self.balance
+    }
+}

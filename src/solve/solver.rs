@@ -1,0 +1,296 @@
+//! The solver: the two paths in their order, and the answer that comes of them.
+
+use super::certain::Certain;
+use super::certificate::{Balance, certify};
+use super::newton::{Effort, Newton, Outcome};
+use super::solution::{LineState, Solution};
+use super::system::{Role, State, System};
+use crate::network::{LineId, Network, NodeId, Passage, Settings, Standing, Unreachable};
+use crate::part::curve::Cover;
+
+/// Why there is no answer.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum SolveError {
+    /// A draw that no water reaches, or an inflow that has nowhere to go.
+    Unreachable(Unreachable),
+    /// The best state found does not balance along a line.
+    LineUnbalanced {
+        /// Where.
+        line: LineId,
+        /// By how much, m.
+        by: f64,
+    },
+    /// The best state found does not balance at a node.
+    NodeUnbalanced {
+        /// Where.
+        node: NodeId,
+        /// By how much, m3/s.
+        by: f64,
+    },
+}
+
+impl SolveError {
+    /// The message in the user's names.
+    pub fn message(&self, network: &Network) -> String {
+        match *self {
+            Self::Unreachable(Unreachable { node, draw }) if draw > 0.0 => {
+                format!(
+                    "no water can reach node `{}`, which draws {:.6} m3/s",
+                    network.node(node).name,
+                    draw
+                )
+            }
+            Self::Unreachable(Unreachable { node, draw }) => {
+                format!(
+                    "the inflow of {:.6} m3/s at node `{}` has nowhere to go",
+                    -draw,
+                    network.node(node).name
+                )
+            }
+            Self::LineUnbalanced { line, by } => {
+                format!(
+                    "no balance was found: line `{}` is off by {by:.3e} m",
+                    network.line(line).name
+                )
+            }
+            Self::NodeUnbalanced { node, by } => {
+                format!(
+                    "no balance was found: node `{}` is off by {by:.3e} m3/s",
+                    network.node(node).name
+                )
+            }
+        }
+    }
+}
+
+impl std::fmt::Display for SolveError {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        match self {
+            Self::Unreachable(at) => write!(
+                f,
+                "a draw of {} m3/s at node {} cannot be met",
+                at.draw,
+                at.node.index()
+            ),
+            Self::LineUnbalanced { line, by } => {
+                write!(f, "line {} is off balance by {by:e} m", line.index())
+            }
+            Self::NodeUnbalanced { node, by } => {
+                write!(f, "node {} is off balance by {by:e} m3/s", node.index())
+            }
+        }
+    }
+}
+
+impl std::error::Error for SolveError {}
+
+/// Solves one network again and again. Everything that depends on the network alone is done in [`Solver::new`]; a solve
+/// writes numbers only and allocates nothing.
+pub struct Solver<'n> {
+    system: System<'n>,
+    newton: Newton,
+    certain: Certain,
+    state: State,
+    solution: Solution,
+    scratch: Vec<f64>,
+    solved: bool,
+}
+
+/// Iterations after which the fast path is given up.
+const FAST_LIMIT: u32 = 40;
+
+impl<'n> Solver<'n> {
+    /// For one network.
+    pub fn new(network: &'n Network) -> Self {
+        let system = System::new(network);
+        let state = system.state();
+        let (n, m) = (state.heads.len(), state.flows.len());
+        Self {
+            newton: Newton::new(&system),
+            certain: Certain::new(&system),
+            state,
+            solution: Solution {
+                heads: vec![f64::NAN; n],
+                flows: vec![0.0; m],
+                states: vec![LineState::Open; m],
+                balance: Balance::default(),
+            },
+            scratch: vec![0.0; n],
+            system,
+            solved: false,
+        }
+    }
+
+    /// The network.
+    pub fn network(&self) -> &'n Network {
+        self.system.network
+    }
+
+    /// Solves from a cold start: the same settings give the same bits, whatever was solved before.
+    ///
+    /// # Errors
+    /// See [`SolveError`].
+    pub fn solve(&mut self, settings: &Settings) -> Result<&Solution, SolveError> {
+        self.solved = false;
+        self.run(settings)
+    }
+
+    /// Solves starting from the last answer, which is quicker when little has changed; equal to [`Self::solve`] within the
+    /// tolerances.
+    ///
+    /// # Errors
+    /// See [`SolveError`].
+    pub fn resolve(&mut self, settings: &Settings) -> Result<&Solution, SolveError> {
+        self.run(settings)
+    }
+
+    /// Every balance found near: one where all head curves fall; where a running pump's curve droops, also the one with the
+    /// larger or smaller flow if there is such, the larger first.
+    ///
+    /// # Errors
+    /// The error of the first, if none was found.
+    pub fn balances(&mut self, settings: &Settings) -> Result<Vec<Solution>, SolveError> {
+        let network = self.network();
+        let droops = network
+            .pump_ids()
+            .any(|pump| settings.pump(pump).running && network.covers(pump).is_some());
+        if !droops {
+            return Ok(vec![self.solve(settings)?.clone()]);
+        }
+        let mut found: Vec<Solution> = Vec::new();
+        let mut failure = None;
+        for cover in [Some(Cover::Upper), Some(Cover::Lower), None] {
+            match self.from_cover(settings, cover) {
+                Ok(solution) => {
+                    if !found.iter().any(|other| same_flows(other, &solution)) {
+                        found.push(solution);
+                    }
+                }
+                Err(error) => failure = failure.or(Some(error)),
+            }
+            if cover == Some(Cover::Lower) && !found.is_empty() {
+                break;
+            }
+        }
+        match failure {
+            Some(error) if found.is_empty() => Err(error),
+            _ => Ok(found),
+        }
+    }
+
+    /// Solves with falling stand-ins first, then from there with the plain curves.
+    fn from_cover(
+        &mut self,
+        settings: &Settings,
+        cover: Option<Cover>,
+    ) -> Result<Solution, SolveError> {
+        self.prepare(settings)?;
+        self.system.cold_start(&mut self.state);
+        let mut effort = Effort::default();
+        if cover.is_some() {
+            self.system.laws.set(self.system.network, settings, cover);
+            self.iterate(&mut effort);
+            self.system.laws.set(self.system.network, settings, None);
+        }
+        self.finish(effort).cloned()
+    }
+
+    fn prepare(&mut self, settings: &Settings) -> Result<(), SolveError> {
+        let prepared = self.system.prepare(settings, &mut self.state);
+        // What was solved before no longer fits the layout if this failed half-way.
+        self.solved &= prepared.is_ok();
+        prepared.map_err(SolveError::Unreachable)
+    }
+
+    fn run(&mut self, settings: &Settings) -> Result<&Solution, SolveError> {
+        self.prepare(settings)?;
+        if std::mem::take(&mut self.solved) {
+            self.system.warm_start(&mut self.state);
+        } else {
+            self.system.cold_start(&mut self.state);
+        }
+        self.finish(Effort::default())
+    }
+
+    /// Fast path, and where that stalls the certain one; true if the certain one was needed.
+    fn iterate(&mut self, effort: &mut Effort) -> bool {
+        let Self {
+            system,
+            newton,
+            certain,
+            state,
+            ..
+        } = self;
+        if newton.solve(system, state, FAST_LIMIT, effort) == Outcome::Converged {
+            return false;
+        }
+        system.cold_start(state);
+        certain.approach(system, state, effort);
+        newton.solve(system, state, 2 * FAST_LIMIT, effort);
+        true
+    }
+
+    fn finish(&mut self, mut effort: Effort) -> Result<&Solution, SolveError> {
+        let certain_path = self.iterate(&mut effort);
+        self.system.settle(&mut self.state);
+        let balance = certify(&self.system, &self.state, &mut self.scratch)?;
+        self.solved = true;
+        self.solution.balance = Balance {
+            iterations: effort.iterations,
+            factorisations: effort.factorisations,
+            certain_path,
+            ..balance
+        };
+        self.report();
+        Ok(&self.solution)
+    }
+
+    /// Puts the state into the answer: heads that mean nothing are left out, states are named.
+    fn report(&mut self) {
+        let Self {
+            system,
+            state,
+            solution,
+            ..
+        } = self;
+        let network = system.network;
+        for (node, head) in network.node_ids().zip(&mut solution.heads) {
+            let floating = system.floats(node);
+            let means_nothing = match system.reach.standing(node) {
+                Standing::Unserved => !system.fixed(node),
+                Standing::Joined => floating,
+                Standing::Blind => false,
+            };
+            *head = if means_nothing {
+                f64::NAN
+            } else {
+                state.heads[node.index()]
+            };
+        }
+        solution.flows.copy_from_slice(&state.flows);
+        for (line, line_state) in network.line_ids().zip(&mut solution.states) {
+            let i = line.index();
+            *line_state = match system.reach.passage(line) {
+                Passage::Closed => LineState::Closed,
+                Passage::Stopped => LineState::Stopped,
+                Passage::Open => match system.roles[i] {
+                    // one-way and standing still
+                    Role::Live if system.sense[i] != 0.0 && state.flows[i] == 0.0 => {
+                        LineState::Checked
+                    }
+                    Role::Idle if !system.holds_blind(state, i) => LineState::Checked,
+                    Role::Live | Role::Leaf | Role::Idle => LineState::Open,
+                },
+            };
+        }
+    }
+}
+
+/// Whether two answers are the same balance.
+fn same_flows(a: &Solution, b: &Solution) -> bool {
+    let largest = a.flows.iter().fold(0.0, |m: f64, q| m.max(q.abs()));
+    a.flows
+        .iter()
+        .zip(&b.flows)
+        .all(|(p, q)| (p - q).abs() <= 1e-6 * largest + 1e-9)
+}

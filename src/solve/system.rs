@@ -1,0 +1,375 @@
+//! The equations of one network under one set of settings, laid out for the iterations: who is unknown, which lines
+//! carry an unknown flow, and what is known without iterating.
+//!
+//! Leaves are settled by continuity alone: a node with one line in use has exactly its draw for flow, so neither its
+//! head nor its line's flow is an unknown. Stripping leaves again and again leaves the loops and the ways between held
+//! heads; only these are iterated.
+
+use super::laws::{Laws, ordinary_flow};
+use super::linear::{Factor, Slot};
+use crate::network::{
+    Direction, LineId, Network, NodeId, NodeKind, Passage, Reach, Settings, Standing, Unreachable,
+};
+use crate::part::{HeadLaw, HeadLoss};
+
+/// What a line is to the iterations.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Role {
+    /// Its flow is an unknown.
+    Live,
+    /// Its flow follows from continuity.
+    Leaf,
+    /// It carries nothing.
+    Idle,
+}
+
+/// A node settled by continuity: one line, whose other end is nearer to the unknowns.
+#[derive(Clone, Copy, Debug)]
+struct Leaf {
+    node: u32,
+    line: u32,
+    parent: u32,
+}
+
+/// Heads, flows and shut one-way lines: what the iterations write.
+#[derive(Clone, Debug)]
+pub(super) struct State {
+    /// Per node, m.
+    pub heads: Vec<f64>,
+    /// Per line, m3/s.
+    pub flows: Vec<f64>,
+    /// Per line: a live one-way line that is held shut.
+    pub shut: Vec<bool>,
+}
+
+pub(super) struct System<'n> {
+    pub network: &'n Network,
+    pub laws: Laws<'n>,
+    pub reach: Reach,
+    pub factor: Factor,
+    /// Per line, its ends.
+    pub ends: Vec<(u32, u32)>,
+    /// Per line: 0 both ways, 1 forward only, -1 backward only.
+    pub sense: Vec<f64>,
+    pub roles: Vec<Role>,
+    /// The live lines, ascending.
+    pub live: Vec<u32>,
+    /// Per node: its head does not change while iterating.
+    pub held: Vec<bool>,
+    /// Per node: its own draw, m3/s.
+    pub own_draws: Vec<f64>,
+    /// Per node: the draw that live lines must meet, leaves beyond it included, m3/s.
+    pub draws: Vec<f64>,
+    /// Per node, its place in the matrix; none where the head is fixed by kind.
+    places: Vec<Option<u32>>,
+    /// Per node, the same while its head is an unknown: not held, not a leaf.
+    pub free: Vec<Option<u32>>,
+    /// Per line: a flow in its ordinary range, in a direction that it allows.
+    pub start_flow: Vec<f64>,
+    /// Per line, its off-diagonal entry.
+    pub slots: Vec<Option<Slot>>,
+    leaves: Vec<Leaf>,
+    degree: Vec<u32>,
+    queue: Vec<u32>,
+    was_live: Vec<bool>,
+}
+
+impl<'n> System<'n> {
+    pub fn new(network: &'n Network) -> Self {
+        let (n, m) = (network.nodes().len(), network.lines().len());
+        let mut count = 0;
+        let places: Vec<Option<u32>> = network
+            .nodes()
+            .iter()
+            .map(|node| {
+                matches!(node.kind, NodeKind::Point { .. }).then(|| {
+                    count += 1;
+                    count - 1
+                })
+            })
+            .collect();
+        let ends: Vec<(u32, u32)> = network
+            .lines()
+            .iter()
+            .map(|line| (line.from.index() as u32, line.to.index() as u32))
+            .collect();
+        let pair = |&(a, b): &(u32, u32)| places[a as usize].zip(places[b as usize]);
+        let couplings: Vec<(u32, u32)> = ends.iter().filter_map(pair).collect();
+        let (factor, mut handed_out) = Factor::new(count as usize, &couplings);
+        let mut handed_out = handed_out.drain(..);
+        let slots = ends
+            .iter()
+            .map(|ends| pair(ends).and_then(|_| handed_out.next()))
+            .collect();
+        let sense = network
+            .line_ids()
+            .map(|line| match network.direction(line) {
+                Direction::Both | Direction::Neither => 0.0,
+                Direction::Forward => 1.0,
+                Direction::Backward => -1.0,
+            })
+            .collect();
+        Self {
+            network,
+            laws: Laws::new(network),
+            reach: Reach::new(network),
+            factor,
+            ends,
+            sense,
+            roles: vec![Role::Idle; m],
+            live: Vec::with_capacity(m),
+            held: vec![false; n],
+            own_draws: vec![0.0; n],
+            draws: vec![0.0; n],
+            free: places.clone(),
+            places,
+            start_flow: vec![0.0; m],
+            slots,
+            leaves: Vec::with_capacity(n),
+            degree: vec![0; n],
+            queue: Vec::with_capacity(n),
+            was_live: vec![false; m],
+        }
+    }
+
+    /// A state to hold this system's answers.
+    pub fn state(&self) -> State {
+        let (n, m) = (self.held.len(), self.roles.len());
+        State {
+            heads: vec![0.0; n],
+            flows: vec![0.0; m],
+            shut: vec![false; m],
+        }
+    }
+
+    /// Lays the equations out for these settings and puts what is known into `state`. Allocates nothing.
+    ///
+    /// # Errors
+    /// A draw or inflow that no flow can satisfy.
+    pub fn prepare(&mut self, settings: &Settings, state: &mut State) -> Result<(), Unreachable> {
+        self.reach.update(self.network, settings)?;
+        self.laws.set(self.network, settings, None);
+        for node in self.network.node_ids() {
+            let head = self.network.fixed_head(node, settings);
+            self.held[node.index()] = head.is_some();
+            let draw = if head.is_some() {
+                0.0
+            } else {
+                settings.draw(node)
+            };
+            self.own_draws[node.index()] = draw;
+            self.draws[node.index()] = draw;
+            if let Some(head) = head {
+                state.heads[node.index()] = head;
+            }
+        }
+        // A set of nodes without a held head is solved relative to its first node.
+        for ground in self.reach.floating() {
+            self.held[ground.index()] = true;
+            state.heads[ground.index()] = 0.0;
+        }
+        self.strip_leaves(state);
+        for (line, start) in self.start_flow.iter_mut().enumerate() {
+            let flow = ordinary_flow(self.network, settings, line);
+            *start = if self.sense[line] < 0.0 { -flow } else { flow };
+        }
+        Ok(())
+    }
+
+    fn strip_leaves(&mut self, state: &mut State) {
+        self.degree.fill(0);
+        for (i, &(from, to)) in self.ends.iter().enumerate() {
+            self.was_live[i] = self.roles[i] == Role::Live;
+            let used = self.reach.in_use(self.network, LineId(i as u32));
+            self.roles[i] = if used { Role::Live } else { Role::Idle };
+            if used {
+                self.degree[from as usize] += 1;
+                self.degree[to as usize] += 1;
+            } else {
+                state.flows[i] = 0.0;
+                state.shut[i] = false;
+            }
+        }
+        self.leaves.clear();
+        self.queue.clear();
+        let is_leaf = |degree: &[u32], held: &[bool], node: usize| degree[node] == 1 && !held[node];
+        self.queue.extend(
+            (0..self.held.len() as u32).filter(|&i| is_leaf(&self.degree, &self.held, i as usize)),
+        );
+        while let Some(node) = self.queue.pop() {
+            if self.degree[node as usize] != 1 {
+                continue;
+            }
+            let only = self
+                .reach
+                .lines_at(NodeId(node))
+                .find(|(line, _)| self.roles[line.index()] == Role::Live);
+            let Some((line, parent)) = only else { continue };
+            let (line, parent) = (line.index(), parent.index());
+            self.roles[line] = Role::Leaf;
+            state.shut[line] = false;
+            // continuity: the line brings the leaf exactly what it draws
+            let brings = self.draws[node as usize];
+            state.flows[line] = if self.ends[line].1 == node {
+                brings
+            } else {
+                -brings
+            };
+            self.draws[parent] += brings;
+            self.degree[node as usize] = 0;
+            self.degree[parent] -= 1;
+            self.leaves.push(Leaf {
+                node,
+                line: line as u32,
+                parent: parent as u32,
+            });
+            if is_leaf(&self.degree, &self.held, parent) {
+                self.queue.push(parent as u32);
+            }
+        }
+        self.live.clear();
+        self.live
+            .extend((0..self.roles.len() as u32).filter(|&i| self.roles[i as usize] == Role::Live));
+        for (node, free) in self.free.iter_mut().enumerate() {
+            *free = self.places[node].filter(|_| !self.held[node] && self.degree[node] > 0);
+        }
+    }
+
+    /// A start when nothing is known: ordinary flows, all lines open, heads amid the held ones.
+    pub fn cold_start(&self, state: &mut State) {
+        let (mut sum, mut count) = (0.0, 0.0);
+        for (head, _) in state
+            .heads
+            .iter()
+            .zip(&self.held)
+            .filter(|(_, held)| **held)
+        {
+            sum += head;
+            count += 1.0;
+        }
+        let middle = if count > 0.0 { sum / count } else { 0.0 };
+        for (head, _) in state
+            .heads
+            .iter_mut()
+            .zip(&self.held)
+            .filter(|(_, held)| !**held)
+        {
+            *head = middle;
+        }
+        for &line in &self.live {
+            self.open_line(state, line as usize);
+        }
+    }
+
+    /// A start from the last answer; lines that were not live then get their ordinary flow.
+    pub fn warm_start(&self, state: &mut State) {
+        for &line in self
+            .live
+            .iter()
+            .filter(|&&line| !self.was_live[line as usize])
+        {
+            self.open_line(state, line as usize);
+        }
+    }
+
+    /// Opens a line at its ordinary flow.
+    pub fn open_line(&self, state: &mut State, line: usize) {
+        state.shut[line] = false;
+        state.flows[line] = self.start_flow[line];
+    }
+
+    #[inline]
+    pub fn loss(&self, line: usize, q: f64) -> HeadLoss {
+        self.laws.line(line).loss(q)
+    }
+
+    /// Head difference along a line, from `from` to `to`.
+    #[inline]
+    pub fn drop(&self, state: &State, line: usize) -> f64 {
+        let (from, to) = self.ends[line];
+        state.heads[from as usize] - state.heads[to as usize]
+    }
+
+    /// How far the head along a shut one-way line stands above the loss at which it would open; negative holds it shut.
+    pub fn push(&self, state: &State, line: usize) -> f64 {
+        self.sense[line] * (self.drop(state, line) - self.loss(line, 0.0).head)
+    }
+
+    /// Whether a node's head is held by what it is.
+    pub fn fixed(&self, node: NodeId) -> bool {
+        !self.network.is_point(node)
+    }
+
+    /// Whether a node belongs to a set that no fixed head is joined to.
+    pub fn floats(&self, node: NodeId) -> bool {
+        self.reach.floats(node)
+    }
+
+    /// Heads of the leaves, from the unknowns outwards, and of blind sets, from what holds them.
+    pub fn settle(&self, state: &mut State) {
+        self.settle_leaves(state);
+        // A blind set was solved relative to its first node. Its head is the highest that a way in can hold; a set fed
+        // by another follows it, so go round until nothing moves.
+        let blind = |node: NodeId| self.reach.standing(node) == Standing::Blind;
+        for _ in 0..self.reach.floating().filter(|n| blind(*n)).count() {
+            let mut moved = false;
+            for first in self.reach.floating().filter(|n| blind(*n)) {
+                moved |= self.lift(state, first);
+            }
+            if !moved {
+                break;
+            }
+        }
+    }
+
+    fn settle_leaves(&self, state: &mut State) {
+        for leaf in self.leaves.iter().rev() {
+            let line = leaf.line as usize;
+            let loss = self.loss(line, state.flows[line]).head;
+            let towards = self.ends[line].1 == leaf.node;
+            // h(from) - h(to) = g(q)
+            let fall = if towards { -loss } else { loss };
+            state.heads[leaf.node as usize] = state.heads[leaf.parent as usize] + fall;
+        }
+    }
+
+    /// Whether an idle line is the one whose head at no flow holds a blind set up: open, though nothing moves.
+    pub fn holds_blind(&self, state: &State, line: usize) -> bool {
+        let (from, to) = self.ends[line];
+        let downstream = NodeId(if self.sense[line] > 0.0 { to } else { from });
+        let blind = self.reach.standing(downstream) == Standing::Blind && self.sense[line] != 0.0;
+        blind && self.push(state, line).abs() <= 1e-9
+    }
+
+    /// Shifts a blind set to the highest head that a line into it can hold at no flow; true if that moved it.
+    fn lift(&self, state: &mut State, first: NodeId) -> bool {
+        let component = self.reach.component(first);
+        let inside = |node: u32| self.reach.component(NodeId(node)) == component;
+        let mut shift = f64::NEG_INFINITY;
+        for (line, &(from, to)) in self.ends.iter().enumerate() {
+            let open = self.reach.passage(LineId(line as u32)) == Passage::Open;
+            if !open || self.sense[line] == 0.0 || inside(from) == inside(to) {
+                continue;
+            }
+            let (upstream, downstream) = if self.sense[line] > 0.0 {
+                (from, to)
+            } else {
+                (to, from)
+            };
+            if inside(downstream) && self.reach.standing(NodeId(upstream)) != Standing::Unserved {
+                let lost = self.sense[line] * self.loss(line, 0.0).head;
+                shift = shift
+                    .max(state.heads[upstream as usize] - lost - state.heads[downstream as usize]);
+            }
+        }
+        if !shift.is_finite() || shift.abs() <= 1e-13 * (1.0 + state.heads[first.index()].abs()) {
+            return false;
+        }
+        for node in 0..self.held.len() as u32 {
+            if inside(node) {
+                state.heads[node as usize] += shift;
+            }
+        }
+        true
+    }
+}

@@ -1,0 +1,33 @@
+//! How good is good enough: the tolerances of the iterations and of the certificate, in one place.
+
+/// A tolerance on heads: `absolute + relative x (size of the heads at hand)`, m.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct HeadTolerance {
+    pub absolute: f64,
+    pub relative: f64,
+}
+
+/// Iterations go on until line balances are this good.
+pub(super) const HEAD: HeadTolerance = HeadTolerance {
+    absolute: 1e-10,
+    relative: 1e-14,
+};
+
+/// The certificate asks for this; heads are promised to 1e-8 m.
+pub(super) const CERTIFIED_HEAD: HeadTolerance = HeadTolerance {
+    absolute: 1e-8,
+    relative: 1e-12,
+};
+
+/// Smallest slope (m per m3/s) that the iterations reckon with. The laws themselves stay as they are.
+pub(super) const SLOPE_FLOOR: f64 = 1e-7;
+
+/// Iterations go on until node balances are this good, m3/s.
+pub(super) fn flow_tolerance(largest_flow: f64) -> f64 {
+    1e-13 + 1e-13 * largest_flow
+}
+
+/// The certificate asks for this, m3/s: 1e-12 or 1e-10 of the flow.
+pub(super) fn certified_flow(largest_flow: f64) -> f64 {
+    f64::max(1e-12, 1e-10 * largest_flow)
+}
