@@ -1,0 +1,4 @@
+//! All integration tests in one crate.
+
+mod random;
+mod survey;
