@@ -1,1 +1,4 @@
 //! Parts.
+
+pub mod fittings;
+pub mod materials;
