@@ -69,7 +69,7 @@ impl std::error::Error for BuildError {}
 /// use dutybank::network::{NetworkBuilder, NodeKind};
 /// use dutybank::part::{Part, friction::{Friction, Pipe}};
 ///
-/// let fluid = Fluid::water(20.0)?;
+/// let fluid = Fluid::water(293.15)?;
 /// let mut net = NetworkBuilder::new(fluid, 9.80665, 101_325.0);
 /// let tower = net.node("tower", NodeKind::Reservoir { pressure: 0.0 }, 0.0, 30.0);
 /// let tap = net.node("tap", NodeKind::Point { elevation: 2.0 }, 0.004, 0.0);

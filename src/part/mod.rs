@@ -4,7 +4,9 @@
 //! [`HeadLaw`]; the laws of one line add up to a law of the same kind.
 
 pub mod curve;
+pub mod fittings;
 pub mod friction;
+pub mod materials;
 pub mod pump;
 pub mod quadratic;
 pub mod valve;

@@ -64,7 +64,7 @@ pub fn network(seed: u64, lines: usize, range: Range) -> Network {
     let fluid = if wild && random.chance(0.2) {
         Fluid { density: 880.0, kinematic_viscosity: random.decades(1e-5, 1e-3), vapour_pressure: Some(10.0) }
     } else {
-        Fluid::water(random.between(5.0, 60.0)).unwrap()
+        Fluid::water(random.between(278.15, 333.15)).unwrap()
     };
     let mut build = Maker { random, wild, fluid, net: NetworkBuilder::new(fluid, GRAVITY, 101_325.0), lines: 0 };
     build.nodes_and_lines(lines);
