@@ -4,6 +4,7 @@
 //! input or output.
 
 mod build;
+mod feasible;
 mod reach;
 mod settings;
 

@@ -23,8 +23,10 @@ use super::newton::Effort;
 use super::system::{State, System};
 use super::tolerance::flow_tolerance;
 
-/// Slope (m per m3/s) added to the solver's copy of every law here, so that a law flat at no flow can be inverted.
-const EXTRA_SLOPE: f64 = 1e-6;
+/// Slopes (m per m3/s) added to the solver's copy of every law, one after the other: a large one makes the problem
+/// nearly linear, each smaller one starts from the answer to the one before. The last leaves a law that is flat at no
+/// flow just invertible.
+const EXTRA_SLOPES: [f64; 6] = [1e4, 1e2, 1.0, 1e-2, 1e-4, 1e-6];
 
 /// Scratch of the certain path.
 pub(super) struct Certain {
@@ -36,6 +38,9 @@ pub(super) struct Certain {
     step: Vec<f64>,
     /// Heads from which the line search starts.
     base: Vec<f64>,
+    extra_slope: f64,
+    /// Regularisation over imbalance, 1/m: the inverse of the head over which it alone would make the imbalance up.
+    damping: f64,
 }
 
 impl Certain {
@@ -45,13 +50,24 @@ impl Certain {
             conductance: vec![0.0; system.roles.len()],
             step: vec![0.0; system.free.iter().flatten().count()],
             base: vec![0.0; system.held.len()],
+            extra_slope: 0.0,
+            damping: 0.0,
         }
     }
 
     /// Brings `state` close to the minimum: heads, flows and which one-way lines are shut. The fast path, started from
     /// there with the plain laws, finishes.
     pub fn approach(&mut self, system: &mut System, state: &mut State, effort: &mut Effort) {
-        const LIMIT: u32 = 200;
+        self.damping = 1e-3;
+        for extra in EXTRA_SLOPES {
+            self.extra_slope = extra;
+            self.minimise(system, state, effort);
+        }
+    }
+
+    /// Newton with the present extra slope.
+    fn minimise(&mut self, system: &mut System, state: &mut State, effort: &mut Effort) {
+        const LIMIT: u32 = 50;
         let mut worst = self.evaluate(system, state);
         for _ in 0..LIMIT {
             let largest_flow = state.flows.iter().fold(0.0, |m: f64, q| m.max(q.abs()));
@@ -60,14 +76,14 @@ impl Certain {
             }
             effort.iterations += 1;
             effort.factorisations += 1;
-            if !self.direction(system, worst) {
+            if !self.direction(system, self.damping * worst) {
                 break;
             }
             self.base.copy_from_slice(&state.heads);
             let before = worst;
-            if !self.search(system, state) {
-                break;
-            }
+            let Some(length) = self.search(system, state) else { break };
+            // Heads of a system far out of scale lie far away: let steps grow, and shrink where they overshoot.
+            self.damping = (self.damping / (length * length * length)).clamp(1e-20, 1.0);
             worst = self.worst(system);
             // Rounding of the heads times the conductance is as far as this goes.
             if worst >= before && worst <= 1e-6 * (1.0 + largest_flow) {
@@ -95,7 +111,7 @@ impl Certain {
                     } else {
                         state.flows[line]
                     };
-                    invert(system, line, drop, start)
+                    invert(system, line, drop, start, self.extra_slope)
                 };
             state.flows[line] = q;
             self.conductance[line] = conductance;
@@ -121,15 +137,13 @@ impl Certain {
     }
 
     /// Newton direction with the regularisation; false if it could not be found.
-    fn direction(&mut self, system: &mut System, worst: f64) -> bool {
-        /// Head (m) over which the worst imbalance would be made up by the regularisation alone.
-        const REACH: f64 = 1000.0;
+    fn direction(&mut self, system: &mut System, regularisation: f64) -> bool {
         let factor = &mut system.factor;
         factor.clear();
         self.step.fill(0.0);
         for (slope, free) in self.slope.iter().zip(&system.free) {
             if let Some(i) = *free {
-                factor.add_diagonal(i, worst / REACH);
+                factor.add_diagonal(i, regularisation);
                 self.step[i as usize] = -slope;
             }
         }
@@ -152,11 +166,12 @@ impl Certain {
         done
     }
 
-    /// Moves along the direction until the slope along it is at most half of what it was; false if there is no way down.
-    fn search(&mut self, system: &System, state: &mut State) -> bool {
+    /// Moves along the direction until the slope along it is at most half of what it was. Returns the length of the move
+    /// over the direction's own; none if there is no way down.
+    fn search(&mut self, system: &System, state: &mut State) -> Option<f64> {
         let start = self.slope_along(system);
         if start >= 0.0 {
-            return false;
+            return None;
         }
         let goal = 0.5 * start.abs();
         let (mut low, mut at_low) = (0.0, start);
@@ -167,7 +182,7 @@ impl Certain {
             if !slope.is_finite() {
                 high = Some((t, f64::INFINITY));
             } else if slope.abs() <= goal || (t - low).abs() <= 1e-14 * t {
-                return true;
+                return Some(t);
             } else if slope < 0.0 {
                 (low, at_low) = (t, slope);
             } else {
@@ -186,7 +201,7 @@ impl Certain {
                 }
             };
         }
-        true
+        Some(t)
     }
 
     fn try_step(&mut self, system: &System, state: &mut State, t: f64) -> f64 {
@@ -207,18 +222,18 @@ impl Certain {
 }
 
 /// The flow at which a line loses `drop`, and its derivative: bracketed Newton on the law with its extra slope.
-fn invert(system: &System, line: usize, drop: f64, start: f64) -> (f64, f64) {
+fn invert(system: &System, line: usize, drop: f64, start: f64, extra: f64) -> (f64, f64) {
     let law = |q: f64| {
         let loss = system.loss(line, q);
         // g(q) + x q - d
-        (loss.head + EXTRA_SLOPE * q - drop, loss.slope + EXTRA_SLOPE)
+        (loss.head + extra * q - drop, loss.slope + extra)
     };
     let (mut low, mut high) = (f64::NEG_INFINITY, f64::INFINITY);
     let mut q = start;
     let mut slope = 1.0;
     for _ in 0..200 {
         let (value, derivative) = law(q);
-        slope = derivative.max(EXTRA_SLOPE);
+        slope = derivative.max(extra);
         if value == 0.0 {
             break;
         }

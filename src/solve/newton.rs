@@ -32,6 +32,9 @@ pub(super) enum Outcome {
     Stalled,
 }
 
+/// Iterations without a better state after which the fast path is given up.
+const PATIENCE: u32 = 10;
+
 /// Iterations done, and factorisations.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub(super) struct Effort {
@@ -69,6 +72,8 @@ impl Newton {
         effort: &mut Effort,
     ) -> Outcome {
         let mut settled = true;
+        let mut best = f64::INFINITY;
+        let mut since_best = 0;
         for _ in 0..limit {
             effort.iterations += 1;
             let worst = self.evaluate(system, state);
@@ -77,6 +82,11 @@ impl Newton {
             }
             if worst <= 1.0 && settled {
                 return Outcome::Converged;
+            }
+            since_best = if worst < 0.9 * best { 0 } else { since_best + 1 };
+            best = best.min(worst);
+            if since_best > PATIENCE {
+                return Outcome::Stalled;
             }
             self.assemble(system, state);
             effort.factorisations += 1;

@@ -192,7 +192,7 @@ impl<'n> Solver<'n> {
             self.iterate(&mut effort);
             self.system.laws.set(self.system.network, settings, None);
         }
-        self.finish(effort).cloned()
+        self.finish(settings, effort).cloned()
     }
 
     fn prepare(&mut self, settings: &Settings) -> Result<(), SolveError> {
@@ -209,7 +209,7 @@ impl<'n> Solver<'n> {
         } else {
             self.system.cold_start(&mut self.state);
         }
-        self.finish(Effort::default())
+        self.finish(settings, Effort::default())
     }
 
     /// Fast path, and where that stalls the certain one; true if the certain one was needed.
@@ -230,10 +230,14 @@ impl<'n> Solver<'n> {
         true
     }
 
-    fn finish(&mut self, mut effort: Effort) -> Result<&Solution, SolveError> {
+    fn finish(&mut self, settings: &Settings, mut effort: Effort) -> Result<&Solution, SolveError> {
         let certain_path = self.iterate(&mut effort);
         self.system.settle(&mut self.state);
-        let balance = certify(&self.system, &self.state, &mut self.scratch)?;
+        let balance = certify(&self.system, &self.state, &mut self.scratch).map_err(|error| {
+            // Only now is it worth asking whether any flows could have done it.
+            let unsatisfiable = self.system.reach.unsatisfiable(self.system.network, settings);
+            unsatisfiable.map_or(error, SolveError::Unreachable)
+        })?;
         self.solved = true;
         self.solution.balance = Balance {
             iterations: effort.iterations,

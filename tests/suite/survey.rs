@@ -10,7 +10,7 @@ fn survey() {
         let (mut solved, mut unreachable, mut certain) = (0, 0, 0);
         let mut iterations = Vec::new();
         let mut failed = Vec::new();
-        for seed in 0..n {
+        for seed in std::env::var("SEED").ok().map_or(0..n, |s| { let s: u64 = s.parse().unwrap(); s..s+1 }) {
             let lines = 2 + (seed % 59) as usize;
             let network = random::network(seed, lines, range);
             let mut solver = Solver::new(&network);
@@ -24,6 +24,8 @@ fn survey() {
                 Err(error) => failed.push((seed, lines, error)),
             }
         }
+        let mut fast: Vec<u32> = iterations.iter().copied().filter(|i| *i < 40).collect(); fast.sort();
+        println!("fast histogram {:?}", (0..40).map(|k| fast.iter().filter(|i| **i==k).count()).collect::<Vec<_>>());
         iterations.sort();
         println!(
             "{range:?}: solved {solved} unreachable {unreachable} certain {certain} failed {} median {} p99 {} worst {}",
