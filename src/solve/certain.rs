@@ -81,7 +81,9 @@ impl Certain {
             }
             self.base.copy_from_slice(&state.heads);
             let before = worst;
-            let Some(length) = self.search(system, state) else { break };
+            let Some(length) = self.search(system, state) else {
+                break;
+            };
             // Heads of a system far out of scale lie far away: let steps grow, and shrink where they overshoot.
             self.damping = (self.damping / (length * length * length)).clamp(1e-20, 1.0);
             worst = self.worst(system);

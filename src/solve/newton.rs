@@ -32,14 +32,26 @@ pub(super) enum Outcome {
     Stalled,
 }
 
+/// Iterations after which the fast path is given up.
+const LIMIT: u32 = 80;
+
 /// Iterations without a better state after which the fast path is given up.
-const PATIENCE: u32 = 10;
+const PATIENCE: u32 = 8;
 
 /// Iterations done, and factorisations.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub(super) struct Effort {
     pub iterations: u32,
     pub factorisations: u32,
+}
+
+/// What happens to one-way lines while iterating.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum OneWay {
+    /// They shut and open as complementarity asks.
+    Free,
+    /// They stay as they are; their flows may pass through the wrong sense on the way.
+    Frozen,
 }
 
 /// Scratch of the fast path.
@@ -68,13 +80,13 @@ impl Newton {
         &mut self,
         system: &mut System,
         state: &mut State,
-        limit: u32,
+        one_way: OneWay,
         effort: &mut Effort,
     ) -> Outcome {
-        let mut settled = true;
+        let mut settled = one_way == OneWay::Frozen || shut_wrong_way(system, state);
         let mut best = f64::INFINITY;
         let mut since_best = 0;
-        for _ in 0..limit {
+        for _ in 0..LIMIT {
             effort.iterations += 1;
             let worst = self.evaluate(system, state);
             if !worst.is_finite() {
@@ -83,7 +95,11 @@ impl Newton {
             if worst <= 1.0 && settled {
                 return Outcome::Converged;
             }
-            since_best = if worst < 0.9 * best { 0 } else { since_best + 1 };
+            since_best = if worst < 0.9 * best {
+                0
+            } else {
+                since_best + 1
+            };
             best = best.min(worst);
             if since_best > PATIENCE {
                 return Outcome::Stalled;
@@ -94,7 +110,7 @@ impl Newton {
                 return Outcome::Stalled;
             }
             system.factor.solve(&mut self.step);
-            settled = self.advance(system, state);
+            settled = self.advance(system, state, one_way);
         }
         Outcome::Stalled
     }
@@ -172,7 +188,7 @@ impl Newton {
     }
 
     /// Takes the step; true if no one-way line changed.
-    fn advance(&mut self, system: &System, state: &mut State) -> bool {
+    fn advance(&mut self, system: &System, state: &mut State, one_way: OneWay) -> bool {
         for (node, head) in state.heads.iter_mut().enumerate() {
             if let Some(i) = system.free[node] {
                 *head += self.step[i as usize];
@@ -184,7 +200,7 @@ impl Newton {
             let line = line as usize;
             let sense = system.sense[line];
             if state.shut[line] {
-                if system.push(state, line) > HEAD.absolute {
+                if one_way == OneWay::Free && system.push(state, line) > HEAD.absolute {
                     system.open_line(state, line);
                     settled = false;
                 }
@@ -192,11 +208,13 @@ impl Newton {
             }
             let (from, to) = system.ends[line];
             let old = state.flows[line];
-            let new =
-                old + self.conductance[line] * (change(from) - change(to) - self.residual[line]);
-            state.flows[line] = if sense * new >= 0.0 {
+            let (y, r) = (self.conductance[line], self.residual[line]);
+            let (above, below) = (change(from), change(to));
+            let new = old + y * (above - below - r);
+            let rounding = 1e-15 * y * (above.abs() + below.abs() + r.abs()) + 1e-12 * old.abs();
+            state.flows[line] = if sense * new >= 0.0 || one_way == OneWay::Frozen {
                 new
-            } else if sense * new > -1e-12 * (sense * old).max(0.0) - 1e-18 {
+            } else if sense * new >= -rounding {
                 // Continuity alone makes it stand still; shutting it would leave its far end without a head.
                 0.0
             } else {
@@ -207,4 +225,18 @@ impl Newton {
         }
         settled
     }
+}
+
+/// Shuts one-way lines that flow against their sense; true if there was none.
+fn shut_wrong_way(system: &System, state: &mut State) -> bool {
+    let mut none = true;
+    for &line in &system.live {
+        let line = line as usize;
+        if system.sense[line] * state.flows[line] < 0.0 {
+            state.shut[line] = true;
+            state.flows[line] = 0.0;
+            none = false;
+        }
+    }
+    none
 }

@@ -2,7 +2,7 @@
 
 use super::certain::Certain;
 use super::certificate::{Balance, certify};
-use super::newton::{Effort, Newton, Outcome};
+use super::newton::{Effort, Newton, OneWay, Outcome};
 use super::solution::{LineState, Solution};
 use super::system::{Role, State, System};
 use crate::network::{LineId, Network, NodeId, Passage, Settings, Standing, Unreachable};
@@ -13,6 +13,13 @@ use crate::part::curve::Cover;
 pub enum SolveError {
     /// A draw that no water reaches, or an inflow that has nowhere to go.
     Unreachable(Unreachable),
+    /// The best state found has a head far beyond anything physical: a flow is asked of a line that cannot carry it.
+    Immense {
+        /// Where.
+        node: NodeId,
+        /// Its head, m.
+        head: f64,
+    },
     /// The best state found does not balance along a line.
     LineUnbalanced {
         /// Where.
@@ -47,6 +54,12 @@ impl SolveError {
                     network.node(node).name
                 )
             }
+            Self::Immense { node, head } => {
+                format!(
+                    "no balance within reason: the head at node `{}` would be {head:.3e} m",
+                    network.node(node).name
+                )
+            }
             Self::LineUnbalanced { line, by } => {
                 format!(
                     "no balance was found: line `{}` is off by {by:.3e} m",
@@ -72,6 +85,9 @@ impl std::fmt::Display for SolveError {
                 at.draw,
                 at.node.index()
             ),
+            Self::Immense { node, head } => {
+                write!(f, "the head at node {} would be {head:e} m", node.index())
+            }
             Self::LineUnbalanced { line, by } => {
                 write!(f, "line {} is off balance by {by:e} m", line.index())
             }
@@ -95,9 +111,6 @@ pub struct Solver<'n> {
     scratch: Vec<f64>,
     solved: bool,
 }
-
-/// Iterations after which the fast path is given up.
-const FAST_LIMIT: u32 = 40;
 
 impl<'n> Solver<'n> {
     /// For one network.
@@ -221,23 +234,24 @@ impl<'n> Solver<'n> {
             state,
             ..
         } = self;
-        if newton.solve(system, state, FAST_LIMIT, effort) == Outcome::Converged {
+        if newton.solve(system, state, OneWay::Free, effort) == Outcome::Converged {
             return false;
         }
         system.cold_start(state);
         certain.approach(system, state, effort);
-        newton.solve(system, state, 2 * FAST_LIMIT, effort);
+        // The states are known now; only where the approach ended too far off may they change once more.
+        let outcome = newton.solve(system, state, OneWay::Frozen, effort);
+        if outcome == Outcome::Stalled || !system.complementary(state) {
+            newton.solve(system, state, OneWay::Free, effort);
+        }
         true
     }
 
     fn finish(&mut self, settings: &Settings, mut effort: Effort) -> Result<&Solution, SolveError> {
         let certain_path = self.iterate(&mut effort);
         self.system.settle(&mut self.state);
-        let balance = certify(&self.system, &self.state, &mut self.scratch).map_err(|error| {
-            // Only now is it worth asking whether any flows could have done it.
-            let unsatisfiable = self.system.reach.unsatisfiable(self.system.network, settings);
-            unsatisfiable.map_or(error, SolveError::Unreachable)
-        })?;
+        let balance = certify(&self.system, &self.state, &mut self.scratch)
+            .map_err(|error| self.explain(settings, error))?;
         self.solved = true;
         self.solution.balance = Balance {
             iterations: effort.iterations,
@@ -247,6 +261,26 @@ impl<'n> Solver<'n> {
         };
         self.report();
         Ok(&self.solution)
+    }
+
+    /// Looks for a reason behind a state that does not balance; only now is that worth the time.
+    fn explain(&self, settings: &Settings, error: SolveError) -> SolveError {
+        const IMMENSE: f64 = 1e6;
+        let network = self.system.network;
+        if let Some(at) = self.system.reach.unsatisfiable(network, settings) {
+            return SolveError::Unreachable(at);
+        }
+        let size = |node: &NodeId| self.state.heads[node.index()].abs();
+        match network
+            .node_ids()
+            .max_by(|a, b| size(a).total_cmp(&size(b)))
+        {
+            Some(node) if size(&node) > IMMENSE => SolveError::Immense {
+                node,
+                head: self.state.heads[node.index()],
+            },
+            _ => error,
+        }
     }
 
     /// Puts the state into the answer: heads that mean nothing are left out, states are named.

@@ -7,6 +7,7 @@
 
 use super::laws::{Laws, ordinary_flow};
 use super::linear::{Factor, Slot};
+use super::tolerance::{HEAD, flow_tolerance};
 use crate::network::{
     Direction, LineId, Network, NodeId, NodeKind, Passage, Reach, Settings, Standing, Unreachable,
 };
@@ -293,6 +294,26 @@ impl<'n> System<'n> {
     /// How far the head along a shut one-way line stands above the loss at which it would open; negative holds it shut.
     pub fn push(&self, state: &State, line: usize) -> f64 {
         self.sense[line] * (self.drop(state, line) - self.loss(line, 0.0).head)
+    }
+
+    /// Whether every one-way line flows in its sense, or is shut with the head against it. Flows that stand still but for
+    /// rounding are set to zero on the way.
+    pub fn complementary(&self, state: &mut State) -> bool {
+        let rounding = flow_tolerance(0.0);
+        let mut all = true;
+        for &line in &self.live {
+            let line = line as usize;
+            if state.shut[line] {
+                all &= self.push(state, line) <= HEAD.absolute;
+            } else if self.sense[line] * state.flows[line] < 0.0 {
+                if state.flows[line].abs() > rounding {
+                    all = false;
+                } else {
+                    state.flows[line] = 0.0;
+                }
+            }
+        }
+        all
     }
 
     /// Whether a node's head is held by what it is.

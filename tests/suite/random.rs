@@ -4,12 +4,12 @@
 
 use dutybank::fluid::Fluid;
 use dutybank::network::{Network, NetworkBuilder, NodeId, NodeKind, PumpSetting, ValveSetting};
+use dutybank::part::Part;
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
 use dutybank::part::pump::{Motor, PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::valve::{Characteristic, Valve};
-use dutybank::part::Part;
 
 pub const GRAVITY: f64 = 9.80665;
 
@@ -62,11 +62,21 @@ pub fn network(seed: u64, lines: usize, range: Range) -> Network {
     let mut random = Random(seed);
     let wild = range == Range::Wild;
     let fluid = if wild && random.chance(0.2) {
-        Fluid { density: 880.0, kinematic_viscosity: random.decades(1e-5, 1e-3), vapour_pressure: Some(10.0) }
+        Fluid {
+            density: 880.0,
+            kinematic_viscosity: random.decades(1e-5, 1e-3),
+            vapour_pressure: Some(10.0),
+        }
     } else {
         Fluid::water(random.between(278.15, 333.15)).unwrap()
     };
-    let mut build = Maker { random, wild, fluid, net: NetworkBuilder::new(fluid, GRAVITY, 101_325.0), lines: 0 };
+    let mut build = Maker {
+        random,
+        wild,
+        fluid,
+        net: NetworkBuilder::new(fluid, GRAVITY, 101_325.0),
+        lines: 0,
+    };
     build.nodes_and_lines(lines);
     build.net.build().unwrap()
 }
@@ -83,7 +93,11 @@ impl Maker {
     fn nodes_and_lines(&mut self, wanted: usize) {
         let count = 2 + self.random.below(wanted.max(1));
         let level = self.random.between(0.0, 10.0);
-        let mut nodes = vec![self.net.node("n0", NodeKind::Reservoir { pressure: 0.0 }, 0.0, level)];
+        let mut nodes =
+            vec![
+                self.net
+                    .node("n0", NodeKind::Reservoir { pressure: 0.0 }, 0.0, level),
+            ];
         for i in 1..count {
             let node = self.node(i);
             nodes.push(node);
@@ -91,7 +105,10 @@ impl Maker {
             self.line_or_bank(other, node);
         }
         while self.lines < wanted && count > 2 {
-            let (a, b) = (nodes[self.random.below(count)], nodes[self.random.below(count)]);
+            let (a, b) = (
+                nodes[self.random.below(count)],
+                nodes[self.random.below(count)],
+            );
             if a != b {
                 self.line_or_bank(a, b);
             }
@@ -103,22 +120,53 @@ impl Maker {
         let random = &mut self.random;
         match random.below(10) {
             0 => {
-                let level = if self.wild && random.chance(0.3) { 5.0 } else { random.between(0.0, 50.0) };
-                self.net.node(name, NodeKind::Reservoir { pressure: 0.0 }, 0.0, level)
+                let level = if self.wild && random.chance(0.3) {
+                    5.0
+                } else {
+                    random.between(0.0, 50.0)
+                };
+                self.net
+                    .node(name, NodeKind::Reservoir { pressure: 0.0 }, 0.0, level)
             }
-            1 => self.net.node(name, NodeKind::Outlet { elevation: random.between(0.0, 30.0) }, 0.0, 0.0),
+            1 => self.net.node(
+                name,
+                NodeKind::Outlet {
+                    elevation: random.between(0.0, 30.0),
+                },
+                0.0,
+                0.0,
+            ),
             2 => {
                 let floor = random.between(0.0, 20.0);
-                self.net.node(name, NodeKind::Tank { floor, pressure: 0.0 }, 0.0, random.between(0.0, 4.0))
+                self.net.node(
+                    name,
+                    NodeKind::Tank {
+                        floor,
+                        pressure: 0.0,
+                    },
+                    0.0,
+                    random.between(0.0, 4.0),
+                )
             }
             _ => {
-                let size = if self.wild { random.decades(1e-9, 1.0) } else { random.decades(1e-4, 2e-2) };
+                let size = if self.wild {
+                    random.decades(1e-9, 1.0)
+                } else {
+                    random.decades(1e-4, 2e-2)
+                };
                 let draw = match random.below(6) {
                     0 => size,
                     1 => -0.3 * size,
                     _ => 0.0,
                 };
-                self.net.node(name, NodeKind::Point { elevation: random.between(0.0, 10.0) }, draw, 0.0)
+                self.net.node(
+                    name,
+                    NodeKind::Point {
+                        elevation: random.between(0.0, 10.0),
+                    },
+                    draw,
+                    0.0,
+                )
             }
         }
     }
@@ -131,7 +179,11 @@ impl Maker {
             for _ in 0..1 + self.random.below(4) {
                 let model = if equal { model } else { self.model() };
                 let mut parts = vec![self.pipe(), self.pump(model, 0.0)];
-                parts.push(Part::CheckValve(QuadraticLoss::minor(self.random.between(0.0, 3.0), 0.15, GRAVITY)));
+                parts.push(Part::CheckValve(QuadraticLoss::minor(
+                    self.random.between(0.0, 3.0),
+                    0.15,
+                    GRAVITY,
+                )));
                 self.line(from, to, parts);
             }
             return;
@@ -142,7 +194,11 @@ impl Maker {
         }
         if parts.is_empty() || self.random.chance(0.4) {
             let bore = self.bore();
-            parts.push(Part::Loss(QuadraticLoss::minor(self.random.between(0.1, 20.0), bore, GRAVITY)));
+            parts.push(Part::Loss(QuadraticLoss::minor(
+                self.random.between(0.1, 20.0),
+                bore,
+                GRAVITY,
+            )));
         }
         if self.random.chance(0.1) {
             parts.push(self.valve());
@@ -153,7 +209,11 @@ impl Maker {
             parts.push(pump);
         }
         if self.random.chance(0.2) {
-            parts.push(Part::CheckValve(QuadraticLoss::minor(self.random.between(0.0, 3.0), 0.2, GRAVITY)));
+            parts.push(Part::CheckValve(QuadraticLoss::minor(
+                self.random.between(0.0, 3.0),
+                0.2,
+                GRAVITY,
+            )));
         }
         self.line(from, to, parts);
     }
@@ -164,31 +224,64 @@ impl Maker {
     }
 
     fn bore(&mut self) -> f64 {
-        if self.wild { self.random.decades(0.005, 3.0) } else { self.random.between(0.08, 0.5) }
+        if self.wild {
+            self.random.decades(0.005, 3.0)
+        } else {
+            self.random.between(0.08, 0.5)
+        }
     }
 
     fn pipe(&mut self) -> Part {
         let bore = self.bore();
         let random = &mut self.random;
-        let length = if self.wild { random.decades(0.01, 5e4) } else { random.decades(1.0, 3000.0) };
+        let length = if self.wild {
+            random.decades(0.01, 5e4)
+        } else {
+            random.decades(1.0, 3000.0)
+        };
         let friction = match random.below(8) {
             0 => Friction::hazen_williams(length, bore, random.between(80.0, 150.0)),
             1 => Friction::fixed_factor(length, bore, random.between(0.01, 0.04), GRAVITY),
             _ => {
-                let roughness = if random.chance(0.1) { 0.0 } else { bore * random.decades(1e-6, 0.03) };
-                Friction::roughness(length, bore, roughness, self.fluid.kinematic_viscosity, GRAVITY)
+                let roughness = if random.chance(0.1) {
+                    0.0
+                } else {
+                    bore * random.decades(1e-6, 0.03)
+                };
+                Friction::roughness(
+                    length,
+                    bore,
+                    roughness,
+                    self.fluid.kinematic_viscosity,
+                    GRAVITY,
+                )
             }
         };
-        Part::Pipe(Pipe { length, bore, friction })
+        Part::Pipe(Pipe {
+            length,
+            bore,
+            friction,
+        })
     }
 
     fn valve(&mut self) -> Part {
         let fully_open = QuadraticLoss::minor(self.random.between(0.1, 10.0), 0.2, GRAVITY);
-        let characteristic =
-            if self.random.chance(0.5) { Characteristic::Linear } else { Characteristic::EqualPercentage };
-        let setting =
-            ValveSetting { open: self.random.chance(0.8), opening: self.random.between(0.02, 1.0) };
-        Part::Valve(self.net.valve(Valve { fully_open, characteristic }, setting))
+        let characteristic = if self.random.chance(0.5) {
+            Characteristic::Linear
+        } else {
+            Characteristic::EqualPercentage
+        };
+        let setting = ValveSetting {
+            open: self.random.chance(0.8),
+            opening: self.random.between(0.02, 1.0),
+        };
+        Part::Valve(self.net.valve(
+            Valve {
+                fully_open,
+                characteristic,
+            },
+            setting,
+        ))
     }
 
     fn model(&mut self) -> usize {
@@ -198,9 +291,17 @@ impl Maker {
         let power = random.between(1.2, 2.6);
         let fall = random.between(0.3, 0.9);
         let points = 4 + random.below(6);
-        let flow: Vec<f64> = (0..points).map(|i| end * i as f64 / (points - 1) as f64).collect();
-        let head: Vec<f64> = flow.iter().map(|q| shutoff * (1.0 - fall * (q / end).powf(power))).collect();
-        let efficiency: Vec<f64> = flow.iter().map(|q| 3.1 * (q / end) * (1.0 - 0.72 * q / end)).collect();
+        let flow: Vec<f64> = (0..points)
+            .map(|i| end * i as f64 / (points - 1) as f64)
+            .collect();
+        let head: Vec<f64> = flow
+            .iter()
+            .map(|q| shutoff * (1.0 - fall * (q / end).powf(power)))
+            .collect();
+        let efficiency: Vec<f64> = flow
+            .iter()
+            .map(|q| 3.1 * (q / end) * (1.0 - 0.72 * q / end))
+            .collect();
         let name = format!("m{}", self.random.bits());
         self.net.model(PumpModel {
             name,
@@ -210,7 +311,10 @@ impl Maker {
             power: PowerCurve::Efficiency(Curve::through(&flow, &efficiency).unwrap()),
             npsh_required: None,
             best_efficiency_flow: Some(0.7 * end),
-            motor: Some(Motor { rated: 2e4, efficiency: Some(0.92) }),
+            motor: Some(Motor {
+                rated: 2e4,
+                efficiency: Some(0.92),
+            }),
         })
     }
 
@@ -218,14 +322,29 @@ impl Maker {
         let random = &mut self.random;
         let setting = PumpSetting {
             running: random.chance(0.8),
-            speed: if random.chance(0.5) { 1.0 } else { random.between(0.4, 1.1) },
+            speed: if random.chance(0.5) {
+                1.0
+            } else {
+                random.between(0.4, 1.1)
+            },
             trim: 1.0,
-            wear: if random.chance(0.7) { 0.0 } else { random.between(0.0, 0.3) },
+            wear: if random.chance(0.7) {
+                0.0
+            } else {
+                random.between(0.0, 0.3)
+            },
         };
-        let when_stopped =
-            random.chance(stopped_open).then(|| QuadraticLoss::minor(random.between(5.0, 50.0), 0.15, GRAVITY));
+        let when_stopped = random
+            .chance(stopped_open)
+            .then(|| QuadraticLoss::minor(random.between(5.0, 50.0), 0.15, GRAVITY));
         let name = format!("p{}", random.bits());
-        let pump = Pump { name, model, elevation: 0.0, elevation_given: true, when_stopped };
+        let pump = Pump {
+            name,
+            model,
+            elevation: 0.0,
+            elevation_given: true,
+            when_stopped,
+        };
         Part::Pump(self.net.pump(pump, setting))
     }
 }
