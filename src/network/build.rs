@@ -3,7 +3,7 @@
 use std::collections::HashSet;
 
 use super::{
-    Bank, Direction, Line, LineId, Network, Node, NodeId, NodeKind, PumpSetting, Settings,
+    Bank, Direction, End, Line, LineId, Network, Node, NodeId, NodeKind, PumpSetting, Settings,
     ValveSetting,
 };
 use crate::fluid::Fluid;
@@ -71,7 +71,7 @@ impl std::error::Error for BuildError {}
 ///
 /// let fluid = Fluid::water(293.15)?;
 /// let mut net = NetworkBuilder::new(fluid, 9.80665, 101_325.0);
-/// let tower = net.node("tower", NodeKind::Reservoir { pressure: 0.0 }, 0.0, 30.0);
+/// let tower = net.node("tower", NodeKind::Reservoir, 0.0, 30.0);
 /// let tap = net.node("tap", NodeKind::Point { elevation: 2.0 }, 0.004, 0.0);
 /// let friction = Friction::roughness(120.0, 0.08, 1e-4, fluid.kinematic_viscosity, 9.80665);
 /// net.line("main", tower, tap, vec![Part::Pipe(Pipe { length: 120.0, bore: 0.08, friction })]);
@@ -118,7 +118,7 @@ impl NetworkBuilder {
             name: name.into(),
             kind,
         });
-        self.network.settings.add_node(draw, level);
+        self.network.settings.add_node(draw, level, 0.0);
         id
     }
 
@@ -158,9 +158,21 @@ impl NetworkBuilder {
             name: name.into(),
             from,
             to,
+            ports: [None, None],
             parts,
         });
+        self.network.settings.add_line();
         id
+    }
+
+    /// Sets the height (m) of an end of a line above the floor of the tank there.
+    pub fn port(&mut self, line: LineId, end: End, height: f64) {
+        self.network.lines[line.index()].ports[end as usize] = Some(height);
+    }
+
+    /// Changes the settings the network starts with.
+    pub fn settings_mut(&mut self) -> &mut Settings {
+        &mut self.network.settings
     }
 
     /// Names lines that stand side by side as one bank.
@@ -218,15 +230,13 @@ impl NetworkBuilder {
         for (id, node) in network.node_ids().zip(&network.nodes) {
             finite(&node.name, "draw", network.settings.draw(id))?;
             finite(&node.name, "level", network.settings.level(id))?;
+            finite(&node.name, "pressure", network.settings.gas_pressure(id))?;
             match node.kind {
                 NodeKind::Point { elevation } | NodeKind::Outlet { elevation } => {
                     finite(&node.name, "elevation", elevation)?;
                 }
-                NodeKind::Reservoir { pressure } => finite(&node.name, "pressure", pressure)?,
-                NodeKind::Tank { floor, pressure } => {
-                    finite(&node.name, "floor", floor)?;
-                    finite(&node.name, "pressure", pressure)?;
-                }
+                NodeKind::Reservoir => {}
+                NodeKind::Tank { floor } => finite(&node.name, "floor", floor)?,
             }
         }
         let holds_head = |node: &Node| !matches!(node.kind, NodeKind::Point { .. });
@@ -249,6 +259,9 @@ impl NetworkBuilder {
             }
             if line.from == line.to {
                 return Err(BuildError::SelfLoop(line.name.clone()));
+            }
+            for port in line.ports.into_iter().flatten() {
+                not_negative(&line.name, "port", port)?;
             }
             if line.parts.is_empty() {
                 return Err(BuildError::EmptyLine(line.name.clone()));
@@ -306,13 +319,7 @@ impl NetworkBuilder {
 /// Which way water can go, by check valves in the line and outlets at its ends.
 fn direction(line: &Line, nodes: &[Node]) -> Direction {
     let outlet = |id: NodeId| matches!(nodes[id.index()].kind, NodeKind::Outlet { .. });
-    let forward_only = line.has_check_valve() || outlet(line.to);
-    match (forward_only, outlet(line.from)) {
-        (false, false) => Direction::Both,
-        (true, false) => Direction::Forward,
-        (false, true) => Direction::Backward,
-        (true, true) => Direction::Neither,
-    }
+    Direction::of(line.has_check_valve() || outlet(line.to), outlet(line.from))
 }
 
 fn out_of_range(name: &str, figure: &'static str, value: f64) -> BuildError {

@@ -14,14 +14,14 @@ impl Reach {
     /// A draw or inflow that no flows can satisfy, if there is one: the node of the largest remainder.
     pub fn unsatisfiable(&self, network: &Network, settings: &Settings) -> Option<Unreachable> {
         let draw = |node: NodeId| {
-            if network.is_point(node) {
+            if network.fixed_head(node, settings).is_none() {
                 settings.draw(node)
             } else {
                 0.0
             }
         };
-        let inflows = self.remainder(network, true, |node| -draw(node));
-        let draws = self.remainder(network, false, draw);
+        let inflows = self.remainder(network, settings, true, |node| -draw(node));
+        let draws = self.remainder(network, settings, false, draw);
         inflows.or(draws).map(|node| Unreachable {
             node,
             draw: draw(node),
@@ -32,6 +32,7 @@ impl Reach {
     fn remainder(
         &self,
         network: &Network,
+        settings: &Settings,
         downstream: bool,
         amount: impl Fn(NodeId) -> f64,
     ) -> Option<NodeId> {
@@ -52,7 +53,7 @@ impl Reach {
                 NodeIndex::new(ends.from.index()),
                 NodeIndex::new(ends.to.index()),
             );
-            let direction = network.direction(line);
+            let direction = self.direction(line);
             let (there, back) = if downstream { (from, to) } else { (to, from) };
             if direction.forward() {
                 graph.add_edge(there, back, UNLIMITED);
@@ -69,7 +70,7 @@ impl Reach {
                 wanted.push((node, amount, graph.add_edge(start, here, amount)));
             } else if amount < 0.0 {
                 graph.add_edge(here, end, -amount);
-            } else if !network.is_point(node) {
+            } else if network.fixed_head(node, settings).is_some() {
                 graph.add_edge(here, end, UNLIMITED);
             }
         }

@@ -10,7 +10,7 @@ mod settings;
 
 pub use build::{BuildError, NetworkBuilder};
 pub use reach::{Passage, Reach, Standing, Unreachable};
-pub use settings::{PumpSetting, Settings, ValveSetting};
+pub use settings::{CheckCondition, PumpSetting, Settings, TankMode, ValveSetting};
 
 use crate::fluid::Fluid;
 use crate::part::pump::{Covers, Pump, PumpModel};
@@ -48,7 +48,7 @@ pub struct Node {
     pub kind: NodeKind,
 }
 
-/// What a node is. Elevations in m above the datum, pressures gauge in Pa.
+/// What a node is. Elevations in m above the datum.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum NodeKind {
     /// Where lines meet; no storage.
@@ -56,17 +56,12 @@ pub enum NodeKind {
         /// Elevation.
         elevation: f64,
     },
-    /// A free surface that stays where it is (the surface is a setting).
-    Reservoir {
-        /// Gas pressure on the surface.
-        pressure: f64,
-    },
+    /// A free surface that stays where it is; its elevation and the gas pressure on it are settings.
+    Reservoir,
     /// A tank; fixed at its level (a setting) in a steady solution.
     Tank {
         /// Elevation of the floor.
         floor: f64,
-        /// Gas pressure on the surface.
-        pressure: f64,
     },
     /// Free discharge to the open air; nothing comes back in.
     Outlet {
@@ -84,6 +79,9 @@ pub struct Line {
     pub from: NodeId,
     /// Last node; flow is positive towards it.
     pub to: NodeId,
+    /// Height (m) of its `from` and `to` end above the floor of the tank there; none: at the floor. Nothing leaves through
+    /// an end above the surface, and what enters there falls freely from it.
+    pub ports: [Option<f64>; 2],
     /// Its parts in the order in which water flowing forward meets them; at least one.
     pub parts: Vec<Part>,
 }
@@ -116,6 +114,15 @@ impl Line {
     }
 }
 
+/// One of the two ends of a line.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum End {
+    /// The first.
+    From,
+    /// The last.
+    To,
+}
+
 /// A bank: equal lines side by side.
 #[derive(Clone, Debug)]
 pub struct Bank {
@@ -139,6 +146,16 @@ pub enum Direction {
 }
 
 impl Direction {
+    /// From what keeps water from flowing back, and from flowing forward.
+    fn of(forward_only: bool, backward_only: bool) -> Self {
+        match (forward_only, backward_only) {
+            (false, false) => Self::Both,
+            (true, false) => Self::Forward,
+            (false, true) => Self::Backward,
+            (true, true) => Self::Neither,
+        }
+    }
+
     /// Whether forward flow can pass.
     pub fn forward(self) -> bool {
         matches!(self, Self::Both | Self::Forward)
@@ -230,9 +247,20 @@ impl Network {
         self.covers[self.pump(id).model].as_ref()
     }
 
-    /// Which way water can go through a line, by its check valves and the outlets at its ends.
-    pub fn direction(&self, id: LineId) -> Direction {
-        self.directions[id.index()]
+    /// Which way water can go through a line as it stands: by its check valves, the outlets at its ends and the ports above
+    /// a tank's surface.
+    pub fn direction(&self, id: LineId, settings: &Settings) -> Direction {
+        let standing = self.directions[id.index()];
+        let stuck = settings.check(id) == CheckCondition::StuckOpen;
+        let from = self.above_surface(id, End::From, settings).is_some();
+        let to = self.above_surface(id, End::To, settings).is_some();
+        if !(stuck || from || to) {
+            return standing;
+        }
+        let checked = self.line(id).has_check_valve() && !stuck;
+        let outlet = |node: NodeId| matches!(self.node(node).kind, NodeKind::Outlet { .. });
+        let ends = self.line(id);
+        Direction::of(checked || outlet(ends.to) || to, outlet(ends.from) || from)
     }
 
     /// All node ids.
@@ -299,24 +327,39 @@ impl Network {
         matches!(self.node(id).kind, NodeKind::Point { .. })
     }
 
-    /// Total head (m above the datum) that a node is held at, or none for a point.
+    /// Total head (m above the datum) that a node is held at; none for a point and for a tank that passes on.
     pub fn fixed_head(&self, id: NodeId, settings: &Settings) -> Option<f64> {
-        let pressure_head = |pressure: f64| pressure / (self.fluid.density * self.gravity);
         let level = settings.level(id);
+        let gas = settings.gas_pressure(id) / (self.fluid.density * self.gravity);
         match self.node(id).kind {
             NodeKind::Point { .. } => None,
-            NodeKind::Reservoir { pressure } => Some(level + pressure_head(pressure)),
-            NodeKind::Tank { floor, pressure } => Some(floor + level + pressure_head(pressure)),
+            NodeKind::Reservoir => Some(level + gas),
+            NodeKind::Tank { .. } if settings.tank_mode(id) == TankMode::Passing => None,
+            NodeKind::Tank { floor } => Some(floor + level + gas),
             NodeKind::Outlet { elevation } => Some(elevation),
         }
+    }
+
+    /// How far (m) an end of a line stands above the surface of the tank there; none where it is below the surface, or
+    /// there is no tank that holds its head.
+    pub fn above_surface(&self, line: LineId, end: End, settings: &Settings) -> Option<f64> {
+        let line = self.line(line);
+        let (node, port) = match end {
+            End::From => (line.from, line.ports[0]),
+            End::To => (line.to, line.ports[1]),
+        };
+        let above = port? - settings.level(node);
+        let held = matches!(self.node(node).kind, NodeKind::Tank { .. })
+            && settings.tank_mode(node) == TankMode::Held;
+        (held && above > 0.0).then_some(above)
     }
 
     /// Elevation at which a node's pressure is stated, m; a reservoir's is its surface.
     pub fn elevation(&self, id: NodeId, settings: &Settings) -> f64 {
         match self.node(id).kind {
             NodeKind::Point { elevation } | NodeKind::Outlet { elevation } => elevation,
-            NodeKind::Reservoir { .. } => settings.level(id),
-            NodeKind::Tank { floor, .. } => floor,
+            NodeKind::Reservoir => settings.level(id),
+            NodeKind::Tank { floor } => floor,
         }
     }
 
@@ -325,7 +368,7 @@ impl Network {
     /// p = rho g (head - elevation); at a reservoir its gas pressure, at a tank that at its floor, at an outlet 0.
     pub fn pressure(&self, id: NodeId, head: f64, settings: &Settings) -> f64 {
         match self.node(id).kind {
-            NodeKind::Reservoir { pressure } => pressure,
+            NodeKind::Reservoir => settings.gas_pressure(id),
             NodeKind::Outlet { .. } => 0.0,
             NodeKind::Point { .. } | NodeKind::Tank { .. } => {
                 self.fluid.density * self.gravity * (head - self.elevation(id, settings))

@@ -6,7 +6,7 @@
 use petgraph::graph::{NodeIndex, UnGraph};
 use petgraph::visit::EdgeRef;
 
-use super::{Direction, LineId, Network, NodeId, NodeKind, Settings};
+use super::{CheckCondition, Direction, LineId, Network, NodeId, Settings};
 use crate::part::Part;
 
 /// Whether water can pass a line at all, as the settings have it.
@@ -15,7 +15,7 @@ pub enum Passage {
     /// It can.
     #[default]
     Open,
-    /// A valve is shut.
+    /// A valve is shut, or a check valve stuck shut.
     Closed,
     /// A pump is stopped and lets nothing pass.
     Stopped,
@@ -46,6 +46,7 @@ pub struct Unreachable {
 pub struct Reach {
     graph: UnGraph<(), ()>,
     passages: Vec<Passage>,
+    directions: Vec<Direction>,
     standings: Vec<Standing>,
     /// Per node, a number shared by all nodes that are joined by ways in use.
     components: Vec<u32>,
@@ -74,6 +75,7 @@ impl Reach {
         Self {
             graph,
             passages: vec![Passage::Open; lines],
+            directions: vec![Direction::Both; lines],
             standings: vec![Standing::Joined; nodes],
             components: vec![0; nodes],
             held: Vec::with_capacity(nodes),
@@ -91,7 +93,10 @@ impl Reach {
         for (passage, line) in self.passages.iter_mut().zip(network.line_ids()) {
             *passage = line_passage(network, line, settings);
         }
-        let joined = |node: &NodeId| !matches!(network.node(*node).kind, NodeKind::Point { .. });
+        for (direction, line) in self.directions.iter_mut().zip(network.line_ids()) {
+            *direction = network.direction(line, settings);
+        }
+        let joined = |node: &NodeId| network.fixed_head(*node, settings).is_some();
         let draw = |node: NodeId| {
             if joined(&node) {
                 0.0
@@ -130,6 +135,7 @@ impl Reach {
             stack,
             forward_reached,
             backward_reached,
+            directions,
             ..
         } = self;
         let reached = if downstream {
@@ -152,7 +158,7 @@ impl Reach {
                 }
                 let line = LineId(edge.id().index() as u32);
                 let along = network.line(line).from.index() == here.index();
-                let direction = network.direction(line);
+                let direction = directions[line.index()];
                 if if along == downstream {
                     direction.forward()
                 } else {
@@ -233,6 +239,11 @@ impl Reach {
         self.passages[line.index()]
     }
 
+    /// Which way water can go through a line.
+    pub fn direction(&self, line: LineId) -> Direction {
+        self.directions[line.index()]
+    }
+
     /// How a node stands to the fixed heads.
     pub fn standing(&self, node: NodeId) -> Standing {
         self.standings[node.index()]
@@ -243,7 +254,7 @@ impl Reach {
     pub fn in_use(&self, network: &Network, line: LineId) -> bool {
         let ends = network.line(line);
         self.passage(line) == Passage::Open
-            && network.direction(line) != Direction::Neither
+            && self.direction(line) != Direction::Neither
             && self.standing(ends.from) == self.standing(ends.to)
     }
 
@@ -278,6 +289,9 @@ impl Reach {
 
 /// Whether water can pass a line: a shut valve comes before a stopped pump.
 fn line_passage(network: &Network, line: LineId, settings: &Settings) -> Passage {
+    if settings.check(line) == CheckCondition::StuckShut && network.line(line).has_check_valve() {
+        return Passage::Closed;
+    }
     let mut passage = Passage::Open;
     for part in &network.line(line).parts {
         match part {

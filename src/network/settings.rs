@@ -1,6 +1,6 @@
 //! What may change without rebuilding the network: which pumps run and how fast, valves, draws, levels.
 
-use super::{NodeId, PumpId, ValveId};
+use super::{LineId, NodeId, PumpId, ValveId};
 
 /// How a pump is run.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -47,6 +47,28 @@ impl ValveSetting {
     };
 }
 
+/// Whether a tank holds its head.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Default)]
+pub enum TankMode {
+    /// It does: fixed at its level.
+    #[default]
+    Held,
+    /// It does not: like a point it passes on what flows in, less its draw.
+    Passing,
+}
+
+/// How the check valves of a line do.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Default)]
+pub enum CheckCondition {
+    /// They let nothing back.
+    #[default]
+    Working,
+    /// They let water back as they let it forward.
+    StuckOpen,
+    /// They let nothing through.
+    StuckShut,
+}
+
 /// One entry for each adjustable thing of a network. A change never changes the pattern of the equations.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Settings {
@@ -54,8 +76,12 @@ pub struct Settings {
     draws: Vec<f64>,
     /// Per node: a reservoir's surface (m above the datum) or a tank's level (m above its floor).
     levels: Vec<f64>,
+    /// Per node: gas pressure on a reservoir's or tank's surface, gauge, Pa.
+    gas_pressures: Vec<f64>,
+    tank_modes: Vec<TankMode>,
     pumps: Vec<PumpSetting>,
     valves: Vec<ValveSetting>,
+    checks: Vec<CheckCondition>,
 }
 
 impl Settings {
@@ -63,14 +89,23 @@ impl Settings {
         Self {
             draws: Vec::new(),
             levels: Vec::new(),
+            gas_pressures: Vec::new(),
+            tank_modes: Vec::new(),
             pumps: Vec::new(),
             valves: Vec::new(),
+            checks: Vec::new(),
         }
     }
 
-    pub(super) fn add_node(&mut self, draw: f64, level: f64) {
+    pub(super) fn add_node(&mut self, draw: f64, level: f64, gas_pressure: f64) {
         self.draws.push(draw);
         self.levels.push(level);
+        self.gas_pressures.push(gas_pressure);
+        self.tank_modes.push(TankMode::Held);
+    }
+
+    pub(super) fn add_line(&mut self) {
+        self.checks.push(CheckCondition::Working);
     }
 
     pub(super) fn add_pump(&mut self, setting: PumpSetting) {
@@ -99,6 +134,36 @@ impl Settings {
     /// Sets [`Self::level`].
     pub fn set_level(&mut self, id: NodeId, level: f64) {
         self.levels[id.index()] = level;
+    }
+
+    /// Gas pressure on a reservoir's or tank's surface, gauge, Pa.
+    pub fn gas_pressure(&self, id: NodeId) -> f64 {
+        self.gas_pressures[id.index()]
+    }
+
+    /// Sets [`Self::gas_pressure`].
+    pub fn set_gas_pressure(&mut self, id: NodeId, pressure: f64) {
+        self.gas_pressures[id.index()] = pressure;
+    }
+
+    /// Whether a tank holds its head.
+    pub fn tank_mode(&self, id: NodeId) -> TankMode {
+        self.tank_modes[id.index()]
+    }
+
+    /// Sets [`Self::tank_mode`]; means nothing for other nodes.
+    pub fn set_tank_mode(&mut self, id: NodeId, mode: TankMode) {
+        self.tank_modes[id.index()] = mode;
+    }
+
+    /// How the check valves of a line do.
+    pub fn check(&self, id: LineId) -> CheckCondition {
+        self.checks[id.index()]
+    }
+
+    /// Sets [`Self::check`]; means nothing for a line without a check valve.
+    pub fn set_check(&mut self, id: LineId, condition: CheckCondition) {
+        self.checks[id.index()] = condition;
     }
 
     /// How a pump is run.

@@ -40,7 +40,7 @@ pub(super) fn certify(
         }
         let loss = system.loss(line, q).head;
         let (above, below) = (state.heads[from as usize], state.heads[to as usize]);
-        let off = loss - (above - below);
+        let off = loss - system.drop(state, line);
         let off = if state.shut[line] {
             (-system.sense[line] * off).max(0.0)
         } else {
@@ -58,7 +58,7 @@ pub(super) fn certify(
     }
     let limit = certified_flow(largest_flow);
     for node in system.network.node_ids() {
-        if system.network.is_point(node) {
+        if !system.fixed[node.index()] {
             let off = (imbalance[node.index()] - system.own_draws[node.index()]).abs();
             if !(off <= limit) {
                 return Err(SolveError::NodeUnbalanced {

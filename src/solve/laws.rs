@@ -4,6 +4,7 @@ use crate::network::{Network, Settings};
 use crate::part::curve::Cover;
 use crate::part::friction::Friction;
 use crate::part::pump::PumpLaw;
+use crate::part::quadratic::QuadraticLoss;
 use crate::part::{HeadLaw, HeadLoss, Part};
 
 /// One term of a line's law that is not quadratic.
@@ -153,4 +154,35 @@ pub(crate) fn ordinary_flow(network: &Network, settings: &Settings, line: usize)
     line.narrowest_bore().map_or(FLOW, |bore| {
         VELOCITY * std::f64::consts::FRAC_PI_4 * bore * bore
     })
+}
+
+/// Head lost in one part at flow `q`, m.
+pub(crate) fn part_loss(network: &Network, settings: &Settings, part: &Part, q: f64) -> f64 {
+    let loss = match part {
+        Part::Pipe(pipe) => pipe.friction.loss(q),
+        Part::Loss(loss) | Part::CheckValve(loss) => loss.loss(q),
+        Part::Valve(id) => {
+            let open = network.valve(*id).loss_at(settings.valve(*id).opening);
+            open.unwrap_or(QuadraticLoss::NONE).loss(q)
+        }
+        Part::Pump(id) => {
+            let setting = settings.pump(*id);
+            if setting.running {
+                let head = &network.model(*id).head;
+                PumpLaw {
+                    head,
+                    ratio: setting.ratio(),
+                    wear: setting.wear,
+                }
+                .loss(q)
+            } else {
+                network
+                    .pump(*id)
+                    .when_stopped
+                    .unwrap_or(QuadraticLoss::NONE)
+                    .loss(q)
+            }
+        }
+    };
+    loss.head
 }

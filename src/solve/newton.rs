@@ -131,7 +131,7 @@ impl Newton {
             let loss = system.loss(line, q);
             let (from, to) = system.ends[line];
             let (above, below) = (state.heads[from as usize], state.heads[to as usize]);
-            let r = loss.head - (above - below);
+            let r = loss.head - system.drop(state, line);
             self.residual[line] = r;
             // A law that is flat at no flow would leave the system singular there.
             self.conductance[line] = 1.0 / loss.slope.max(SLOPE_FLOOR);

@@ -1,1 +1,227 @@
-//! Operation.
+//! From the answer back to what a person asks of a pump, a line or a node: pressures, power, NPSH, share of best efficiency.
+
+use super::laws::part_loss;
+use super::{LineState, Solution};
+use crate::network::{LineId, Network, NodeId, Settings};
+use crate::part::pump::{PowerCurve, PumpModel};
+use crate::part::{Part, PumpId};
+
+/// What a node does.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct NodeOperation {
+    /// Total head, m above the datum.
+    pub head: Option<f64>,
+    /// Gauge pressure, Pa.
+    pub pressure: Option<f64>,
+}
+
+/// What a line does.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LineOperation {
+    /// Flow, m3/s.
+    pub flow: f64,
+    /// Its state.
+    pub state: LineState,
+    /// Velocity in its narrowest pipe, m/s; none without a pipe.
+    pub velocity: Option<f64>,
+    /// Head at its first node less that at its last, m.
+    pub head_loss: Option<f64>,
+}
+
+/// What a pump does. A figure that does not exist (an efficiency without a column for it, say) is none.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct PumpOperation {
+    /// Whether it runs.
+    pub running: bool,
+    /// Flow through it, m3/s.
+    pub flow: f64,
+    /// Head it adds, m.
+    pub head: Option<f64>,
+    /// Pump efficiency, a ratio.
+    pub efficiency: Option<f64>,
+    /// Shaft power, W; 0 when stopped.
+    pub shaft_power: Option<f64>,
+    /// Electrical power, shaft power over motor efficiency, W; 0 when stopped.
+    pub electrical_power: Option<f64>,
+    /// Shaft power over the motor's rating.
+    pub motor_load: Option<f64>,
+    /// Gauge pressure at its inlet, Pa.
+    pub suction_pressure: Option<f64>,
+    /// NPSH available, m.
+    pub npsh_available: Option<f64>,
+    /// NPSH required, m.
+    pub npsh_required: Option<f64>,
+    /// Flow over that of best efficiency at its speed.
+    pub share_of_bep: Option<f64>,
+    /// Where on its curve it runs.
+    pub place: Place,
+}
+
+/// Where a pump stands relative to the flows its curve was given for.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Place {
+    /// Among them, or it does not run.
+    OnCurve,
+    /// Below the first.
+    BeforeStart,
+    /// Past the last.
+    PastEnd,
+}
+
+impl PumpOperation {
+    /// NPSH available less required, m.
+    pub fn npsh_margin(&self) -> Option<f64> {
+        Some(self.npsh_available? - self.npsh_required?)
+    }
+}
+
+/// What a node does.
+pub fn node(
+    network: &Network,
+    settings: &Settings,
+    solution: &Solution,
+    id: NodeId,
+) -> NodeOperation {
+    let head = solution.head(id);
+    NodeOperation {
+        head,
+        pressure: head.map(|head| network.pressure(id, head, settings)),
+    }
+}
+
+/// What a line does.
+pub fn line(network: &Network, solution: &Solution, id: LineId) -> LineOperation {
+    let line = network.line(id);
+    let flow = solution.flow(id);
+    let velocity = line
+        .narrowest_bore()
+        .map(|bore| flow / (std::f64::consts::FRAC_PI_4 * bore * bore));
+    let head_loss = solution
+        .head(line.from)
+        .zip(solution.head(line.to))
+        .map(|(from, to)| from - to);
+    LineOperation {
+        flow,
+        state: solution.state(id),
+        velocity,
+        head_loss,
+    }
+}
+
+/// What a pump does.
+///
+/// With s = speed ratio x trim ratio: head (1-wear) s2 H(q/s), NPSH required s2 N(q/s), shaft power s3 P(q/s) whatever the
+/// wear, efficiency = density g q head / shaft power. NPSH available = (barometer - vapour pressure)/(density g) + head
+/// at its inlet - its elevation.
+pub fn pump(
+    network: &Network,
+    settings: &Settings,
+    solution: &Solution,
+    id: PumpId,
+) -> PumpOperation {
+    let setting = settings.pump(id);
+    let model = network.model(id);
+    let flow = solution.flow(network.line_of(id));
+    let suction_head = inlet_head(network, settings, solution, id);
+    let weight = network.fluid().density * network.gravity();
+    let elevation = network.pump(id).elevation;
+    let suction_pressure = suction_head.map(|head| weight * (head - elevation));
+    if !setting.running {
+        return PumpOperation {
+            running: false,
+            flow,
+            head: None,
+            efficiency: None,
+            shaft_power: Some(0.0),
+            electrical_power: Some(0.0),
+            motor_load: None,
+            suction_pressure,
+            npsh_available: None,
+            npsh_required: None,
+            share_of_bep: None,
+            place: Place::OnCurve,
+        };
+    }
+    let s = setting.ratio();
+    let q = flow / s;
+    let head = (1.0 - setting.wear) * s * s * model.head.at(q).value;
+    let shaft_power = model
+        .shaft_power(q, network.fluid().density, network.gravity())
+        .map(|power| s.powi(3) * power);
+    let air_head = |vapour: f64| (network.barometer() - vapour) / weight;
+    let npsh_available = suction_head
+        .zip(network.fluid().vapour_pressure)
+        .map(|(head, vapour)| air_head(vapour) + head - elevation);
+    PumpOperation {
+        running: true,
+        flow,
+        head: Some(head),
+        efficiency: efficiency(model, q, weight * flow * head, shaft_power, setting.wear),
+        shaft_power,
+        electrical_power: shaft_power
+            .zip(model.motor.and_then(|motor| motor.efficiency))
+            .map(|(power, efficiency)| power / efficiency),
+        motor_load: shaft_power
+            .zip(model.motor)
+            .map(|(power, motor)| power / motor.rated),
+        suction_pressure,
+        npsh_available,
+        npsh_required: model
+            .npsh_required
+            .as_ref()
+            .map(|curve| s * s * curve.at(q).value),
+        share_of_bep: model.best_efficiency_flow.map(|bep| q / bep),
+        place: place(model, q),
+    }
+}
+
+fn place(model: &PumpModel, q: f64) -> Place {
+    // A flow that is at an end but for rounding is on the curve.
+    let rounding = 1e-9 * model.end_of_curve();
+    if q > model.end_of_curve() + rounding {
+        Place::PastEnd
+    } else if q < model.start_of_curve() - rounding {
+        Place::BeforeStart
+    } else {
+        Place::OnCurve
+    }
+}
+
+/// Efficiency from its own column, worn; or from the power column, as hydraulic over shaft power.
+fn efficiency(
+    model: &PumpModel,
+    q: f64,
+    hydraulic_power: f64,
+    shaft_power: Option<f64>,
+    wear: f64,
+) -> Option<f64> {
+    match &model.power {
+        PowerCurve::Unknown => None,
+        PowerCurve::Efficiency(curve) => {
+            Some((1.0 - wear) * curve.at(q).value).filter(|efficiency| *efficiency >= 0.0)
+        }
+        PowerCurve::Shaft(_) => shaft_power
+            .filter(|power| *power > 0.0)
+            .map(|power| hydraulic_power / power),
+    }
+}
+
+/// Total head at a pump's inlet: that of its line's first node less what is lost on the way.
+fn inlet_head(
+    network: &Network,
+    settings: &Settings,
+    solution: &Solution,
+    id: PumpId,
+) -> Option<f64> {
+    let line_id = network.line_of(id);
+    let line = network.line(line_id);
+    let flow = solution.flow(line_id);
+    let before = line
+        .parts
+        .iter()
+        .take_while(|part| !matches!(part, Part::Pump(pump) if *pump == id));
+    let lost: f64 = before
+        .map(|part| part_loss(network, settings, part, flow))
+        .sum();
+    Some(solution.head(line.from)? - lost)
+}

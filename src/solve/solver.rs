@@ -295,7 +295,7 @@ impl<'n> Solver<'n> {
         for (node, head) in network.node_ids().zip(&mut solution.heads) {
             let floating = system.floats(node);
             let means_nothing = match system.reach.standing(node) {
-                Standing::Unserved => !system.fixed(node),
+                Standing::Unserved => !system.fixed[node.index()],
                 Standing::Joined => floating,
                 Standing::Blind => false,
             };

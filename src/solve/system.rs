@@ -9,7 +9,8 @@ use super::laws::{Laws, ordinary_flow};
 use super::linear::{Factor, Slot};
 use super::tolerance::{HEAD, flow_tolerance};
 use crate::network::{
-    Direction, LineId, Network, NodeId, NodeKind, Passage, Reach, Settings, Standing, Unreachable,
+    Direction, End, LineId, Network, NodeId, NodeKind, Passage, Reach, Settings, Standing,
+    Unreachable,
 };
 use crate::part::{HeadLaw, HeadLoss};
 
@@ -52,11 +53,16 @@ pub(super) struct System<'n> {
     pub ends: Vec<(u32, u32)>,
     /// Per line: 0 both ways, 1 forward only, -1 backward only.
     pub sense: Vec<f64>,
+    /// Per line: head at its `from` end less that at its `to` end, beyond the heads of the nodes there (ports above a
+    /// tank's surface), m.
+    lift: Vec<f64>,
     pub roles: Vec<Role>,
     /// The live lines, ascending.
     pub live: Vec<u32>,
     /// Per node: its head does not change while iterating.
     pub held: Vec<bool>,
+    /// Per node: its head is held by what it is.
+    pub fixed: Vec<bool>,
     /// Per node: its own draw, m3/s.
     pub own_draws: Vec<f64>,
     /// Per node: the draw that live lines must meet, leaves beyond it included, m3/s.
@@ -83,7 +89,7 @@ impl<'n> System<'n> {
             .nodes()
             .iter()
             .map(|node| {
-                matches!(node.kind, NodeKind::Point { .. }).then(|| {
+                matches!(node.kind, NodeKind::Point { .. } | NodeKind::Tank { .. }).then(|| {
                     count += 1;
                     count - 1
                 })
@@ -102,24 +108,18 @@ impl<'n> System<'n> {
             .iter()
             .map(|ends| pair(ends).and_then(|_| handed_out.next()))
             .collect();
-        let sense = network
-            .line_ids()
-            .map(|line| match network.direction(line) {
-                Direction::Both | Direction::Neither => 0.0,
-                Direction::Forward => 1.0,
-                Direction::Backward => -1.0,
-            })
-            .collect();
         Self {
             network,
             laws: Laws::new(network),
             reach: Reach::new(network),
             factor,
             ends,
-            sense,
+            sense: vec![0.0; m],
+            lift: vec![0.0; m],
             roles: vec![Role::Idle; m],
             live: Vec::with_capacity(m),
             held: vec![false; n],
+            fixed: vec![false; n],
             own_draws: vec![0.0; n],
             draws: vec![0.0; n],
             free: places.clone(),
@@ -150,9 +150,23 @@ impl<'n> System<'n> {
     pub fn prepare(&mut self, settings: &Settings, state: &mut State) -> Result<(), Unreachable> {
         self.reach.update(self.network, settings)?;
         self.laws.set(self.network, settings, None);
+        for line in self.network.line_ids() {
+            let above = |end| {
+                self.network
+                    .above_surface(line, end, settings)
+                    .unwrap_or(0.0)
+            };
+            self.lift[line.index()] = above(End::From) - above(End::To);
+            self.sense[line.index()] = match self.reach.direction(line) {
+                Direction::Both | Direction::Neither => 0.0,
+                Direction::Forward => 1.0,
+                Direction::Backward => -1.0,
+            };
+        }
         for node in self.network.node_ids() {
             let head = self.network.fixed_head(node, settings);
             self.held[node.index()] = head.is_some();
+            self.fixed[node.index()] = head.is_some();
             let draw = if head.is_some() {
                 0.0
             } else {
@@ -284,11 +298,11 @@ impl<'n> System<'n> {
         self.laws.line(line).loss(q)
     }
 
-    /// Head difference along a line, from `from` to `to`.
+    /// Head difference along a line, from its `from` end to its `to` end, m.
     #[inline]
     pub fn drop(&self, state: &State, line: usize) -> f64 {
         let (from, to) = self.ends[line];
-        state.heads[from as usize] - state.heads[to as usize]
+        state.heads[from as usize] - state.heads[to as usize] + self.lift[line]
     }
 
     /// How far the head along a shut one-way line stands above the loss at which it would open; negative holds it shut.
@@ -314,11 +328,6 @@ impl<'n> System<'n> {
             }
         }
         all
-    }
-
-    /// Whether a node's head is held by what it is.
-    pub fn fixed(&self, node: NodeId) -> bool {
-        !self.network.is_point(node)
     }
 
     /// Whether a node belongs to a set that no fixed head is joined to.
@@ -348,7 +357,8 @@ impl<'n> System<'n> {
             let line = leaf.line as usize;
             let loss = self.loss(line, state.flows[line]).head;
             let towards = self.ends[line].1 == leaf.node;
-            // h(from) - h(to) = g(q)
+            // h(from) - h(to) = g(q), less the lift of the ends
+            let loss = loss - self.lift[line];
             let fall = if towards { -loss } else { loss };
             state.heads[leaf.node as usize] = state.heads[leaf.parent as usize] + fall;
         }
@@ -378,9 +388,7 @@ impl<'n> System<'n> {
                 (to, from)
             };
             if inside(downstream) && self.reach.standing(NodeId(upstream)) != Standing::Unserved {
-                let lost = self.sense[line] * self.loss(line, 0.0).head;
-                shift = shift
-                    .max(state.heads[upstream as usize] - lost - state.heads[downstream as usize]);
+                shift = shift.max(self.push(state, line));
             }
         }
         if !shift.is_finite() || shift.abs() <= 1e-13 * (1.0 + state.heads[first.index()].abs()) {

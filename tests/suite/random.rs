@@ -93,11 +93,7 @@ impl Maker {
     fn nodes_and_lines(&mut self, wanted: usize) {
         let count = 2 + self.random.below(wanted.max(1));
         let level = self.random.between(0.0, 10.0);
-        let mut nodes =
-            vec![
-                self.net
-                    .node("n0", NodeKind::Reservoir { pressure: 0.0 }, 0.0, level),
-            ];
+        let mut nodes = vec![self.net.node("n0", NodeKind::Reservoir, 0.0, level)];
         for i in 1..count {
             let node = self.node(i);
             nodes.push(node);
@@ -125,8 +121,7 @@ impl Maker {
                 } else {
                     random.between(0.0, 50.0)
                 };
-                self.net
-                    .node(name, NodeKind::Reservoir { pressure: 0.0 }, 0.0, level)
+                self.net.node(name, NodeKind::Reservoir, 0.0, level)
             }
             1 => self.net.node(
                 name,
@@ -140,10 +135,7 @@ impl Maker {
                 let floor = random.between(0.0, 20.0);
                 self.net.node(
                     name,
-                    NodeKind::Tank {
-                        floor,
-                        pressure: 0.0,
-                    },
+                    NodeKind::Tank { floor },
                     0.0,
                     random.between(0.0, 4.0),
                 )
