@@ -116,7 +116,8 @@ impl Newton {
     }
 
     /// Residuals and conductances at `state`; returns the worst residual over its tolerance.
-    fn evaluate(&mut self, system: &System, state: &State) -> f64 {
+    fn evaluate(&mut self, system: &mut System, state: &State) -> f64 {
+        system.laws.evaluate(&state.flows);
         let mut worst_head: f64 = 0.0;
         let mut largest_flow: f64 = 0.0;
         for (imbalance, draw) in self.imbalance.iter_mut().zip(&system.draws) {
@@ -128,7 +129,7 @@ impl Newton {
                 continue;
             }
             let q = state.flows[line];
-            let loss = system.loss(line, q);
+            let loss = system.laws.loss_at(line, q);
             let (from, to) = system.ends[line];
             let (above, below) = (state.heads[from as usize], state.heads[to as usize]);
             let r = loss.head - system.drop(state, line);
