@@ -1,7 +1,9 @@
 //! Operating points of centrifugal pumps that share a system.
 
+pub mod diagnostic;
 pub mod fluid;
 pub mod network;
 pub mod part;
+pub mod read;
 pub mod solve;
 pub mod units;

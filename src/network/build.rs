@@ -171,6 +171,19 @@ impl NetworkBuilder {
         self.network.lines[line.index()].ports[end as usize] = Some(height);
     }
 
+    /// Speed (revolutions per second) and full impeller (m) of a model added before.
+    pub fn model_size(&self, model: usize) -> (Option<f64>, Option<f64>) {
+        self.network
+            .models
+            .get(model)
+            .map_or((None, None), |model| (model.speed, model.impeller))
+    }
+
+    /// Elevation (m) of a node added before; a reservoir's is its surface, a tank's its floor.
+    pub fn elevation(&self, node: NodeId) -> f64 {
+        self.network.elevation(node, &self.network.settings)
+    }
+
     /// Changes the settings the network starts with.
     pub fn settings_mut(&mut self) -> &mut Settings {
         &mut self.network.settings

@@ -5,10 +5,12 @@
 
 mod build;
 mod feasible;
+mod need;
 mod reach;
 mod settings;
 
 pub use build::{BuildError, NetworkBuilder};
+pub use need::{Need, Target};
 pub use reach::{Passage, Reach, Standing, Unreachable};
 pub use settings::{CheckCondition, PumpSetting, Settings, TankMode, ValveSetting};
 

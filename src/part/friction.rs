@@ -59,6 +59,14 @@ impl Friction {
         Self::HazenWilliams { r }
     }
 
+    /// Whether the law gives finite losses: sizes far out of any range do not.
+    pub fn is_finite(&self) -> bool {
+        [1e-6, 1.0].iter().all(|&q| {
+            let loss = self.loss(q);
+            loss.head.is_finite() && loss.slope.is_finite()
+        })
+    }
+
     /// A fixed Darcy friction factor `f`: h = f L/D v2/(2 g).
     pub fn fixed_factor(length: f64, bore: f64, f: f64, gravity: f64) -> Self {
         let a = area(bore);
