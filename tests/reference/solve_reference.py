@@ -198,7 +198,7 @@ def least_content(heads, passing, a, draw):
     balance = dict(type="eq", fun=lambda z: a @ z + draw / scale, jac=lambda z: a)
     first = np.array([0.1 * (line.sign or 1) for line in passing])
     found = minimize(content, first, jac=losses, bounds=bounds, constraints=[balance] if len(a) else [],
-                     method="SLSQP", options=dict(ftol=1e-15, maxiter=2000))
+                     method="SLSQP", options=dict(ftol=1e-13, maxiter=500))
     return found.x * scale, scale
 
 
