@@ -280,10 +280,13 @@ def operation(system, line, pump, q, heads):
         shaft = density * g * new_head * flow_per_e
         figures.update(efficiency=100 * e * (1 - law.wear), shaft_power=out(shaft, "power"))
         best = flow[int(np.argmax(curve["efficiency"]))]  # PCHIP rises no higher than its points
-        figures["share_of_bep"] = q / (s * best)
     if "power" in columns:
         shaft = s**3 * columns["power"].at(q / s)[0] * density / 1000
         figures.update(efficiency=100 * density * g * q * head / shaft, shaft_power=out(shaft, "power"))
+        hydraulic = [x * law.head.at(x)[0] for x in flow]  # best point of flow x head / power, among the points
+        best = flow[int(np.argmax(np.divide(hydraulic, [system.number(p, "power") for p in curve["power"]])))]
+    if "efficiency" in columns or "power" in columns:
+        figures["share_of_bep"] = q / (s * best)
     if "npsh_required" in columns:
         figures["npsh_required"] = out(s**2 * columns["npsh_required"].at(q / s)[0], "length")
     if inlet is not None:
