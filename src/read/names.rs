@@ -40,3 +40,22 @@ pub(super) fn check(cx: &mut Context, key: &Key, what: &str) {
         .help(help),
     );
 }
+
+/// A name that is only shown, never part of a path: any text on one line.
+pub(super) fn check_label(cx: &mut Context, key: &Key, what: &str) {
+    let name = &key.name;
+    if name.trim().is_empty()
+        || name.chars().any(char::is_control)
+        || name.chars().count() > LONGEST
+    {
+        let help = format!("a name here is any text on one line of at most {LONGEST} characters");
+        cx.push(
+            Diagnostic::error(
+                "name",
+                key.place,
+                format!("this name of a {what} cannot be used"),
+            )
+            .help(help),
+        );
+    }
+}

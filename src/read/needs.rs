@@ -112,7 +112,7 @@ pub(super) fn cases(cx: &mut Context, node: &Marked) -> Vec<Case> {
     };
     let mut cases = Vec::new();
     for (key, value) in fields.entries() {
-        super::names::check(cx, key, "case");
+        super::names::check_label(cx, key, "case");
         let what = format!("case `{}`", key.name);
         let Some(changes) = cx.any_map(value, &what, "wet_well.level: 0.9 m") else {
             continue;

@@ -3,4 +3,3 @@
 mod properties_of_liquids;
 mod published;
 mod random;
-mod survey;

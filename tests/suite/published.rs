@@ -56,10 +56,11 @@ fn figure(system: &System, solution: &Solution, of: &str) -> Option<f64> {
     let settings = network.settings();
     let (kind, rest) = of.split_once('.').unwrap();
     let (name, figure) = rest.rsplit_once('.').unwrap();
-    let missing = || panic!("nothing is called {name}");
     match kind {
         "nodes" => {
-            let id = network.find_node(name).unwrap_or_else(missing);
+            let id = network
+                .find_node(name)
+                .unwrap_or_else(|| panic!("nothing is called {name}"));
             match figure {
                 "head" => solution.head(id),
                 "pressure" => operation::node(network, settings, solution, id).pressure,
@@ -70,7 +71,9 @@ fn figure(system: &System, solution: &Solution, of: &str) -> Option<f64> {
             }
         }
         "lines" => {
-            let id = network.find_line(name).unwrap_or_else(missing);
+            let id = network
+                .find_line(name)
+                .unwrap_or_else(|| panic!("nothing is called {name}"));
             let line = operation::line(network, solution, id);
             match figure {
                 "flow" => Some(line.flow),
@@ -80,7 +83,9 @@ fn figure(system: &System, solution: &Solution, of: &str) -> Option<f64> {
             }
         }
         "pumps" => {
-            let id = network.find_pump(name).unwrap_or_else(missing);
+            let id = network
+                .find_pump(name)
+                .unwrap_or_else(|| panic!("nothing is called {name}"));
             let pump = operation::pump(network, settings, solution, id);
             match figure {
                 "flow" => Some(pump.flow),
@@ -263,11 +268,16 @@ fn hazen_williams_losses_lie_within_the_spread_of_the_roundings() {
     use dutybank::part::friction::Friction;
     let (headings, rows) = table("hazen_williams.csv");
     let column = |name: &str| headings.iter().position(|heading| heading == name).unwrap();
-    let (q, d, l, c) = (column("Q_m3s"), column("D_m"), column("L_m"), column("C"));
+    let (q, d, l, c) = (
+        column("flow [m3/s]"),
+        column("bore [m]"),
+        column("length [m]"),
+        column("c"),
+    );
     let losses: Vec<usize> = headings
         .iter()
         .enumerate()
-        .filter(|(_, h)| h.starts_with("hf_m"))
+        .filter(|(_, h)| ["from_velocity [m]", "from_foot_form [m]", "rounded [m]"].contains(h))
         .map(|(i, _)| i)
         .collect();
     assert_eq!(losses.len(), 3);
