@@ -5,11 +5,12 @@ use super::args::DutyOptions;
 use super::files::{Input, Pending, print};
 use super::solve::read;
 use crate::network::Network;
+use crate::output::grid::Grid;
 use crate::output::json::DutyCase;
 use crate::output::words::Words;
 use crate::output::{self, json};
 use crate::part::PumpId;
-use crate::read::System;
+use crate::read::{Case, System};
 use crate::study::duty::{Combination, MOST_SETS, combinations};
 use crate::study::gain::{Gain, gains};
 
@@ -30,7 +31,7 @@ pub(super) fn duty(options: &DutyOptions) -> Result<(), Failure> {
     let solved = solve_cases(options, &input, &base)?;
     let gains = gains(&base.network, &base.needs, base.network.settings());
     if let Some(pending) = pending {
-        let grid = table(options, &solved, &base);
+        let grid = whole_table(options, &solved, &base);
         pending.write(
             &grid
                 .csv(&base.units)
@@ -61,6 +62,15 @@ pub(super) fn duty(options: &DutyOptions) -> Result<(), Failure> {
     }
 }
 
+impl Solved {
+    fn label(&self) -> &str {
+        match self.name.as_str() {
+            "" => AS_IS,
+            name => name,
+        }
+    }
+}
+
 /// Whether some set of a case meets all needs.
 fn can_meet(case: &Solved) -> bool {
     let outcomes = case
@@ -71,6 +81,12 @@ fn can_meet(case: &Solved) -> bool {
         || outcomes
             .into_iter()
             .any(|outcome| outcome.assessment.needs.iter().all(|need| need.met))
+}
+
+/// Whether a case changes nothing but which pumps run.
+fn only_switches(case: &Case) -> bool {
+    let mut changes = case.changes.iter();
+    changes.all(|change| change.path().ends_with(".running"))
 }
 
 fn solve_cases(
@@ -85,7 +101,11 @@ fn solve_cases(
     let names: Vec<String> = match &options.cases {
         Some(names) => names.clone(),
         None => std::iter::once(AS_IS.to_owned())
-            .chain(all.into_iter().map(|case| case.name))
+            .chain(
+                all.into_iter()
+                    .filter(|case| !only_switches(case))
+                    .map(|case| case.name),
+            )
             .collect(),
     };
     let mut solved = Vec::new();
@@ -163,31 +183,34 @@ pub(super) fn pumps_named(network: &Network, names: &[String]) -> Result<Vec<Pum
     Ok(pumps)
 }
 
-fn table(options: &DutyOptions, solved: &[Solved], base: &System) -> output::grid::Grid {
-    let mut rows = Vec::new();
-    for case in solved {
-        let words = Words {
-            network: &case.system.network,
-            units: &case.system.units,
-        };
-        let name = if case.name.is_empty() {
-            AS_IS
-        } else {
-            &case.name
-        };
-        let each = case.combinations.iter();
-        rows.extend(
-            each.map(|combination| {
-                output::duty::row(&words, name, &case.system.needs, combination)
-            }),
-        );
-    }
-    output::duty::grid(
-        output::duty::columns(&base.needs, &base.units),
-        rows,
-        options.worst_first,
-    )
+/// The rows of one case; with `labelled`, its name in the first column.
+fn rows(case: &Solved, labelled: bool) -> Vec<output::duty::Row> {
+    let words = Words {
+        network: &case.system.network,
+        units: &case.system.units,
+    };
+    let label = if labelled { case.label() } else { "" };
+    case.combinations
+        .iter()
+        .map(|combination| output::duty::row(&words, label, &case.system.needs, combination))
+        .collect()
 }
+
+/// All cases in one table.
+fn whole_table(options: &DutyOptions, solved: &[Solved], base: &System) -> Grid {
+    let mut rows: Vec<_> = solved.iter().flat_map(|case| rows(case, true)).collect();
+    let mut title = "Combinations";
+    if options.worst_first {
+        title = "Combinations, worst first";
+        rows.sort_by(|a, b| a.room.total_cmp(&b.room));
+    }
+    output::duty::grid(title, output::duty::columns(&base.needs, &base.units), rows)
+}
+
+const LEGEND: &str = "\
+NPSH spare: least margin of a running pump. Columns named after needs: room left, negative where unmet.
+Cases that only change which pumps run are left out: every set is here already.
+";
 
 fn text(options: &DutyOptions, solved: &[Solved], base: &System, gains: &[Gain]) -> String {
     let words = Words {
@@ -202,10 +225,21 @@ fn text(options: &DutyOptions, solved: &[Solved], base: &System, gains: &[Gain])
         out.push_str(&words.gain(gain));
         out.push('\n');
     }
-    out.push_str(&table(options, solved, base).text(&base.units));
-    out.push_str(
-        "\nNPSH +: least margin of a running pump. Columns named after needs: room left, negative where unmet.\n",
-    );
-    out.push_str(&format!("\n{}\n", output::CAUTION));
+    if options.worst_first {
+        out.push_str(&whole_table(options, solved, base).text(&base.units));
+        out.push('\n');
+    } else {
+        for case in solved {
+            let title = match case.name.as_str() {
+                "" => "As the file stands".to_owned(),
+                name => format!("Case: {name}"),
+            };
+            let columns = output::duty::columns(&base.needs, &base.units);
+            let grid = output::duty::grid(&title, columns, rows(case, false));
+            out.push_str(&grid.text(&base.units));
+            out.push('\n');
+        }
+    }
+    out.push_str(&format!("{LEGEND}\n{}\n", output::CAUTION));
     out
 }

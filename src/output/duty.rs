@@ -23,15 +23,12 @@ pub fn columns(needs: &[Need], units: &UnitSet) -> Vec<Column> {
         Column::text("case", "case"),
         Column::text("running", "running"),
         Column::figure("total", "flow", Kind::Flow),
-        Column::text(
-            &format!("each\n{}", units.unit(Kind::Flow).symbol),
-            "flow_each",
-        ),
-        Column::text("% of BEP", "share_of_bep"),
+        Column::in_unit("each", "flow_each", units.unit(Kind::Flow).symbol),
+        Column::in_unit("of BEP", "share_of_bep", "%"),
         Column::figure("shaft", "shaft_power", Kind::Power),
-        Column::text("motor %", "motor_load"),
-        Column::figure("NPSH +", "npsh_margin", Kind::Length),
-        Column::text("kWh/m3", "kWh_per_m3"),
+        Column::in_unit("motor", "motor_load", "%"),
+        Column::figure("NPSH spare", "npsh_margin", Kind::Length),
+        Column::in_unit("energy", "specific_energy", "kWh/m3"),
     ];
     columns.extend(needs.iter().map(|need| {
         let kind = match need.target {
@@ -165,13 +162,10 @@ fn listed(figures: &[String]) -> String {
     }
 }
 
-/// The table; worst first if wished, else in the order given.
-pub fn grid(columns: Vec<Column>, mut rows: Vec<Row>, worst_first: bool) -> Grid {
-    if worst_first {
-        rows.sort_by(|a, b| a.room.total_cmp(&b.room));
-    }
+/// The table, rows in the order given.
+pub fn grid(title: &str, columns: Vec<Column>, rows: Vec<Row>) -> Grid {
     Grid {
-        title: "Combinations".to_owned(),
+        title: title.to_owned(),
         name: "combinations".to_owned(),
         columns,
         rows: rows.into_iter().map(|row| row.cells).collect(),

@@ -157,7 +157,12 @@ impl Words<'_> {
     /// The gain card of a bank.
     pub fn gain(&self, gain: &Gain) -> String {
         let flow = |q: f64| self.figure(Kind::Flow, q);
-        let mut lines = vec![format!("What each pump of {} adds", gain.bank)];
+        let beside: Vec<&str> = gain.beside.iter().map(|pump| self.pump(*pump)).collect();
+        let beside = match beside.as_slice() {
+            [] => String::new(),
+            names => format!(" ({} running too)", names.join(", ")),
+        };
+        let mut lines = vec![format!("What each pump of {} adds{beside}", gain.bank)];
         for (i, step) in gain.steps.iter().enumerate() {
             let count = i + 1;
             let Some(before) = i.checked_sub(1).map(|i| gain.steps[i].delivered) else {

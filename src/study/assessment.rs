@@ -405,7 +405,9 @@ pub fn binding_limit(network: &Network, assessment: &Assessment) -> Option<Limit
             );
         }
         let end = pump.flow / (pump.speed_ratio * network.model(id).end_of_curve());
-        add(LimitKind::EndOfCurve(end), 1.0 - end);
+        // Past the end nothing else said of the pump is certain: that comes first.
+        let beyond = if end > 1.0 + 1e-9 { -10.0 } else { 0.0 };
+        add(LimitKind::EndOfCurve(end), 1.0 - end + beyond);
     }
     limits.into_iter().min_by(|a, b| a.room.total_cmp(&b.room))
 }

@@ -13,6 +13,8 @@ use crate::solve::{SolveError, Solver};
 pub struct Gain {
     /// The bank's name.
     pub bank: String,
+    /// Pumps that run beside the bank throughout.
+    pub beside: Vec<PumpId>,
     /// One entry per number of pumps, from one.
     pub steps: Vec<Step>,
     /// Delivered flow that no number of such pumps passes, m3/s; none where there is no such end.
@@ -64,6 +66,10 @@ fn gain(
         changed.pump_mut(*pump).running = false;
     }
     let stopped = changed.clone();
+    let beside = network
+        .pump_ids()
+        .filter(|pump| stopped.pump(*pump).running)
+        .collect();
     let mut steps = Vec::new();
     for pump in &pumps {
         changed.pump_mut(*pump).running = true;
@@ -79,6 +85,7 @@ fn gain(
     let end = end_flow(solver, needs, stopped, &pumps, bank.lines[0]);
     Ok(Some(Gain {
         bank: bank.name.clone(),
+        beside,
         steps,
         end,
     }))
@@ -124,14 +131,15 @@ fn end_flow(
         to,
         shutoff,
     };
-    let mut low = 0.0;
+    // At no flow at all the water might stand anywhere; next to none shows the static head.
+    let ends: f64 = pumps
+        .iter()
+        .map(|id| network.model(*id).end_of_curve())
+        .sum();
+    let (mut low, mut high) = (1e-6 * ends, ends);
     if excess.at(low)? >= 0.0 {
         return None;
     }
-    let mut high = pumps
-        .iter()
-        .map(|id| network.model(*id).end_of_curve())
-        .sum::<f64>();
     while excess.at(high)? < 0.0 {
         (low, high) = (high, 2.0 * high);
         if high > 1e4 {
