@@ -3,5 +3,6 @@
 pub mod fluid;
 pub mod network;
 pub mod part;
+pub mod shift;
 pub mod solve;
 pub mod units;

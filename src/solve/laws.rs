@@ -88,8 +88,8 @@ impl<'n> Laws<'n> {
     /// Writes the numbers for these settings. With a `cover`, drooping head curves are replaced by that falling one.
     pub fn set(&mut self, network: &'n Network, settings: &Settings, cover: Option<Cover>) {
         let mut terms = self.terms.iter_mut();
-        for (line, r) in network.lines().iter().zip(&mut self.r) {
-            *r = 0.0;
+        for ((id, line), r) in network.line_ids().zip(network.lines()).zip(&mut self.r) {
+            *r = settings.fouling(id);
             for part in &line.parts {
                 match part {
                     Part::Pipe(_) => {
