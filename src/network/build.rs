@@ -94,6 +94,7 @@ impl NetworkBuilder {
                 banks: Vec::new(),
                 pumps: Vec::new(),
                 pump_lines: Vec::new(),
+                valve_lines: Vec::new(),
                 valves: Vec::new(),
                 models: Vec::new(),
                 covers: Vec::new(),
@@ -170,6 +171,19 @@ impl NetworkBuilder {
         self.network.lines[line.index()].ports[end as usize] = Some(height);
     }
 
+    /// Speed (revolutions per second) and full impeller (m) of a model added before.
+    pub fn model_size(&self, model: usize) -> (Option<f64>, Option<f64>) {
+        self.network
+            .models
+            .get(model)
+            .map_or((None, None), |model| (model.speed, model.impeller))
+    }
+
+    /// Elevation (m) of a node added before; a reservoir's is its surface, a tank's its floor.
+    pub fn elevation(&self, node: NodeId) -> f64 {
+        self.network.elevation(node, &self.network.settings)
+    }
+
     /// Changes the settings the network starts with.
     pub fn settings_mut(&mut self) -> &mut Settings {
         &mut self.network.settings
@@ -211,13 +225,12 @@ impl NetworkBuilder {
     fn check_names(&self) -> Result<(), BuildError> {
         fn unique<'a>(names: impl Iterator<Item = &'a String>) -> Result<(), BuildError> {
             let mut seen = HashSet::new();
-            names
-                .map(|name| {
-                    seen.insert(name)
-                        .then_some(())
-                        .ok_or_else(|| BuildError::NameTwice(name.clone()))
-                })
-                .collect()
+            for name in names {
+                if !seen.insert(name) {
+                    return Err(BuildError::NameTwice(name.clone()));
+                }
+            }
+            Ok(())
         }
         unique(self.network.nodes.iter().map(|node| &node.name))?;
         unique(self.network.lines.iter().map(|line| &line.name))?;
@@ -251,7 +264,7 @@ impl NetworkBuilder {
     fn check_lines(&mut self) -> Result<(), BuildError> {
         let network = &mut self.network;
         let mut pump_lines = vec![None; network.pumps.len()];
-        let mut valve_seen = vec![false; network.valves.len()];
+        let mut valve_lines = vec![None; network.valves.len()];
         for (index, line) in network.lines.iter().enumerate() {
             let foreign = || BuildError::Foreign(line.name.clone());
             if line.from.index().max(line.to.index()) >= network.nodes.len() {
@@ -275,8 +288,8 @@ impl NetworkBuilder {
                         }
                     }
                     Part::Valve(id) => {
-                        let seen = valve_seen.get_mut(id.index()).ok_or_else(foreign)?;
-                        if std::mem::replace(seen, true) {
+                        let place = valve_lines.get_mut(id.index()).ok_or_else(foreign)?;
+                        if place.replace(LineId(index as u32)).is_some() {
                             return Err(foreign());
                         }
                     }
@@ -290,6 +303,10 @@ impl NetworkBuilder {
                 }
             }
         }
+        network.valve_lines = valve_lines
+            .into_iter()
+            .map(|line| line.ok_or_else(|| BuildError::Foreign("a valve".to_owned())))
+            .collect::<Result<_, _>>()?;
         network.pump_lines = pump_lines
             .into_iter()
             .zip(&network.pumps)

@@ -5,10 +5,12 @@
 
 mod build;
 mod feasible;
+mod need;
 mod reach;
 mod settings;
 
 pub use build::{BuildError, NetworkBuilder};
+pub use need::{Need, Target};
 pub use reach::{Passage, Reach, Standing, Unreachable};
 pub use settings::{CheckCondition, PumpSetting, Settings, TankMode, ValveSetting};
 
@@ -177,6 +179,7 @@ pub struct Network {
     banks: Vec<Bank>,
     pumps: Vec<Pump>,
     pump_lines: Vec<LineId>,
+    valve_lines: Vec<LineId>,
     valves: Vec<Valve>,
     models: Vec<PumpModel>,
     covers: Vec<Option<Covers>>,
@@ -237,6 +240,11 @@ impl Network {
         self.pump_lines[id.index()]
     }
 
+    /// The line a valve stands in.
+    pub fn line_of_valve(&self, id: ValveId) -> LineId {
+        self.valve_lines[id.index()]
+    }
+
     /// A valve.
     pub fn valve(&self, id: ValveId) -> &Valve {
         &self.valves[id.index()]
@@ -276,6 +284,11 @@ impl Network {
     /// All pump ids.
     pub fn pump_ids(&self) -> impl ExactSizeIterator<Item = PumpId> + use<> {
         (0..self.pumps.len() as u32).map(PumpId)
+    }
+
+    /// All valve ids.
+    pub fn valve_ids(&self) -> impl ExactSizeIterator<Item = ValveId> + use<> {
+        (0..self.valves.len() as u32).map(ValveId)
     }
 
     /// The node of that name.

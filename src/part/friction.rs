@@ -1,6 +1,6 @@
 //! Friction in a full pipe: Darcy–Weisbach with Colebrook–White, Hazen–Williams, or a given friction factor.
 
-use super::{HeadLaw, HeadLoss};
+use super::{HeadLaw, HeadLoss, logarithm};
 
 /// A straight pipe with its friction law worked out for one fluid and gravity.
 #[derive(Clone, Debug, PartialEq)]
@@ -59,6 +59,14 @@ impl Friction {
         Self::HazenWilliams { r }
     }
 
+    /// Whether the law gives finite losses: sizes far out of any range do not.
+    pub fn is_finite(&self) -> bool {
+        [1e-6, 1.0].iter().all(|&q| {
+            let loss = self.loss(q);
+            loss.head.is_finite() && loss.slope.is_finite()
+        })
+    }
+
     /// A fixed Darcy friction factor `f`: h = f L/D v2/(2 g).
     pub fn fixed_factor(length: f64, bore: f64, f: f64, gravity: f64) -> Self {
         let a = area(bore);
@@ -73,14 +81,7 @@ impl HeadLaw for Friction {
     fn loss(&self, q: f64) -> HeadLoss {
         match *self {
             Self::DarcyWeisbach(ref law) => law.loss(q),
-            Self::HazenWilliams { r } => {
-                // h = r q |q|^0.852,  dh/dq = 1.852 r |q|^0.852
-                let s = r * q.abs().powf(0.852);
-                HeadLoss {
-                    head: s * q,
-                    slope: 1.852 * s,
-                }
-            }
+            Self::HazenWilliams { r } => hazen_williams_loss(r, q),
             Self::FixedFactor { r } => {
                 // h = r q |q|,  dh/dq = 2 r |q|
                 let s = r * q.abs();
@@ -90,6 +91,17 @@ impl HeadLaw for Friction {
                 }
             }
         }
+    }
+}
+
+/// Kept out of line: inlined, its power is computed for pipes of the other laws too (10 % of a station's solve).
+#[inline(never)]
+fn hazen_williams_loss(r: f64, q: f64) -> HeadLoss {
+    // h = r q |q|^0.852,  dh/dq = 1.852 r |q|^0.852
+    let s = r * q.abs().powf(0.852);
+    HeadLoss {
+        head: s * q,
+        slope: 1.852 * s,
     }
 }
 
@@ -155,33 +167,51 @@ impl DarcyWeisbach {
     }
 
     /// Colebrook–White at flow `q` > 0.
-    ///
-    /// With u = 1/(a sqrt f), a = 2/ln 10, A = Re (e/D)/(3.7 2.51 a), B = ln(Re/(2.51 a)) the implicit equation reads
-    /// `w + ln w = z`, w = A + u, z = A + B: Wright's omega function. Its derivative is dw/dz = w/(1+w), which gives the
-    /// slope of the loss without another logarithm: dh/dq = (2 h/q) w/(1+w).
-    #[inline]
     fn turbulent(&self, q: f64) -> HeadLoss {
-        let b = (self.reynolds_per_flow * q * (1.0 / (2.51 * TWO_OVER_LN10))).ln();
-        let a = self.rough_per_flow * q;
-        let z = a + b;
-        // First guess (Praks & Brkić), good to 1e-4
-        let ln_z = z.ln();
-        let w = a + b - ln_z + ln_z / (z - 0.5588 * ln_z + 1.2079);
-        // One step of Fritsch, Shafer & Crowley, fourth order: w <- w (1 + d)
-        let ln_w = w.ln();
-        let r = z - w - ln_w;
-        let w1 = 1.0 + w;
-        let t = 2.0 * w1 * (w1 + (2.0 / 3.0) * r);
-        let d = (r / w1) * (t - r) / (t - 2.0 * r);
-        // u = B - ln w, free of the cancellation in w - A; ln(1+d) by its series, d < 1e-3
-        let u = b - ln_w - d * (1.0 - d * (0.5 - d * (1.0 / 3.0 - 0.25 * d)));
-        let w = w * (1.0 + d);
-        // h = c f q2 with f = 1/(a u)2
-        let root = q / (TWO_OVER_LN10 * u);
-        let head = self.c * root * root;
+        let (root_f, share) = colebrook(self.reynolds_per_flow * q, self.rough_per_flow * q);
+        self.darcy(q, root_f, share)
+    }
+
+    /// Darcy–Weisbach from sqrt f and the share of [`colebrook`]: h = c f q2, dh/dq = 2 c f q share.
+    #[inline]
+    fn darcy(&self, q: f64, root_f: f64, share: f64) -> HeadLoss {
+        let s = self.c * root_f * root_f * q;
         HeadLoss {
-            head,
-            slope: 2.0 * head / q * w / (1.0 + w),
+            head: s * q,
+            slope: 2.0 * s * share,
+        }
+    }
+
+    /// Laminar flow and the blend, at flow `q` >= 0.
+    #[inline]
+    fn below_turbulent(&self, q: f64, reynolds: f64) -> HeadLoss {
+        if reynolds <= LAMINAR_END {
+            return HeadLoss {
+                head: self.laminar * q,
+                slope: self.laminar,
+            };
+        }
+        let t = reynolds / LAMINAR_END - 1.0;
+        let [a, b, c, d] = self.blend;
+        HeadLoss {
+            head: a + t * (b + t * (c + t * d)),
+            slope: (b + t * (2.0 * c + 3.0 * t * d)) * self.reynolds_per_flow / LAMINAR_END,
+        }
+    }
+
+    /// The loss at `q`, with [`Self::turbulent`] or what stands in for it.
+    #[inline]
+    fn loss_with(&self, q: f64, turbulent: impl Fn(f64) -> HeadLoss) -> HeadLoss {
+        let flow = q.abs();
+        let reynolds = self.reynolds_per_flow * flow;
+        let loss = if reynolds < TURBULENT_START {
+            self.below_turbulent(flow, reynolds)
+        } else {
+            turbulent(flow)
+        };
+        HeadLoss {
+            head: loss.head.copysign(q),
+            slope: loss.slope,
         }
     }
 }
@@ -189,30 +219,94 @@ impl DarcyWeisbach {
 impl HeadLaw for DarcyWeisbach {
     #[inline]
     fn loss(&self, q: f64) -> HeadLoss {
-        let flow = q.abs();
-        let reynolds = self.reynolds_per_flow * flow;
-        if reynolds <= LAMINAR_END {
-            return HeadLoss {
-                head: self.laminar * q,
-                slope: self.laminar,
-            };
+        self.loss_with(q, |flow| self.turbulent(flow))
+    }
+}
+
+/// Colebrook–White: `sqrt f` at Reynolds number `re` >= 4000, and the share `w/(1+w)` that makes the slope of the loss,
+/// dh/dq = (2 h/q) w/(1+w). `a` is A below.
+///
+/// With u = 1/(k sqrt f), k = 2/ln 10, A = Re (e/D)/(3.7 2.51 k), B = ln(Re/(2.51 k)) the implicit equation reads
+/// `w + ln w = z`, w = A + u, z = A + B: Wright's omega function, whose derivative is w/(1+w). From a first guess w, only
+/// the logarithm of Re/(2.51 k w) has to be exact: it gives the residual of the guess and, corrected, u itself.
+///
+/// Straight-line code, so that a loop over many pipes can be vectorised.
+#[inline(always)]
+fn colebrook(re: f64, a: f64) -> (f64, f64) {
+    let re = re * (1.0 / (2.51 * TWO_OVER_LN10));
+    // First guess (Praks & Brkić), good to 1e-4; rough logarithms will do
+    let z = a + logarithm::rough(re);
+    let ln_z = logarithm::rough(z);
+    let w = z - ln_z + ln_z / (z - 0.5588 * ln_z + 1.2079);
+    // l = B - ln w, and the residual r = z - w - ln w of the guess
+    let l = logarithm::exact(re / w);
+    let r = a + l - w;
+    // Fritsch, Shafer & Crowley's fourth-order step w <- w (1 + d), expanded for small r:
+    // d = e (1 + x + 2 x2), e = r/(1+w), x = e / (2 (1+w) (1 + 2 e/3))
+    let i = 1.0 / (1.0 + w);
+    let e = r * i;
+    let x = 0.5 * e * i * (1.0 - (2.0 / 3.0) * e);
+    let d = e * (1.0 + x + 2.0 * x * x);
+    // u = l - ln(1+d), free of the cancellation in w - A
+    let u = l - d * (1.0 - d * (0.5 - d * (1.0 / 3.0 - 0.25 * d)));
+    // 1/(1+w) at the corrected w is i (1 - c + c2 ..), c = i w d
+    let c = i * w * d;
+    (1.0 / (TWO_OVER_LN10 * u), 1.0 - i * (1.0 - c * (1.0 - c)))
+}
+
+/// Many pipes' Darcy–Weisbach laws, evaluated together: the same figures as one by one, in a fraction of the time, because
+/// the long chain of each evaluation then runs beside others.
+#[derive(Clone, Debug, Default)]
+pub struct DarcyWeisbachBatch {
+    laws: Vec<DarcyWeisbach>,
+    reynolds_per_flow: Vec<f64>,
+    rough_per_flow: Vec<f64>,
+    root_f: Vec<f64>,
+    share: Vec<f64>,
+}
+
+impl DarcyWeisbachBatch {
+    /// Adds a pipe; the laws keep the order in which they were added.
+    pub fn push(&mut self, law: DarcyWeisbach) {
+        self.laws.push(law);
+        self.reynolds_per_flow.push(law.reynolds_per_flow);
+        self.rough_per_flow.push(law.rough_per_flow);
+        self.root_f.push(0.0);
+        self.share.push(0.0);
+    }
+
+    /// Number of pipes.
+    pub fn len(&self) -> usize {
+        self.laws.len()
+    }
+
+    /// Whether there are none.
+    pub fn is_empty(&self) -> bool {
+        self.laws.is_empty()
+    }
+
+    /// One pipe's law.
+    pub fn law(&self, i: usize) -> &DarcyWeisbach {
+        &self.laws[i]
+    }
+
+    /// Works the friction factors of all pipes out for `flows`, one per pipe, m3/s; read them with [`Self::loss`].
+    pub fn evaluate(&mut self, flows: &[f64]) {
+        let n = self.laws.len();
+        let (flows, root_f, share) = (&flows[..n], &mut self.root_f[..n], &mut self.share[..n]);
+        let (reynolds, rough) = (&self.reynolds_per_flow[..n], &self.rough_per_flow[..n]);
+        for i in 0..n {
+            // Slower flows are laminar or blended and do not use the result.
+            let q = flows[i].abs();
+            (root_f[i], share[i]) = colebrook((reynolds[i] * q).max(TURBULENT_START), rough[i] * q);
         }
-        let loss = if reynolds < TURBULENT_START {
-            let t = reynolds / LAMINAR_END - 1.0;
-            let [a, b, c, d] = self.blend;
-            let head = a + t * (b + t * (c + t * d));
-            let slope = b + t * (2.0 * c + 3.0 * t * d);
-            HeadLoss {
-                head,
-                slope: slope * self.reynolds_per_flow / LAMINAR_END,
-            }
-        } else {
-            self.turbulent(flow)
-        };
-        HeadLoss {
-            head: loss.head.copysign(q),
-            slope: loss.slope,
-        }
+    }
+
+    /// The loss of pipe `i` at the flow `q` last given to [`Self::evaluate`].
+    #[inline]
+    pub fn loss(&self, i: usize, q: f64) -> HeadLoss {
+        let law = &self.laws[i];
+        law.loss_with(q, |flow| law.darcy(flow, self.root_f[i], self.share[i]))
     }
 }
 
@@ -245,6 +339,24 @@ mod tests {
             }
         }
         assert!(worst < 1e-12, "worst relative error {worst:e}");
+    }
+
+    #[test]
+    fn a_batch_gives_the_figures_of_each_alone() {
+        let mut batch = DarcyWeisbachBatch::default();
+        let mut flows = Vec::new();
+        for i in 0..37 {
+            let bore = 0.02 * (1.0 + i as f64);
+            let Friction::DarcyWeisbach(law) = Friction::roughness(10.0, bore, 1e-4, NU, G) else {
+                unreachable!()
+            };
+            batch.push(law);
+            flows.push(10f64.powf(-9.0 + 0.23 * i as f64) * if i % 2 == 0 { 1.0 } else { -1.0 });
+        }
+        batch.evaluate(&flows);
+        for (i, &q) in flows.iter().enumerate() {
+            assert_eq!(batch.loss(i, q), batch.law(i).loss(q));
+        }
     }
 
     #[test]

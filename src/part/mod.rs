@@ -6,6 +6,7 @@
 pub mod curve;
 pub mod fittings;
 pub mod friction;
+mod logarithm;
 pub mod materials;
 pub mod pump;
 pub mod quadratic;
@@ -18,6 +19,13 @@ pub struct HeadLoss {
     pub head: f64,
     /// Derivative of `head` by flow, m per m3/s.
     pub slope: f64,
+}
+
+impl std::ops::AddAssign for HeadLoss {
+    fn add_assign(&mut self, other: Self) {
+        self.head += other.head;
+        self.slope += other.slope;
+    }
 }
 
 /// A loss of head that depends on flow alone.

@@ -35,9 +35,22 @@ impl QuadraticLoss {
         Self::new(k / (2.0 * gravity * area * area))
     }
 
+    /// As [`Self::minor`]; none if the coefficient would not be finite.
+    pub fn minor_checked(k: f64, bore: f64, gravity: f64) -> Option<Self> {
+        let area = std::f64::consts::FRAC_PI_4 * bore * bore;
+        let r = k / (2.0 * gravity * area * area);
+        (r.is_finite() && r >= 0.0).then_some(Self { r })
+    }
+
     /// A loss of `head` (m) at flow `at` (m3/s), as equipment is specified: h = head (q/at)2.
     pub fn at(head: f64, at: f64) -> Self {
         Self::new(head / (at * at))
+    }
+
+    /// As [`Self::at`]; none if the coefficient would not be finite.
+    pub fn checked_at(head: f64, at: f64) -> Option<Self> {
+        let r = head / (at * at);
+        (r.is_finite() && r >= 0.0).then_some(Self { r })
     }
 
     /// The coefficient r, s2/m5.

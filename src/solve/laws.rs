@@ -2,139 +2,179 @@
 
 use crate::network::{Network, Settings};
 use crate::part::curve::Cover;
-use crate::part::friction::Friction;
+use crate::part::friction::{DarcyWeisbachBatch, Friction};
 use crate::part::pump::PumpLaw;
 use crate::part::quadratic::QuadraticLoss;
 use crate::part::{HeadLaw, HeadLoss, Part};
 
-/// One term of a line's law that is not quadratic.
+/// One term of a line's law that is neither quadratic nor Darcy–Weisbach friction.
 #[derive(Clone, Copy, Debug)]
 enum Term<'n> {
-    Friction(Friction),
+    HazenWilliams(Friction),
     Pump { law: PumpLaw<'n>, running: bool },
 }
 
 /// The laws of all lines of a network under one set of settings.
 ///
-/// Quadratic losses of a line are added up in one coefficient; the other terms lie side by side in memory, those of a line
-/// together. Which terms there are depends on the network alone: new settings write numbers only.
+/// Quadratic losses of a line are added up in one coefficient; Darcy–Weisbach pipes lie in a batch, the other terms side by
+/// side in memory, those of a line together. Which terms there are depends on the network alone: new settings write
+/// numbers only.
 #[derive(Clone, Debug)]
 pub(crate) struct Laws<'n> {
+    /// Per line, the quadratic losses that no setting changes, and all of them.
+    fixed_r: Vec<f64>,
     r: Vec<f64>,
+    pipes: DarcyWeisbachBatch,
+    /// Per pipe, its line and its flow.
+    pipe_lines: Vec<u32>,
+    pipe_flows: Vec<f64>,
     terms: Vec<Term<'n>>,
-    /// Terms of line i: `terms[first[i]..first[i + 1]]`.
-    first: Vec<u32>,
+    /// Per pump, its term.
+    pump_terms: Vec<u32>,
+    /// Pipes of line i: `first_pipe[i]..first_pipe[i + 1]`; terms alike.
+    first_pipe: Vec<u32>,
+    first_term: Vec<u32>,
 }
 
 /// One line's law; a [`HeadLaw`] like those of its parts.
 #[derive(Clone, Copy)]
 pub(crate) struct LineLaw<'a, 'n> {
-    r: f64,
-    terms: &'a [Term<'n>],
+    laws: &'a Laws<'n>,
+    line: usize,
 }
 
 impl HeadLaw for LineLaw<'_, '_> {
-    #[inline]
     fn loss(&self, q: f64) -> HeadLoss {
-        // g(q) = r q |q| + sum of the other terms
-        let s = self.r * q.abs();
-        let mut sum = HeadLoss {
-            head: s * q,
-            slope: 2.0 * s,
-        };
-        for term in self.terms {
-            let loss = match term {
-                Term::Friction(law) => law.loss(q),
-                Term::Pump { law, running: true } => law.loss(q),
-                Term::Pump { running: false, .. } => continue,
-            };
-            sum.head += loss.head;
-            sum.slope += loss.slope;
-        }
-        sum
+        let pipes = &self.laws.pipes;
+        self.laws.sum(self.line, q, |pipe| pipes.law(pipe).loss(q))
     }
 }
 
 impl<'n> Laws<'n> {
     /// Lays out the terms of every line; [`Self::set`] writes their numbers.
     pub fn new(network: &'n Network) -> Self {
-        let mut terms = Vec::new();
-        let mut first = vec![0];
-        for line in network.lines() {
-            terms.extend(line.parts.iter().filter_map(|part| match part {
-                Part::Pipe(pipe) => Some(Term::Friction(pipe.friction)),
-                Part::Pump(id) => {
-                    let law = PumpLaw {
-                        head: &network.model(*id).head,
-                        ratio: 1.0,
-                        wear: 0.0,
-                    };
-                    Some(Term::Pump {
-                        law,
-                        running: false,
-                    })
-                }
-                Part::Loss(_) | Part::Valve(_) | Part::CheckValve(_) => None,
-            }));
-            first.push(terms.len() as u32);
-        }
-        Self {
+        let mut laws = Self {
+            fixed_r: Vec::new(),
             r: vec![0.0; network.lines().len()],
-            terms,
-            first,
+            pipes: DarcyWeisbachBatch::default(),
+            pipe_lines: Vec::new(),
+            pipe_flows: Vec::new(),
+            terms: Vec::new(),
+            pump_terms: vec![0; network.pumps().len()],
+            first_pipe: vec![0],
+            first_term: vec![0],
+        };
+        for (index, line) in network.lines().iter().enumerate() {
+            laws.fixed_r.push(0.0);
+            for part in &line.parts {
+                laws.lay_out(network, index, part);
+            }
+            laws.first_pipe.push(laws.pipes.len() as u32);
+            laws.first_term.push(laws.terms.len() as u32);
+        }
+        laws.pipe_flows = vec![0.0; laws.pipes.len()];
+        laws
+    }
+
+    fn lay_out(&mut self, network: &'n Network, line: usize, part: &Part) {
+        match part {
+            Part::Pipe(pipe) => match pipe.friction {
+                Friction::DarcyWeisbach(law) => {
+                    self.pipes.push(law);
+                    self.pipe_lines.push(line as u32);
+                }
+                Friction::FixedFactor { r } => self.fixed_r[line] += r,
+                Friction::HazenWilliams { .. } => {
+                    self.terms.push(Term::HazenWilliams(pipe.friction))
+                }
+            },
+            Part::Loss(loss) | Part::CheckValve(loss) => self.fixed_r[line] += loss.r(),
+            Part::Pump(id) => {
+                let law = PumpLaw {
+                    head: &network.model(*id).head,
+                    ratio: 1.0,
+                    wear: 0.0,
+                };
+                self.pump_terms[id.index()] = self.terms.len() as u32;
+                self.terms.push(Term::Pump {
+                    law,
+                    running: false,
+                });
+            }
+            // its loss is a setting
+            Part::Valve(_) => {}
         }
     }
 
     /// Writes the numbers for these settings. With a `cover`, drooping head curves are replaced by that falling one.
     pub fn set(&mut self, network: &'n Network, settings: &Settings, cover: Option<Cover>) {
-        let mut terms = self.terms.iter_mut();
-        for ((id, line), r) in network.line_ids().zip(network.lines()).zip(&mut self.r) {
-            *r = settings.fouling(id);
-            for part in &line.parts {
-                match part {
-                    Part::Pipe(_) => {
-                        terms.next();
-                    }
-                    Part::Loss(loss) | Part::CheckValve(loss) => *r += loss.r(),
-                    Part::Valve(id) => {
-                        let open = network.valve(*id).loss_at(settings.valve(*id).opening);
-                        *r += open.map_or(0.0, |loss| loss.r());
-                    }
-                    Part::Pump(id) => {
-                        let setting = settings.pump(*id);
-                        if let (false, Some(standing)) =
-                            (setting.running, network.pump(*id).when_stopped)
-                        {
-                            *r += standing.r();
-                        }
-                        let head = cover
-                            .and_then(|cover| network.covers(*id).map(|covers| covers.get(cover)))
-                            .unwrap_or(&network.model(*id).head);
-                        let law = PumpLaw {
-                            head,
-                            ratio: setting.ratio(),
-                            wear: setting.wear,
-                        };
-                        if let Some(term) = terms.next() {
-                            *term = Term::Pump {
-                                law,
-                                running: setting.running,
-                            };
-                        }
-                    }
-                }
+        for ((r, fixed), line) in self.r.iter_mut().zip(&self.fixed_r).zip(network.line_ids()) {
+            *r = fixed + settings.fouling(line);
+        }
+        for id in network.valve_ids() {
+            let open = network.valve(id).loss_at(settings.valve(id).opening);
+            self.r[network.line_of_valve(id).index()] += open.map_or(0.0, QuadraticLoss::r);
+        }
+        for id in network.pump_ids() {
+            let setting = settings.pump(id);
+            if let (false, Some(standing)) = (setting.running, network.pump(id).when_stopped) {
+                self.r[network.line_of(id).index()] += standing.r();
             }
+            let head = cover
+                .and_then(|cover| network.covers(id).map(|covers| covers.get(cover)))
+                .unwrap_or(&network.model(id).head);
+            let law = PumpLaw {
+                head,
+                ratio: setting.ratio(),
+                wear: setting.wear,
+            };
+            self.terms[self.pump_terms[id.index()] as usize] = Term::Pump {
+                law,
+                running: setting.running,
+            };
         }
     }
 
     /// The law of line number `line`.
     #[inline]
     pub fn line(&self, line: usize) -> LineLaw<'_, 'n> {
-        let (from, to) = (self.first[line] as usize, self.first[line + 1] as usize);
-        LineLaw {
-            r: self.r[line],
-            terms: &self.terms[from..to],
+        LineLaw { laws: self, line }
+    }
+
+    /// Prepares [`Self::loss_at`] for these flows, one per line.
+    pub fn evaluate(&mut self, flows: &[f64]) {
+        for (q, line) in self.pipe_flows.iter_mut().zip(&self.pipe_lines) {
+            *q = flows[*line as usize];
         }
+        self.pipes.evaluate(&self.pipe_flows);
+    }
+
+    /// The loss of a line at the flow `q` last given to [`Self::evaluate`].
+    #[inline]
+    pub fn loss_at(&self, line: usize, q: f64) -> HeadLoss {
+        self.sum(line, q, |pipe| self.pipes.loss(pipe, q))
+    }
+
+    /// g(q) = r q |q| + sum over pipes + sum over the other terms
+    #[inline]
+    fn sum(&self, line: usize, q: f64, pipe: impl Fn(usize) -> HeadLoss) -> HeadLoss {
+        let s = self.r[line] * q.abs();
+        let mut sum = HeadLoss {
+            head: s * q,
+            slope: 2.0 * s,
+        };
+        for i in self.first_pipe[line]..self.first_pipe[line + 1] {
+            sum += pipe(i as usize);
+        }
+        for term in &self.terms[self.first_term[line] as usize..self.first_term[line + 1] as usize]
+        {
+            match term {
+                Term::HazenWilliams(law) => sum += law.loss(q),
+                Term::Pump { law, running: true } => sum += law.loss(q),
+                Term::Pump { running: false, .. } => {}
+            }
+        }
+        sum
     }
 }
 

@@ -83,7 +83,8 @@ impl Newton {
         one_way: OneWay,
         effort: &mut Effort,
     ) -> Outcome {
-        let mut settled = one_way == OneWay::Frozen || shut_wrong_way(system, state);
+        let mut settled = one_way == OneWay::Frozen
+            || (shut_wrong_way(system, state) && !any_to_open(system, state));
         let mut best = f64::INFINITY;
         let mut since_best = 0;
         for _ in 0..LIMIT {
@@ -116,7 +117,8 @@ impl Newton {
     }
 
     /// Residuals and conductances at `state`; returns the worst residual over its tolerance.
-    fn evaluate(&mut self, system: &System, state: &State) -> f64 {
+    fn evaluate(&mut self, system: &mut System, state: &State) -> f64 {
+        system.laws.evaluate(&state.flows);
         let mut worst_head: f64 = 0.0;
         let mut largest_flow: f64 = 0.0;
         for (imbalance, draw) in self.imbalance.iter_mut().zip(&system.draws) {
@@ -128,7 +130,7 @@ impl Newton {
                 continue;
             }
             let q = state.flows[line];
-            let loss = system.loss(line, q);
+            let loss = system.laws.loss_at(line, q);
             let (from, to) = system.ends[line];
             let (above, below) = (state.heads[from as usize], state.heads[to as usize]);
             let r = loss.head - system.drop(state, line);
@@ -239,4 +241,12 @@ fn shut_wrong_way(system: &System, state: &mut State) -> bool {
         }
     }
     none
+}
+
+/// Whether a line that the last answer held shut now has the head to open. A warm start may balance everywhere else.
+fn any_to_open(system: &System, state: &State) -> bool {
+    system.live.iter().any(|&line| {
+        let line = line as usize;
+        state.shut[line] && system.push(state, line) > HEAD.absolute
+    })
 }

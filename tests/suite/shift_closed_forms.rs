@@ -39,6 +39,7 @@ fn shift(lasts: f64, report_every: f64, tanks: Vec<Tank>) -> Shift {
 fn record(network: &Network, shift: &Shift, plan: &Plan) -> Record {
     let mut record = Record::new();
     let outcome = run(network, shift, plan, &mut record).unwrap();
+    println!("{:?}", outcome.effort);
     assert!(outcome.score.volume_error < 1e-12, "{:e}", outcome.score.volume_error);
     record
 }

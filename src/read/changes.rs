@@ -1,0 +1,555 @@
+//! Changes to a system by path, `NAME.key: value`: what `cases` are made of, and the options of the command line.
+//!
+//! A change is made in the tree of the file before that is read, so that a changed value passes the same checks as a written
+//! one. The place of the new value is the place in the case.
+
+use std::collections::BTreeMap;
+
+use super::context::{Context, scalar_text};
+use super::lines::PARTS;
+use super::names::EVERY;
+use super::yaml::{Form, Key, Marked};
+use crate::diagnostic::{Diagnostic, Place, nearest};
+
+/// One change.
+#[derive(Clone, Debug)]
+pub struct Change {
+    path: Key,
+    value: Marked,
+}
+
+impl Change {
+    /// From text, as on a command line: `Change::new("duty.1.speed", "90 %")`.
+    pub fn new(path: &str, value: &str) -> Self {
+        let scalar = match serde_yaml::from_str::<serde_yaml::Value>(value) {
+            Ok(plain) if plain.is_bool() || plain.is_number() => plain,
+            _ => value.into(),
+        };
+        let place = Place::default();
+        Self {
+            path: Key {
+                name: path.to_owned(),
+                place,
+            },
+            value: Marked {
+                place,
+                value: Form::Scalar(scalar),
+            },
+        }
+    }
+
+    pub(super) fn marked(path: Key, value: Marked) -> Self {
+        Self { path, value }
+    }
+
+    /// The path as written.
+    pub fn path(&self) -> &str {
+        &self.path.name
+    }
+
+    /// The value as written.
+    pub fn value(&self) -> String {
+        scalar_text(&self.value).unwrap_or_else(|| "(a map)".to_owned())
+    }
+}
+
+/// Changes to single members of a bank: by line and number.
+#[derive(Default)]
+pub(super) struct MemberChanges {
+    by_member: BTreeMap<(String, u32), Vec<PartChange>>,
+}
+
+/// A key of some parts of a line.
+#[derive(Clone)]
+struct PartChange {
+    /// The parts of this kind, and for a pump with a name only that one.
+    kind: &'static str,
+    pump: Option<String>,
+    key: Key,
+    value: Marked,
+}
+
+impl MemberChanges {
+    pub fn members_of(&self, line: &str) -> Vec<u32> {
+        self.by_member
+            .keys()
+            .filter(|(name, _)| name == line)
+            .map(|(_, member)| *member)
+            .collect()
+    }
+
+    pub fn applied(&self, line: &str, member: u32, node: &Marked) -> Marked {
+        let mut node = node.clone();
+        for change in self
+            .by_member
+            .get(&(line.to_owned(), member))
+            .into_iter()
+            .flatten()
+        {
+            change.apply(&mut node);
+        }
+        node
+    }
+}
+
+/// Keys that a part may be given by a change, and those that it replaces.
+fn part_keys(kind: &str) -> &'static [&'static str] {
+    match kind {
+        "pipe" => &[
+            "length",
+            "bore",
+            "roughness",
+            "material",
+            "c_factor",
+            "friction_factor",
+            "fittings",
+            "k",
+        ],
+        "loss" => &["k", "fittings", "bore"],
+        "valve" => &["k", "kv", "cv", "bore", "open", "opening", "characteristic"],
+        "check_valve" => &["k", "kv", "cv", "bore", "opening", "characteristic"],
+        "equipment" => &["loss", "at"],
+        _ => &[
+            "model",
+            "elevation",
+            "speed",
+            "impeller",
+            "wear",
+            "running",
+            "when_stopped",
+        ],
+    }
+}
+
+/// Keys of which only one can stand; a new one takes the place of the others.
+const EXCLUSIVE: [&[&str]; 4] = [
+    &["roughness", "material", "c_factor", "friction_factor"],
+    &["k", "kv", "cv"],
+    &["elevation", "barometer"],
+    &["area", "diameter"],
+];
+
+impl PartChange {
+    fn apply(&self, line: &mut Marked) {
+        for (kind, part) in parts_mut(line) {
+            let named =
+                |pump: &String| get(part, "name").and_then(scalar_text).as_ref() == Some(pump);
+            if kind == self.kind && self.pump.as_ref().is_none_or(named) {
+                let is_k_beside_friction = self.kind == "pipe" && self.key.name == "k";
+                set(part, &self.key, &self.value, !is_k_beside_friction);
+            }
+        }
+    }
+}
+
+/// Makes the changes in the tree; those to members of banks are handed back.
+pub(super) fn apply(cx: &mut Context, root: &mut Marked, changes: &[Change]) -> MemberChanges {
+    let mut members = MemberChanges::default();
+    for change in changes {
+        if let Err(diagnostic) = one(root, change, &mut members) {
+            cx.push(*diagnostic);
+        }
+    }
+    members
+}
+
+type Outcome = Result<(), Box<Diagnostic>>;
+
+fn fail(change: &Change, message: String, help: impl Into<String>) -> Outcome {
+    Err(Box::new(
+        Diagnostic::error("change", change.path.place, message).help(help),
+    ))
+}
+
+fn one(root: &mut Marked, change: &Change, members: &mut MemberChanges) -> Outcome {
+    let path = change.path.name.clone();
+    let mut words: Vec<&str> = path.split('.').collect();
+    let key = match words.pop() {
+        Some(key) if !words.is_empty() => Key {
+            name: key.to_owned(),
+            place: change.path.place,
+        },
+        _ => {
+            let message = format!("`{path}` is no path to a value");
+            return fail(
+                change,
+                message,
+                "write `NAME.key`, for example `duty.1.speed` or `rising_main.roughness`",
+            );
+        }
+    };
+    match words[0] {
+        name @ ("fluid" | "site") if words.len() == 1 => {
+            let Some(section) = entry(root, name, change.path.place) else {
+                return Ok(());
+            };
+            if name == "fluid" && (key.name == "water" || get(section, "water").is_some()) {
+                section.value = Form::Map(Vec::new());
+            }
+            set(section, &key, &change.value, true);
+            Ok(())
+        }
+        EVERY => every(root, &words[1..], &key, change),
+        name => named(root, name, &words[1..], key, change, members),
+    }
+}
+
+/// `all.KEY` and `all.PART.KEY`.
+fn every(root: &mut Marked, words: &[&str], key: &Key, change: &Change) -> Outcome {
+    let kind = match words {
+        [] => kind_with_key(&PARTS, key, change, EVERY)?,
+        [kind] => match PARTS.iter().find(|part| *part == kind) {
+            Some(kind) => kind,
+            None => {
+                return fail(
+                    change,
+                    format!("no part is called `{kind}`"),
+                    format!("parts are `{}`", PARTS.join("`, `")),
+                );
+            }
+        },
+        _ => {
+            return fail(
+                change,
+                format!("`{}` is no path to a value", change.path.name),
+                "write `all.key` or `all.PART.key`",
+            );
+        }
+    };
+    let mut count = 0;
+    for (_, line) in section_mut(root, "lines") {
+        for (found, part) in parts_mut(line) {
+            // One way of giving friction does not turn into another for every pipe at once.
+            let by_c = ["c_factor", "friction_factor"]
+                .iter()
+                .find(|way| get(part, way).is_some());
+            let other_way = match key.name.as_str() {
+                "roughness" | "material" => by_c.is_some(),
+                way @ ("c_factor" | "friction_factor") => by_c != Some(&way),
+                _ => false,
+            };
+            if found == kind && !other_way {
+                set(
+                    part,
+                    key,
+                    &change.value,
+                    !(kind == "pipe" && key.name == "k"),
+                );
+                count += 1;
+            }
+        }
+    }
+    if count == 0 {
+        return fail(
+            change,
+            format!("no {kind} of this system has `{}`", key.name),
+            "check the key",
+        );
+    }
+    Ok(())
+}
+
+/// The one kind of part that has this key; an error that lists the ways where it is not one.
+fn kind_with_key(
+    kinds: &[&'static str],
+    key: &Key,
+    change: &Change,
+    name: &str,
+) -> Result<&'static str, Box<Diagnostic>> {
+    let mut fitting: Vec<&'static str> = kinds
+        .iter()
+        .copied()
+        .filter(|kind| part_keys(kind).contains(&key.name.as_str()))
+        .collect();
+    fitting.dedup();
+    match fitting.as_slice() {
+        [kind] => Ok(kind),
+        [] => {
+            let known: Vec<&str> = kinds
+                .iter()
+                .flat_map(|kind| part_keys(kind))
+                .copied()
+                .collect();
+            let near = nearest(&key.name, known.iter().copied());
+            let help = near.map_or(format!("keys there: `{}`", known.join("`, `")), |near| {
+                format!("did you mean `{near}`?")
+            });
+            fail(
+                change,
+                format!("`{name}` has nothing called `{}`", key.name),
+                help,
+            )
+            .map(|()| "")
+        }
+        several => {
+            let ways: Vec<String> = several
+                .iter()
+                .map(|kind| format!("`{name}.{kind}.{}`", key.name))
+                .collect();
+            let message = format!("`{}` of `{name}` could be that of several parts", key.name);
+            fail(change, message, format!("say which: {}", ways.join(" or "))).map(|()| "")
+        }
+    }
+}
+
+/// A node, line, bank member, pump or pump model by its name.
+fn named(
+    root: &mut Marked,
+    name: &str,
+    words: &[&str],
+    key: Key,
+    change: &Change,
+    members: &mut MemberChanges,
+) -> Outcome {
+    if let (Some(node), []) = (find(root, "nodes", name), words) {
+        return node_change(node, key, change);
+    }
+    if let Some(line) = find(root, "lines", name) {
+        return line_change(line, name, None, words, key, change, members);
+    }
+    let named_pump = section_mut(root, "lines")
+        .into_iter()
+        .find_map(|(line_name, line)| {
+            let has = parts_mut(line).into_iter().any(|(kind, part)| {
+                kind == "pump" && get(part, "name").and_then(scalar_text).as_deref() == Some(name)
+            });
+            has.then(|| (line_name.to_owned(), line))
+        });
+    if let Some((line_name, line)) = named_pump {
+        return line_change(line, &line_name, Some(name), words, key, change, members);
+    }
+    if let (Some(model), []) = (find(root, "pump_models", name), words) {
+        set(model, &key, &change.value, true);
+        return Ok(());
+    }
+    let mut names: Vec<String> = Vec::new();
+    for section in ["nodes", "lines", "pump_models"] {
+        names.extend(
+            section_mut(root, section)
+                .into_iter()
+                .map(|(name, _)| name.to_owned()),
+        );
+    }
+    let near = nearest(name, names.iter().map(String::as_str));
+    let help = near.map_or(
+        "names are those of nodes, lines, pumps and pump models".to_owned(),
+        |near| format!("did you mean `{near}`?"),
+    );
+    fail(
+        change,
+        format!(
+            "`{}` leads nowhere: nothing is called `{name}`",
+            change.path.name
+        ),
+        help,
+    )
+}
+
+fn node_change(node: &mut Marked, mut key: Key, change: &Change) -> Outcome {
+    let Form::Map(kinds) = &mut node.value else {
+        return Ok(());
+    };
+    let [(kind, inner)] = kinds.as_mut_slice() else {
+        return Ok(());
+    };
+    let short = if kind.name == "reservoir" {
+        "surface"
+    } else {
+        "elevation"
+    };
+    if scalar_text(inner).is_some() {
+        let written = Key {
+            name: short.to_owned(),
+            place: inner.place,
+        };
+        let map = Form::Map(vec![(written, inner.clone())]);
+        *inner = Marked {
+            place: inner.place,
+            value: map,
+        };
+    }
+    if kind.name == "reservoir" && key.name == "level" {
+        key.name = "surface".to_owned();
+    }
+    set(inner, &key, &change.value, true);
+    Ok(())
+}
+
+fn line_change(
+    line: &mut Marked,
+    line_name: &str,
+    pump: Option<&str>,
+    words: &[&str],
+    key: Key,
+    change: &Change,
+    members: &mut MemberChanges,
+) -> Outcome {
+    let count = get(line, "count")
+        .and_then(scalar_text)
+        .and_then(|count| count.parse::<u32>().ok());
+    let (member, words) = match words {
+        [number, rest @ ..] if number.parse::<u32>().is_ok() => (number.parse::<u32>().ok(), rest),
+        _ => (None, words),
+    };
+    if let Some(member) = member {
+        let highest = count.unwrap_or(0);
+        if member == 0 || member > highest {
+            let message = format!("`{line_name}` has no member {member}");
+            let help = match highest {
+                0 => format!("it is a single line: write `{line_name}.{}`", key.name),
+                highest => format!("its members are {line_name}.1 to {line_name}.{highest}"),
+            };
+            return fail(change, message, help);
+        }
+    }
+    let kinds: Vec<&'static str> = {
+        let mut kinds: Vec<&'static str> =
+            parts_mut(line).into_iter().map(|(kind, _)| kind).collect();
+        kinds.sort_unstable();
+        kinds.dedup();
+        kinds
+    };
+    if pump.is_none()
+        && member.is_none()
+        && words.is_empty()
+        && ["count", "from_port", "to_port"].contains(&key.name.as_str())
+    {
+        set(line, &key, &change.value, true);
+        return Ok(());
+    }
+    let shown = pump.unwrap_or(line_name);
+    let kind = match (pump, words) {
+        (Some(_), []) => kind_with_key(&["pump"], &key, change, shown)?,
+        (None, []) => kind_with_key(&kinds, &key, change, shown)?,
+        (None, [word]) => match kinds.iter().find(|kind| *kind == word) {
+            Some(kind) => kind_with_key(&[*kind], &key, change, shown)?,
+            None => {
+                return fail(
+                    change,
+                    format!("`{line_name}` has no part `{word}`"),
+                    format!("its parts are `{}`", kinds.join("`, `")),
+                );
+            }
+        },
+        _ => {
+            return fail(
+                change,
+                format!("`{}` is no path to a value", change.path.name),
+                "write `NAME.key` or `NAME.PART.key`",
+            );
+        }
+    };
+    let part_change = PartChange {
+        kind,
+        pump: pump.map(str::to_owned),
+        key,
+        value: change.value.clone(),
+    };
+    match member {
+        Some(member) => members
+            .by_member
+            .entry((line_name.to_owned(), member))
+            .or_default()
+            .push(part_change),
+        None => part_change.apply(line),
+    }
+    Ok(())
+}
+
+fn get<'a>(node: &'a Marked, key: &str) -> Option<&'a Marked> {
+    match &node.value {
+        Form::Map(entries) => entries
+            .iter()
+            .find(|(k, _)| k.name == key)
+            .map(|(_, value)| value),
+        _ => None,
+    }
+}
+
+/// The entry of that name, made if it is not there; none if the node is no map.
+fn entry<'a>(node: &'a mut Marked, name: &str, place: Place) -> Option<&'a mut Marked> {
+    let Form::Map(entries) = &mut node.value else {
+        return None;
+    };
+    let at = entries
+        .iter()
+        .position(|(key, _)| key.name == name)
+        .unwrap_or_else(|| {
+            let key = Key {
+                name: name.to_owned(),
+                place,
+            };
+            entries.push((
+                key,
+                Marked {
+                    place,
+                    value: Form::Map(Vec::new()),
+                },
+            ));
+            entries.len() - 1
+        });
+    entries.get_mut(at).map(|(_, value)| value)
+}
+
+fn set(node: &mut Marked, key: &Key, value: &Marked, exclusive: bool) {
+    let Form::Map(entries) = &mut node.value else {
+        return;
+    };
+    if exclusive
+        && let Some(others) = EXCLUSIVE
+            .iter()
+            .find(|group| group.contains(&key.name.as_str()))
+    {
+        entries.retain(|(k, _)| k.name == key.name || !others.contains(&k.name.as_str()));
+    }
+    match entries.iter_mut().find(|(k, _)| k.name == key.name) {
+        Some((_, old)) => *old = value.clone(),
+        None => entries.push((key.clone(), value.clone())),
+    }
+}
+
+fn section_mut<'a>(root: &'a mut Marked, section: &str) -> Vec<(&'a str, &'a mut Marked)> {
+    let Form::Map(entries) = &mut root.value else {
+        return Vec::new();
+    };
+    let found = entries.iter_mut().find(|(key, _)| key.name == section);
+    match found.map(|(_, node)| &mut node.value) {
+        Some(Form::Map(entries)) => entries
+            .iter_mut()
+            .map(|(key, node)| (key.name.as_str(), node))
+            .collect(),
+        _ => Vec::new(),
+    }
+}
+
+fn find<'a>(root: &'a mut Marked, section: &str, name: &str) -> Option<&'a mut Marked> {
+    section_mut(root, section)
+        .into_iter()
+        .find(|(found, _)| *found == name)
+        .map(|(_, node)| node)
+}
+
+/// The parts of a line with their kinds, listed or direct.
+fn parts_mut(line: &mut Marked) -> Vec<(&'static str, &mut Marked)> {
+    let Form::Map(entries) = &mut line.value else {
+        return Vec::new();
+    };
+    let mut parts = Vec::new();
+    for (key, value) in entries {
+        if let Some(kind) = PARTS.iter().find(|kind| **kind == key.name) {
+            parts.push((*kind, value));
+        } else if let ("parts", Form::List(items)) = (key.name.as_str(), &mut value.value) {
+            for item in items {
+                let Form::Map(inner) = &mut item.value else {
+                    continue;
+                };
+                for (key, value) in inner {
+                    if let Some(kind) = PARTS.iter().find(|kind| **kind == key.name) {
+                        parts.push((*kind, value));
+                    }
+                }
+            }
+        }
+    }
+    parts
+}

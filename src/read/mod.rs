@@ -1,0 +1,258 @@
+//! From a system file to a network. All problems of a file are found in one pass, each with its place.
+//!
+//! ```text
+//! bytes -yaml-> tree with places -changes-> tree -sections-> Spec (typed, SI) -lower-> Network, needs
+//! ```
+//!
+//! Touches no file: what a system file names is fetched by a function that the caller gives.
+
+mod changes;
+mod context;
+mod lines;
+mod lower;
+mod models;
+mod names;
+mod needs;
+mod nodes;
+mod site;
+mod spec;
+mod table;
+mod yaml;
+
+pub use changes::Change;
+pub use needs::Case;
+pub use table::Load;
+
+use crate::diagnostic::{Diagnostic, Diagnostics, Severity};
+use crate::network::{Need, Network};
+use crate::units::UnitSet;
+use changes::MemberChanges;
+use context::{Context, Fields};
+use spec::Spec;
+use yaml::Marked;
+
+/// Sections of a system file.
+const SECTIONS: [&str; 14] = [
+    "title",
+    "units",
+    "fluid",
+    "site",
+    "nodes",
+    "lines",
+    "pump_models",
+    "needs",
+    "cases",
+    "schedules",
+    "shift",
+    "staging",
+    "faults",
+    "tariff",
+];
+
+/// A system: the network and what is asked of it, in the user's terms.
+#[derive(Clone, Debug)]
+pub struct System {
+    /// The file's title.
+    pub title: Option<String>,
+    /// The units in which the file speaks.
+    pub units: UnitSet,
+    /// The network.
+    pub network: Network,
+    /// What it has to do.
+    pub needs: Vec<Need>,
+    /// What should be known about the file though it can be used.
+    pub cautions: Vec<Diagnostic>,
+}
+
+/// A file that has been read as YAML; its content is read each time a system is asked for.
+pub struct Document {
+    text: String,
+    root: Marked,
+}
+
+/// A text that cannot be used, and why.
+#[derive(Clone, Debug)]
+pub struct Rejected {
+    /// The text, as far as it could be read.
+    pub text: String,
+    /// Its problems.
+    pub diagnostics: Diagnostics,
+}
+
+impl std::fmt::Display for Rejected {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        f.write_str(&self.diagnostics.render(&self.text, "system file", false))
+    }
+}
+
+impl std::error::Error for Rejected {}
+
+/// A system that needs no other file.
+///
+/// # Errors
+/// All problems of the text.
+///
+/// ```
+/// let text = "
+/// nodes: {pond: {reservoir: 3 m}, tower: {reservoir: 20 m}}
+/// lines: {main: {from: tower, to: pond, pipe: {length: 100 m, bore: 80 mm, roughness: 0.1 mm}}}
+/// ";
+/// let system = dutybank::read::system(text)?;
+/// assert_eq!(system.network.lines()[0].name, "main");
+/// # Ok::<(), dutybank::read::Rejected>(())
+/// ```
+pub fn system(text: &str) -> Result<System, Rejected> {
+    let none = |_: &str| Err(std::io::Error::other("no other files can be read here"));
+    let document = Document::parse(text.as_bytes())?;
+    document.system(&[], &none).map_err(|diagnostics| Rejected {
+        text: text.to_owned(),
+        diagnostics,
+    })
+}
+
+impl Document {
+    /// Reads the YAML.
+    ///
+    /// # Errors
+    /// What makes it unreadable as YAML.
+    pub fn parse(bytes: &[u8]) -> Result<Self, Rejected> {
+        match yaml::parse(bytes) {
+            Ok((text, root)) => Ok(Self { text, root }),
+            Err((text, diagnostic)) => {
+                let mut diagnostics = Diagnostics::default();
+                diagnostics.push(diagnostic);
+                Err(Rejected { text, diagnostics })
+            }
+        }
+    }
+
+    /// The text.
+    pub fn text(&self) -> &str {
+        &self.text
+    }
+
+    /// The system with these changes made, which are checked like the file.
+    ///
+    /// # Errors
+    /// All problems of the file and the changes.
+    pub fn system(&self, changes: &[Change], load: Load) -> Result<System, Diagnostics> {
+        let mut cx = Context {
+            units: UnitSet::metric(),
+            diagnostics: Diagnostics::default(),
+        };
+        let mut root = self.root.clone();
+        let members = changes::apply(&mut cx, &mut root, changes);
+        let lowered = read(&mut cx, &root, &members, load);
+        let Context {
+            units,
+            mut diagnostics,
+        } = cx;
+        diagnostics.sort();
+        match lowered {
+            Some((title, network, needs)) if !diagnostics.has_errors() => {
+                let list = diagnostics.list().iter();
+                let cautions = list
+                    .filter(|d| d.severity == Severity::Caution)
+                    .cloned()
+                    .collect();
+                Ok(System {
+                    title,
+                    units,
+                    network,
+                    needs,
+                    cautions,
+                })
+            }
+            _ => Err(diagnostics),
+        }
+    }
+
+    /// The cases of the file, in its order.
+    ///
+    /// # Errors
+    /// Problems of the form of `cases`; the changes in them are checked when a system is asked for.
+    pub fn cases(&self) -> Result<Vec<Case>, Diagnostics> {
+        let mut cx = Context {
+            units: UnitSet::metric(),
+            diagnostics: Diagnostics::default(),
+        };
+        let section = cx
+            .any_map(&self.root, "a system file", "nodes")
+            .and_then(|fields| fields.get("cases"));
+        let cases = section.map_or_else(Vec::new, |node| needs::cases(&mut cx, node));
+        if cx.diagnostics.has_errors() {
+            Err(cx.diagnostics)
+        } else {
+            Ok(cases)
+        }
+    }
+
+    /// All problems of the file: as it stands, and with the changes of each case.
+    ///
+    /// # Errors
+    /// As said.
+    pub fn check(&self, load: Load) -> Result<System, Diagnostics> {
+        let system = self.system(&[], load)?;
+        let mut all = Diagnostics::default();
+        for case in self.cases()? {
+            if let Err(diagnostics) = self.system(&case.changes, load) {
+                diagnostics
+                    .list()
+                    .iter()
+                    .filter(|d| d.severity == Severity::Error)
+                    .for_each(|d| all.push(d.clone()));
+            }
+        }
+        if all.has_errors() {
+            Err(all)
+        } else {
+            Ok(system)
+        }
+    }
+}
+
+/// The sections in the order in which they need each other.
+fn read(
+    cx: &mut Context,
+    root: &Marked,
+    members: &MemberChanges,
+    load: Load,
+) -> Option<(Option<String>, Network, Vec<Need>)> {
+    let fields = cx.map(root, "a system file", &SECTIONS)?;
+    if let Some(node) = fields.get("units") {
+        site::units(cx, node);
+    }
+    let spec = spec(cx, &fields, members, load);
+    let title = spec.title.clone();
+    let (network, needs) = lower::lower(cx, spec)?;
+    Some((title, network, needs))
+}
+
+fn spec(cx: &mut Context, fields: &Fields, members: &MemberChanges, load: Load) -> Spec {
+    let title = fields
+        .get("title")
+        .and_then(|node| cx.text(node, "`title`"));
+    let site = site::site(cx, fields.get("fluid"), fields.get("site"));
+    let nodes = cx.required(fields, "nodes", "a system file", "{pond: {reservoir: 3 m}}");
+    let nodes = nodes.map_or_else(Vec::new, |node| nodes::nodes(cx, node));
+    let lines = cx.required(
+        fields,
+        "lines",
+        "a system file",
+        "{main: {from: A, to: B, pipe: {..}}}",
+    );
+    let lines = lines.map_or_else(Vec::new, |node| lines::lines(cx, &site, node, members));
+    let models = fields.get("pump_models");
+    let models = models.map_or_else(Vec::new, |node| models::models(cx, &site, node, load));
+    let needs = fields
+        .get("needs")
+        .map_or_else(Vec::new, |node| needs::needs(cx, node));
+    Spec {
+        title,
+        site,
+        nodes,
+        lines,
+        models,
+        needs,
+    }
+}

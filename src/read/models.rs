@@ -1,0 +1,383 @@
+//! `pump_models`: curves from columns, from a CSV file or from a polynomial.
+
+use super::context::{Bound, Context, Fields, found};
+use super::spec::{ModelSpec, SiteSpec};
+use super::table::{self, Load};
+use super::yaml::{Key, Marked};
+use crate::diagnostic::{Diagnostic, Place};
+use crate::part::curve::{Curve, Polynomial};
+use crate::part::pump::{Motor, PowerCurve};
+use crate::units::{Kind, SpeedValue};
+
+const MODEL_KEYS: [&str; 6] = [
+    "speed",
+    "impeller",
+    "curve",
+    "head_polynomial",
+    "flow_limit",
+    "motor",
+];
+/// Columns of a curve, what they are, and the range their figures must lie in.
+pub(super) const COLUMNS: [(&str, Kind, Bound); 5] = [
+    ("flow", Kind::Flow, Bound::NotNegative),
+    ("head", Kind::Length, Bound::Any),
+    ("efficiency", Kind::Percent, Bound::Share),
+    ("power", Kind::Power, Bound::NotNegative),
+    ("npsh_required", Kind::Length, Bound::NotNegative),
+];
+
+/// The columns of a curve in SI; `columns[i]` is that of `COLUMNS[i]`.
+#[derive(Default)]
+pub(super) struct Columns {
+    pub columns: [Option<Vec<f64>>; 5],
+    pub places: [Place; 5],
+}
+
+pub(super) fn models(
+    cx: &mut Context,
+    site: &SiteSpec,
+    node: &Marked,
+    load: Load,
+) -> Vec<ModelSpec> {
+    let Some(fields) = cx.any_map(node, "`pump_models`", "NAME: {curve: {..}}") else {
+        return Vec::new();
+    };
+    fields
+        .entries()
+        .iter()
+        .filter_map(|(key, value)| model(cx, site, key, value, load))
+        .collect()
+}
+
+fn model(
+    cx: &mut Context,
+    site: &SiteSpec,
+    key: &Key,
+    node: &Marked,
+    load: Load,
+) -> Option<ModelSpec> {
+    super::names::check(cx, key, "pump model");
+    let what = format!("pump model `{}`", key.name);
+    let fields = cx.map(node, &what, &MODEL_KEYS)?;
+    let speed = fields.get("speed").map(|node| speed(cx, node, &what));
+    let impeller = fields.get("impeller").map(|node| {
+        cx.quantity(
+            node,
+            &format!("`impeller` of {what}"),
+            Kind::Bore,
+            Bound::Positive,
+        )
+    });
+    let motor = fields.get("motor").map(|node| motor(cx, node, &what));
+    let columns = match fields.get("curve") {
+        Some(node) => read_columns(cx, node, &what, load),
+        None => Some(Columns::default()),
+    };
+    let head = match (fields.get("head_polynomial"), columns.as_ref()) {
+        (Some(node), Some(columns)) => polynomial(cx, &fields, node, &what, columns),
+        (None, Some(columns)) => head_through_points(cx, &fields, columns, &what),
+        (_, None) => None,
+    };
+    let columns = columns?;
+    let power = power(cx, &columns, &what);
+    let npsh_required = through(cx, &columns, 4, &what);
+    let head = head?;
+    judge_head(
+        cx,
+        &head,
+        fields.get("curve").or(fields.get("head_polynomial"))?.place,
+        &what,
+    );
+    let best_efficiency_flow = best_efficiency_flow(&columns, &head, site);
+    Some(ModelSpec {
+        name: key.name.clone(),
+        place: key.place,
+        speed: speed.flatten(),
+        impeller: impeller.flatten(),
+        head,
+        power: power?,
+        npsh_required: npsh_required?,
+        best_efficiency_flow,
+        motor: motor.flatten(),
+    })
+}
+
+fn speed(cx: &mut Context, node: &Marked, what: &str) -> Option<f64> {
+    let label = format!("`speed` of {what}");
+    match cx.speed(node, &label)? {
+        SpeedValue::Rpm(rpm) => Some(rpm / 60.0),
+        SpeedValue::Ratio(_) => {
+            let message = format!("{label} must be in rpm, found {}", found(node));
+            cx.error("wrong-unit", node.place, message);
+            None
+        }
+    }
+}
+
+fn motor(cx: &mut Context, node: &Marked, what: &str) -> Option<Motor> {
+    let what = format!("the motor of {what}");
+    let fields = cx.map(node, &what, &["rated", "efficiency"])?;
+    let rated = cx.required(&fields, "rated", &what, "22 kW")?;
+    let rated = cx.quantity(
+        rated,
+        &format!("`rated` of {what}"),
+        Kind::Power,
+        Bound::Positive,
+    );
+    let efficiency = match fields.get("efficiency") {
+        None => None,
+        Some(node) => {
+            let label = format!("`efficiency` of {what}");
+            let value = cx.quantity(node, &label, Kind::Percent, Bound::Share)?;
+            if value == 0.0 {
+                cx.error(
+                    "out-of-range",
+                    node.place,
+                    format!("{label} must be above zero"),
+                );
+                return None;
+            }
+            Some(value)
+        }
+    };
+    Some(Motor {
+        rated: rated?,
+        efficiency,
+    })
+}
+
+fn read_columns(cx: &mut Context, node: &Marked, what: &str, load: Load) -> Option<Columns> {
+    let names: Vec<&str> = COLUMNS.iter().map(|(name, ..)| *name).collect();
+    let keys: Vec<&str> = names.iter().copied().chain(["file"]).collect();
+    let fields = cx.map(node, &format!("`curve` of {what}"), &keys)?;
+    let columns = match fields.get("file") {
+        Some(file) => {
+            if let Some(other) = names.iter().find(|name| fields.has(name)) {
+                let message = format!("`file` gives the columns; `{other}` cannot stand beside it");
+                cx.error("both-keys", fields.key_place(other), message);
+            }
+            table::read(cx, file, what, load)?
+        }
+        None => listed_columns(cx, &fields, what)?,
+    };
+    let flows = columns.columns[0].as_deref();
+    if flows.is_none() {
+        let message = format!("the curve of {what} needs a column `flow`");
+        cx.push(
+            Diagnostic::error("missing-key", node.place, message)
+                .help("add for example `flow: [0, 60, 120, 180]`"),
+        );
+        return None;
+    }
+    check_efficiency(cx, &columns, what);
+    Some(columns)
+}
+
+fn listed_columns(cx: &mut Context, fields: &Fields, what: &str) -> Option<Columns> {
+    let mut columns = Columns::default();
+    let mut whole = true;
+    for (i, (name, kind, bound)) in COLUMNS.into_iter().enumerate() {
+        let Some(node) = fields.get(name) else {
+            continue;
+        };
+        columns.places[i] = node.place;
+        let label = format!("`{name}` of {what}");
+        let Some(items) = cx.list(node, &label, &format!("{name}: [0, 60, 120]")) else {
+            whole = false;
+            continue;
+        };
+        let values: Option<Vec<f64>> = items
+            .iter()
+            .map(|item| cx.quantity(item, &label, kind, bound))
+            .collect();
+        whole &= values.is_some();
+        columns.columns[i] = values;
+    }
+    whole.then_some(columns)
+}
+
+/// A fraction written for a per cent.
+fn check_efficiency(cx: &mut Context, columns: &Columns, what: &str) {
+    let Some(values) = &columns.columns[2] else {
+        return;
+    };
+    let highest = values.iter().copied().fold(0.0, f64::max);
+    if highest > 0.0 && highest <= 0.01 {
+        let message = format!("the efficiency of {what} never passes 1 %");
+        let help = "a bare number is in per cent: write 75 for 75 %";
+        cx.push(Diagnostic::caution("efficiency-fraction", columns.places[2], message).help(help));
+    }
+}
+
+/// One column over flow.
+fn through(cx: &mut Context, columns: &Columns, i: usize, what: &str) -> Option<Option<Curve>> {
+    let Some(values) = &columns.columns[i] else {
+        return Some(None);
+    };
+    let flows = columns.columns[0].as_deref().unwrap_or_default();
+    match Curve::through(flows, values) {
+        Ok(curve) => Some(Some(curve)),
+        Err(why) => {
+            let place = match why {
+                crate::part::curve::CurveError::NotRising { .. } => columns.places[0],
+                _ => columns.places[i],
+            };
+            let message = format!("`{}` of {what} makes no curve: {why}", COLUMNS[i].0);
+            cx.push(
+                Diagnostic::error("curve", place, message)
+                    .help("flows must rise from one point to the next, with one value for each"),
+            );
+            None
+        }
+    }
+}
+
+fn head_through_points(
+    cx: &mut Context,
+    fields: &Fields,
+    columns: &Columns,
+    what: &str,
+) -> Option<Curve> {
+    if let Some(limit) = fields.get("flow_limit") {
+        cx.error(
+            "both-keys",
+            limit.place,
+            format!("`flow_limit` of {what} goes with `head_polynomial` only"),
+        );
+    }
+    if columns.columns[1].is_none() {
+        let message = format!("{what} needs a head curve");
+        let help = "add `curve: {flow: [..], head: [..]}`, or `head_polynomial` and `flow_limit`";
+        cx.push(Diagnostic::error("missing-key", fields.place, message).help(help));
+        return None;
+    }
+    through(cx, columns, 1, what).flatten()
+}
+
+fn polynomial(
+    cx: &mut Context,
+    fields: &Fields,
+    node: &Marked,
+    what: &str,
+    columns: &Columns,
+) -> Option<Curve> {
+    if columns.columns[1].is_some() {
+        cx.error(
+            "both-keys",
+            columns.places[1],
+            format!("give the head of {what} by points or by `head_polynomial`, not both"),
+        );
+    }
+    let limit = cx.required(fields, "flow_limit", what, "240 m3/h");
+    let limit = limit.and_then(|node| {
+        cx.quantity(
+            node,
+            &format!("`flow_limit` of {what}"),
+            Kind::Flow,
+            Bound::Positive,
+        )
+    });
+    let label = format!("`head_polynomial` of {what}");
+    let items = cx.list(node, &label, "[42, 0, -0.00035]")?;
+    if items.len() > 10 {
+        cx.error(
+            "out-of-range",
+            node.place,
+            format!("{label} has more than 10 coefficients"),
+        );
+        return None;
+    }
+    // head = a + b q + c q2 in the file's units; to SI: a_i x (unit of head) / (unit of flow)^i
+    let (head, flow) = (
+        cx.units.unit(Kind::Length).factor,
+        cx.units.unit(Kind::Flow).factor,
+    );
+    let coefficients: Option<Vec<f64>> = items
+        .iter()
+        .enumerate()
+        .map(|(i, item)| Some(cx.number(item, &label, Bound::Any)? * head / flow.powi(i as i32)))
+        .collect();
+    match Polynomial::new(&coefficients?, limit?) {
+        Ok(polynomial) => Some(Curve::Polynomial(polynomial)),
+        Err(why) => {
+            cx.error(
+                "curve",
+                node.place,
+                format!("{label} makes no curve: {why}"),
+            );
+            None
+        }
+    }
+}
+
+fn power(cx: &mut Context, columns: &Columns, what: &str) -> Option<PowerCurve> {
+    if columns.columns[2].is_some() && columns.columns[3].is_some() {
+        let message = format!("the curve of {what} has both `efficiency` and `power`");
+        let help =
+            "one follows from the other and the head: keep the one that the data sheet states";
+        cx.push(Diagnostic::error("both-keys", columns.places[3], message).help(help));
+        return None;
+    }
+    let efficiency = through(cx, columns, 2, what)?;
+    let power = through(cx, columns, 3, what)?;
+    Some(match (efficiency, power) {
+        (Some(curve), _) => PowerCurve::Efficiency(curve),
+        (None, Some(curve)) => PowerCurve::Shaft(curve),
+        (None, None) => PowerCurve::Unknown,
+    })
+}
+
+/// A head curve that droops is named; one that ends rising cannot be used.
+fn judge_head(cx: &mut Context, head: &Curve, place: Place, what: &str) {
+    let (_, end) = head.domain();
+    let stretches = head.rising_stretches();
+    let flow = |q: f64| cx.units.format(Kind::Flow, q);
+    if stretches.iter().any(|stretch| stretch.1 >= end) || head.at(end).slope > 0.0 {
+        let message = format!(
+            "the head of {what} still rises at its last flow, {}",
+            flow(end)
+        );
+        let help = "head must fall towards the end of the curve; give it further, or check the order of the points";
+        cx.push(Diagnostic::error("head-rises", place, message).help(help));
+    } else if let (Some(first), Some(last)) = (stretches.first(), stretches.last()) {
+        let message = format!(
+            "the head curve of {what} droops: head rises with flow from {} to {}",
+            flow(first.0),
+            flow(last.1)
+        );
+        let help =
+            "below its peak two flows give the same head, and parallel pumps may hunt between them";
+        cx.push(Diagnostic::caution("drooping-curve", place, message).help(help));
+    }
+    if head.at(0.0).value <= 0.0 {
+        cx.error(
+            "out-of-range",
+            place,
+            format!("the head of {what} at no flow must be above zero"),
+        );
+    }
+}
+
+/// Flow of the highest efficiency among the points; from the power column where that stands in its place.
+fn best_efficiency_flow(columns: &Columns, head: &Curve, site: &SiteSpec) -> Option<f64> {
+    let flows = columns.columns[0].as_deref()?;
+    let efficiency: Vec<f64> = match (&columns.columns[2], &columns.columns[3]) {
+        (Some(values), _) => values.clone(),
+        (None, Some(powers)) => {
+            // E = 1000 g q H / P, as data sheets state power
+            let each = flows.iter().zip(powers);
+            each.map(|(q, p)| {
+                if *p > 0.0 {
+                    1000.0 * site.gravity * q * head.at(*q).value / p
+                } else {
+                    0.0
+                }
+            })
+            .collect()
+        }
+        (None, None) => return None,
+    };
+    let best = (0..flows.len().min(efficiency.len()))
+        .max_by(|a, b| efficiency[*a].total_cmp(&efficiency[*b]))?;
+    (efficiency[best] > 0.0 && flows[best] > 0.0).then_some(flows[best])
+}

@@ -1,0 +1,130 @@
+//! `needs` and `cases`.
+
+use super::changes::Change;
+use super::context::{Bound, Context, Fields};
+use super::spec::{NeedSpec, Placed, TargetSpec};
+use super::yaml::{Key, Marked};
+use crate::diagnostic::Diagnostic;
+use crate::units::Kind;
+
+const TARGETS: [&str; 3] = ["flow_into", "flow_in", "pressure_at"];
+
+pub(super) fn needs(cx: &mut Context, node: &Marked) -> Vec<NeedSpec> {
+    let example = "NAME: {flow_into: NODE, at_least: 240 m3/h}";
+    let Some(fields) = cx.any_map(node, "`needs`", example) else {
+        return Vec::new();
+    };
+    fields
+        .entries()
+        .iter()
+        .filter_map(|(key, value)| need(cx, key, value))
+        .collect()
+}
+
+fn need(cx: &mut Context, key: &Key, node: &Marked) -> Option<NeedSpec> {
+    super::names::check(cx, key, "need");
+    let what = format!("need `{}`", key.name);
+    let keys: Vec<&str> = TARGETS
+        .iter()
+        .copied()
+        .chain(["at_least", "at_most"])
+        .collect();
+    let fields = cx.map(node, &what, &keys)?;
+    let given: Vec<&str> = TARGETS
+        .into_iter()
+        .filter(|target| fields.has(target))
+        .collect();
+    let &[target] = given.as_slice() else {
+        let message = format!("{what} must look at one thing");
+        let help = format!("give one of `{}`", TARGETS.join("`, `"));
+        cx.push(Diagnostic::error("need", fields.place, message).help(help));
+        return None;
+    };
+    let at = fields.get(target)?;
+    let name = Placed {
+        value: cx.text(at, &format!("`{target}` of {what}"))?,
+        place: at.place,
+    };
+    let (target, kind) = match target {
+        "flow_into" => (TargetSpec::FlowInto(name), Kind::Flow),
+        "flow_in" => (TargetSpec::FlowIn(name), Kind::Flow),
+        _ => (TargetSpec::PressureAt(name), Kind::Pressure),
+    };
+    let at_least = limit(cx, &fields, "at_least", &what, kind)?;
+    let at_most = limit(cx, &fields, "at_most", &what, kind)?;
+    if at_least.is_none() && at_most.is_none() {
+        let message = format!("{what} has no limit");
+        cx.push(
+            Diagnostic::error("missing-key", fields.place, message)
+                .help("add `at_least: ..` or `at_most: ..`"),
+        );
+        return None;
+    }
+    if at_least
+        .zip(at_most)
+        .is_some_and(|(least, most)| least > most)
+    {
+        let place = fields.key_place("at_most");
+        cx.error(
+            "out-of-range",
+            place,
+            format!("{what} asks for at least more than at most"),
+        );
+        return None;
+    }
+    Some(NeedSpec {
+        name: key.name.clone(),
+        target,
+        at_least,
+        at_most,
+    })
+}
+
+fn limit(
+    cx: &mut Context,
+    fields: &Fields,
+    key: &str,
+    what: &str,
+    kind: Kind,
+) -> Option<Option<f64>> {
+    match fields.get(key) {
+        None => Some(None),
+        Some(node) => cx
+            .quantity(node, &format!("`{key}` of {what}"), kind, Bound::Any)
+            .map(Some),
+    }
+}
+
+/// A named set of changed values.
+#[derive(Clone, Debug)]
+pub struct Case {
+    /// The user's name for it.
+    pub name: String,
+    /// What it changes.
+    pub changes: Vec<Change>,
+}
+
+/// `cases`: from the name of a case to its changes.
+pub(super) fn cases(cx: &mut Context, node: &Marked) -> Vec<Case> {
+    let example = "low level: {wet_well.level: 0.9 m}";
+    let Some(fields) = cx.any_map(node, "`cases`", example) else {
+        return Vec::new();
+    };
+    let mut cases = Vec::new();
+    for (key, value) in fields.entries() {
+        super::names::check_label(cx, key, "case");
+        let what = format!("case `{}`", key.name);
+        let Some(changes) = cx.any_map(value, &what, "wet_well.level: 0.9 m") else {
+            continue;
+        };
+        let changes = changes
+            .entries()
+            .iter()
+            .map(|(path, value)| Change::marked(path.clone(), value.clone()));
+        cases.push(Case {
+            name: key.name.clone(),
+            changes: changes.collect(),
+        });
+    }
+    cases
+}

@@ -1,0 +1,153 @@
+//! `units`, `fluid` and `site`.
+
+use super::context::{Bound, Context, found};
+use super::spec::SiteSpec;
+use super::yaml::{Form, Marked};
+use crate::diagnostic::Diagnostic;
+use crate::fluid::{Fluid, STANDARD_ATMOSPHERE, STANDARD_GRAVITY, standard_barometer};
+use crate::units::{Kind, UnitSet, ViscosityValue};
+
+const SETS: [&str; 3] = ["metric", "us", "si"];
+
+pub(super) fn units(cx: &mut Context, node: &Marked) {
+    let chosen = match &node.value {
+        Form::Map(_) => {
+            let keys: Vec<&str> = std::iter::once("base")
+                .chain(Kind::KEYS.iter().map(|(key, _)| *key))
+                .collect();
+            let Some(fields) = cx.map(node, "`units`", &keys) else {
+                return;
+            };
+            let mut set = match fields.get("base") {
+                Some(base) => unit_set(cx, base),
+                None => Some(UnitSet::metric()),
+            };
+            for (key, value) in fields.entries() {
+                if key.name == "base" || !keys.contains(&key.name.as_str()) {
+                    continue;
+                }
+                let Some(unit) = cx.text(value, &format!("the unit of `{}`", key.name)) else {
+                    continue;
+                };
+                if let Some(Err(why)) = set.as_mut().map(|set| set.set(&key.name, &unit)) {
+                    cx.error("wrong-unit", value.place, why.to_string());
+                }
+            }
+            set
+        }
+        _ => unit_set(cx, node),
+    };
+    if let Some(set) = chosen {
+        cx.units = set;
+    }
+}
+
+fn unit_set(cx: &mut Context, node: &Marked) -> Option<UnitSet> {
+    let set = super::context::scalar_text(node).and_then(|name| UnitSet::base(&name));
+    if set.is_none() {
+        let message = format!(
+            "`{}` is expected here, found {}",
+            SETS.join("`, `"),
+            found(node)
+        );
+        let help = "or a map such as `units: {base: metric, flow: L/s}`";
+        cx.push(Diagnostic::error("units", node.place, message).help(help));
+    }
+    set
+}
+
+/// Liquid, gravity and air pressure.
+pub(super) fn site(cx: &mut Context, fluid: Option<&Marked>, site: Option<&Marked>) -> SiteSpec {
+    let mut spec = SiteSpec {
+        fluid: Fluid::default(),
+        gravity: STANDARD_GRAVITY,
+        barometer: STANDARD_ATMOSPHERE,
+    };
+    if let Some(found) = fluid.and_then(|node| read_fluid(cx, node)) {
+        spec.fluid = found;
+    }
+    let Some(node) = site else { return spec };
+    let Some(fields) = cx.map(node, "`site`", &["elevation", "barometer", "gravity"]) else {
+        return spec;
+    };
+    if let Some(node) = fields.get("gravity") {
+        let gravity = cx.quantity(node, "`gravity`", Kind::Acceleration, Bound::Positive);
+        spec.gravity = gravity.unwrap_or(spec.gravity);
+    }
+    match (fields.get("elevation"), fields.get("barometer")) {
+        (Some(_), Some(barometer)) => {
+            cx.error(
+                "both-keys",
+                barometer.place,
+                "give `elevation` or `barometer` of the site, not both",
+            );
+        }
+        (Some(node), None) => {
+            if let Some(elevation) =
+                cx.quantity(node, "the site's `elevation`", Kind::Length, Bound::Any)
+            {
+                match standard_barometer(elevation) {
+                    Ok(pressure) => spec.barometer = pressure,
+                    Err(why) => cx.error("out-of-range", node.place, why.to_string()),
+                }
+            }
+        }
+        (None, Some(node)) => {
+            let pressure = cx.quantity(
+                node,
+                "`barometer` (absolute)",
+                Kind::Pressure,
+                Bound::Positive,
+            );
+            spec.barometer = pressure.unwrap_or(spec.barometer);
+        }
+        (None, None) => {}
+    }
+    spec
+}
+
+fn read_fluid(cx: &mut Context, node: &Marked) -> Option<Fluid> {
+    let keys = ["water", "density", "viscosity", "vapour_pressure"];
+    let fields = cx.map(node, "`fluid`", &keys)?;
+    if let Some(water) = fields.get("water") {
+        if let Some(other) = keys[1..].iter().find(|key| fields.has(key)) {
+            let message = format!("`water` gives all properties; `{other}` cannot stand beside it");
+            cx.error("both-keys", fields.key_place(other), message);
+        }
+        let temperature = cx.quantity(
+            water,
+            "the water's temperature",
+            Kind::Temperature,
+            Bound::Any,
+        )?;
+        return match Fluid::water(temperature) {
+            Ok(fluid) => Some(fluid),
+            Err(why) => {
+                cx.error("out-of-range", water.place, why.to_string());
+                None
+            }
+        };
+    }
+    let density = cx.required(&fields, "density", "`fluid`", "998.2 kg/m3");
+    let density =
+        density.and_then(|node| cx.quantity(node, "`density`", Kind::Density, Bound::Positive));
+    let viscosity = cx.required(&fields, "viscosity", "`fluid`", "1.0 cSt");
+    let viscosity = viscosity.and_then(|node| cx.viscosity(node, "`viscosity`"));
+    let vapour_pressure = fields.get("vapour_pressure").map(|node| {
+        cx.quantity(
+            node,
+            "`vapour_pressure` (absolute)",
+            Kind::Pressure,
+            Bound::NotNegative,
+        )
+    });
+    let density = density?;
+    Some(Fluid {
+        density,
+        kinematic_viscosity: match viscosity? {
+            ViscosityValue::Kinematic(nu) => nu,
+            ViscosityValue::Dynamic(mu) => mu / density,
+        },
+        vapour_pressure: vapour_pressure.flatten(),
+    })
+}

@@ -1,0 +1,160 @@
+//! The file in typed form, in SI, each name with its place. Never leaves `read`.
+
+use crate::diagnostic::Place;
+use crate::fluid::Fluid;
+use crate::part::curve::Curve;
+use crate::part::pump::{Motor, PowerCurve};
+use crate::part::quadratic::QuadraticLoss;
+use crate::part::valve::Characteristic;
+use crate::units::SpeedValue;
+
+/// Something and where it stands.
+#[derive(Clone, Debug)]
+pub(super) struct Placed<T> {
+    pub value: T,
+    pub place: Place,
+}
+
+#[derive(Clone, Debug)]
+pub(super) struct Spec {
+    pub title: Option<String>,
+    pub site: SiteSpec,
+    pub nodes: Vec<NodeSpec>,
+    pub lines: Vec<LineSpec>,
+    pub models: Vec<ModelSpec>,
+    pub needs: Vec<NeedSpec>,
+}
+
+/// Liquid and place.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct SiteSpec {
+    pub fluid: Fluid,
+    pub gravity: f64,
+    pub barometer: f64,
+}
+
+#[derive(Clone, Debug)]
+pub(super) struct NodeSpec {
+    pub name: String,
+    pub place: Place,
+    pub kind: NodeKindSpec,
+}
+
+#[derive(Clone, Copy, Debug)]
+pub(super) enum NodeKindSpec {
+    Point {
+        elevation: f64,
+        draw: f64,
+    },
+    Reservoir {
+        surface: f64,
+        pressure: f64,
+    },
+    Outlet {
+        elevation: f64,
+    },
+    Tank {
+        floor: f64,
+        level: f64,
+        pressure: f64,
+    },
+}
+
+/// A line, or a bank of them.
+#[derive(Clone, Debug)]
+pub(super) struct LineSpec {
+    pub name: String,
+    pub place: Place,
+    pub from: Placed<String>,
+    pub to: Placed<String>,
+    pub ports: [Option<f64>; 2],
+    /// Number in the bank; none: a single line.
+    pub count: Option<u32>,
+    pub parts: Vec<PartSpec>,
+    /// Members of the bank that differ, by number from 1.
+    pub members: Vec<(u32, Vec<PartSpec>)>,
+}
+
+#[derive(Clone, Debug)]
+pub(super) struct PartSpec {
+    pub place: Place,
+    pub kind: PartKindSpec,
+}
+
+#[derive(Clone, Debug)]
+pub(super) enum PartKindSpec {
+    Pipe {
+        length: f64,
+        bore: f64,
+        friction: FrictionSpec,
+        k: f64,
+    },
+    Loss(LossSpec),
+    Valve {
+        loss: LossSpec,
+        characteristic: Characteristic,
+        open: bool,
+        opening: f64,
+    },
+    CheckValve {
+        loss: LossSpec,
+        characteristic: Characteristic,
+        opening: f64,
+    },
+    Equipment(QuadraticLoss),
+    Pump(Box<PumpSpec>),
+}
+
+#[derive(Clone, Copy, Debug)]
+pub(super) enum FrictionSpec {
+    Roughness(f64),
+    HazenWilliams(f64),
+    FixedFactor(f64),
+}
+
+/// A loss that may need the bore of a neighbouring pipe.
+#[derive(Clone, Copy, Debug)]
+pub(super) enum LossSpec {
+    K { k: f64, bore: Option<f64> },
+    Known(QuadraticLoss),
+}
+
+#[derive(Clone, Debug)]
+pub(super) struct PumpSpec {
+    pub name: Option<Placed<String>>,
+    pub model: Placed<String>,
+    pub elevation: Option<f64>,
+    pub speed: Option<Placed<SpeedValue>>,
+    pub impeller: Option<Placed<f64>>,
+    pub wear: f64,
+    pub running: bool,
+    pub when_stopped: Option<LossSpec>,
+}
+
+#[derive(Clone, Debug)]
+pub(super) struct ModelSpec {
+    pub name: String,
+    pub place: Place,
+    pub speed: Option<f64>,
+    pub impeller: Option<f64>,
+    pub head: Curve,
+    pub power: PowerCurve,
+    pub npsh_required: Option<Curve>,
+    pub best_efficiency_flow: Option<f64>,
+    pub motor: Option<Motor>,
+}
+
+#[derive(Clone, Debug)]
+pub(super) struct NeedSpec {
+    pub name: String,
+    pub target: TargetSpec,
+    pub at_least: Option<f64>,
+    pub at_most: Option<f64>,
+}
+
+#[derive(Clone, Debug)]
+pub(super) enum TargetSpec {
+    FlowInto(Placed<String>),
+    FlowIn(Placed<String>),
+    PressureAt(Placed<String>),
+}

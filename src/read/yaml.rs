@@ -1,0 +1,321 @@
+//! YAML text to a tree in which every value knows its place.
+//!
+//! Two well-kept parsers share the work: one pass over the events of the first guards against what the second lets pass
+//! (keys given twice, depth, aliases that multiply) and notes the places; the second resolves the scalars. The two trees have
+//! the same shape and are put together.
+
+use std::collections::HashMap;
+
+use saphyr_parser::{Event, Parser, Span};
+use serde_yaml::Value;
+
+use crate::diagnostic::{Diagnostic, Place};
+
+/// A value and its place.
+#[derive(Clone, Debug)]
+pub struct Marked {
+    /// Where it stands.
+    pub place: Place,
+    /// What it is.
+    pub value: Form,
+}
+
+/// What a value is.
+#[derive(Clone, Debug)]
+pub enum Form {
+    /// A scalar, resolved.
+    Scalar(Value),
+    /// A list.
+    List(Vec<Marked>),
+    /// A map; keys are unique, in the order of the text.
+    Map(Vec<(Key, Marked)>),
+}
+
+/// A key and its place.
+#[derive(Clone, Debug)]
+pub struct Key {
+    /// The key as text.
+    pub name: String,
+    /// Where it stands.
+    pub place: Place,
+}
+
+/// Longest text read, bytes.
+pub const LARGEST: usize = 64 << 20;
+/// Deepest nesting.
+const DEEPEST: usize = 48;
+/// Most values, aliases written out.
+const MOST_VALUES: usize = 4_000_000;
+
+/// Reads a text.
+///
+/// # Errors
+/// The first thing that makes it unreadable.
+pub fn parse(bytes: &[u8]) -> Result<(String, Marked), (String, Diagnostic)> {
+    let fail = |text: &str, diagnostic| Err((text.to_owned(), diagnostic));
+    if bytes.len() > LARGEST {
+        let message = format!(
+            "the file has {} bytes; at most {LARGEST} are read",
+            bytes.len()
+        );
+        return fail("", Diagnostic::whole("too-large", message));
+    }
+    let text = match std::str::from_utf8(bytes) {
+        Ok(text) => text.strip_prefix('\u{feff}').unwrap_or(text),
+        Err(error) => {
+            let line = 1 + bytes[..error.valid_up_to()]
+                .iter()
+                .filter(|b| **b == b'\n')
+                .count();
+            let message =
+                format!("the file is not UTF-8 text: line {line} holds a byte that cannot be read");
+            let help = "save the file as UTF-8 (plain ASCII is UTF-8 too)";
+            return fail("", Diagnostic::whole("not-utf8", message).help(help));
+        }
+    };
+    let marks = match Guard::read(text) {
+        Ok(marks) => marks,
+        Err(diagnostic) => return fail(text, diagnostic),
+    };
+    let value: Value = match serde_yaml::from_str(text) {
+        Ok(value) => value,
+        Err(error) => {
+            let place = error
+                .location()
+                .map_or(Place::default(), |at| spot(at.line(), at.column()));
+            return fail(
+                text,
+                Diagnostic::error("yaml", place, format!("not readable as YAML: {error}")),
+            );
+        }
+    };
+    match join(marks, value) {
+        Some(tree) => Ok((text.to_owned(), tree)),
+        None => fail(
+            text,
+            Diagnostic::whole("yaml", "this YAML is too unusual to be read safely"),
+        ),
+    }
+}
+
+fn spot(line: usize, column: usize) -> Place {
+    let (line, column) = (line as u32, column as u32);
+    Place {
+        line,
+        column,
+        end_line: line,
+        end_column: column + 1,
+    }
+}
+
+fn place(span: Span) -> Place {
+    Place {
+        line: span.start.line() as u32,
+        column: span.start.col() as u32 + 1,
+        end_line: span.end.line() as u32,
+        end_column: span.end.col() as u32 + 1,
+    }
+}
+
+/// The places of a value and of what is in it.
+#[derive(Clone, Debug)]
+struct Marks {
+    place: Place,
+    /// Values of a list; keys and values of a map in turn.
+    children: Vec<Marks>,
+    /// For a map, its keys.
+    keys: Vec<String>,
+    /// How many values this is, itself included.
+    size: usize,
+}
+
+/// A container that is still open.
+struct Open {
+    marks: Marks,
+    anchor: usize,
+    is_map: bool,
+    seen: HashMap<String, Place>,
+}
+
+#[derive(Default)]
+struct Guard {
+    open: Vec<Open>,
+    anchors: HashMap<usize, Marks>,
+    root: Option<Marks>,
+    values: usize,
+}
+
+impl Guard {
+    fn read(text: &str) -> Result<Marks, Diagnostic> {
+        let mut guard = Self::default();
+        let mut documents = 0;
+        for event in Parser::new_from_str(text) {
+            let (event, span) = event.map_err(|error| {
+                let at = spot(error.marker().line(), error.marker().col() + 1);
+                Diagnostic::error(
+                    "yaml",
+                    at,
+                    format!("not readable as YAML: {}", error.info()),
+                )
+            })?;
+            let place = place(span);
+            match event {
+                Event::DocumentStart(_) => {
+                    documents += 1;
+                    if documents > 1 {
+                        let message = "a second YAML document starts here; one is read";
+                        return Err(Diagnostic::error("two-documents", place, message));
+                    }
+                }
+                Event::Scalar(text, _, anchor, tag) => {
+                    refuse_tag(tag.is_some(), place)?;
+                    let marks = Marks {
+                        place,
+                        children: Vec::new(),
+                        keys: Vec::new(),
+                        size: 1,
+                    };
+                    guard.add(marks, anchor, Some(&text))?;
+                }
+                Event::SequenceStart(anchor, tag) => {
+                    refuse_tag(tag.is_some(), place)?;
+                    guard.enter(place, anchor, false)?;
+                }
+                Event::MappingStart(anchor, tag) => {
+                    refuse_tag(tag.is_some(), place)?;
+                    guard.enter(place, anchor, true)?;
+                }
+                Event::SequenceEnd | Event::MappingEnd => guard.leave(place)?,
+                Event::Alias(anchor) => {
+                    let Some(mut marks) = guard.anchors.get(&anchor).cloned() else {
+                        let message = "this alias stands inside what it refers to";
+                        return Err(Diagnostic::error("alias", place, message));
+                    };
+                    marks.place = place;
+                    guard.add(marks, 0, None)?;
+                }
+                Event::Nothing | Event::StreamStart | Event::StreamEnd | Event::DocumentEnd => {}
+            }
+        }
+        guard.root.ok_or_else(|| {
+            let help = "a system file has `nodes:` and `lines:`; `--help` shows how to start";
+            Diagnostic::whole("empty", "the file is empty").help(help)
+        })
+    }
+
+    fn enter(&mut self, place: Place, anchor: usize, is_map: bool) -> Result<(), Diagnostic> {
+        if self.open.len() >= DEEPEST {
+            let message = format!("nested deeper than {DEEPEST} levels");
+            return Err(Diagnostic::error("too-deep", place, message));
+        }
+        let marks = Marks {
+            place,
+            children: Vec::new(),
+            keys: Vec::new(),
+            size: 1,
+        };
+        self.open.push(Open {
+            marks,
+            anchor,
+            is_map,
+            seen: HashMap::new(),
+        });
+        Ok(())
+    }
+
+    fn leave(&mut self, end: Place) -> Result<(), Diagnostic> {
+        let Some(mut open) = self.open.pop() else {
+            return Ok(());
+        };
+        // Block style ends where the next thing starts: the last value's end is the better mark.
+        let last = open.marks.children.last().map_or(end, |child| child.place);
+        if open.marks.place.end_line < last.end_line
+            || open.marks.place.end_column < last.end_column
+        {
+            (open.marks.place.end_line, open.marks.place.end_column) =
+                (last.end_line, last.end_column);
+        }
+        self.add(open.marks, open.anchor, None)
+    }
+
+    /// A finished value; `text` if it is a scalar.
+    fn add(&mut self, marks: Marks, anchor: usize, text: Option<&str>) -> Result<(), Diagnostic> {
+        self.values += marks.size;
+        if self.values > MOST_VALUES {
+            let message = format!("more than {MOST_VALUES} values, aliases written out");
+            return Err(Diagnostic::error("too-many-values", marks.place, message));
+        }
+        if anchor > 0 {
+            self.anchors.insert(anchor, marks.clone());
+        }
+        let Some(parent) = self.open.last_mut() else {
+            self.root = Some(marks);
+            return Ok(());
+        };
+        if parent.is_map && parent.marks.children.len() % 2 == 0 {
+            let Some(key) = text else {
+                return Err(Diagnostic::error(
+                    "key",
+                    marks.place,
+                    "a key must be plain text",
+                ));
+            };
+            if let Some(first) = parent.seen.insert(key.to_owned(), marks.place) {
+                let message = format!("the key `{key}` is given twice");
+                let help = format!("the first stands in line {}; remove one", first.line);
+                return Err(Diagnostic::error("key-twice", marks.place, message).help(help));
+            }
+            parent.marks.keys.push(key.to_owned());
+        }
+        parent.marks.size += marks.size;
+        parent.marks.children.push(marks);
+        Ok(())
+    }
+}
+
+fn refuse_tag(tagged: bool, place: Place) -> Result<(), Diagnostic> {
+    if tagged {
+        return Err(Diagnostic::error(
+            "tag",
+            place,
+            "YAML tags (`!..`) are not used in a system file",
+        ));
+    }
+    Ok(())
+}
+
+/// Puts places and values together; none if the two parsers saw different shapes.
+fn join(marks: Marks, value: Value) -> Option<Marked> {
+    let place = marks.place;
+    let value = match value {
+        Value::Sequence(values)
+            if marks.keys.is_empty() && marks.children.len() == values.len() =>
+        {
+            let joined = marks
+                .children
+                .into_iter()
+                .zip(values)
+                .map(|(marks, value)| join(marks, value));
+            Form::List(joined.collect::<Option<_>>()?)
+        }
+        Value::Mapping(map) if marks.keys.len() == map.len() => {
+            let mut children = marks.children.into_iter();
+            let mut entries = Vec::with_capacity(map.len());
+            for (name, (_, value)) in marks.keys.into_iter().zip(map) {
+                let key = Key {
+                    name,
+                    place: children.next()?.place,
+                };
+                entries.push((key, join(children.next()?, value)?));
+            }
+            Form::Map(entries)
+        }
+        scalar @ (Value::Null | Value::Bool(_) | Value::Number(_) | Value::String(_))
+            if marks.children.is_empty() =>
+        {
+            Form::Scalar(scalar)
+        }
+        _ => return None,
+    };
+    Some(Marked { place, value })
+}
