@@ -38,6 +38,7 @@ pub mod network;
 pub mod output;
 pub mod part;
 pub mod read;
+pub mod shift;
 pub mod solve;
 pub mod study;
 pub mod units;

@@ -82,6 +82,8 @@ pub struct Settings {
     pumps: Vec<PumpSetting>,
     valves: Vec<ValveSetting>,
     checks: Vec<CheckCondition>,
+    /// Per line: a further loss, m at 1 m3/s.
+    foulings: Vec<f64>,
 }
 
 impl Settings {
@@ -94,6 +96,7 @@ impl Settings {
             pumps: Vec::new(),
             valves: Vec::new(),
             checks: Vec::new(),
+            foulings: Vec::new(),
         }
     }
 
@@ -106,6 +109,7 @@ impl Settings {
 
     pub(super) fn add_line(&mut self) {
         self.checks.push(CheckCondition::Working);
+        self.foulings.push(0.0);
     }
 
     pub(super) fn add_pump(&mut self, setting: PumpSetting) {
@@ -164,6 +168,16 @@ impl Settings {
     /// Sets [`Self::check`]; means nothing for a line without a check valve.
     pub fn set_check(&mut self, id: LineId, condition: CheckCondition) {
         self.checks[id.index()] = condition;
+    }
+
+    /// A further loss at the first end of a line, where its strainer stands: h = r q |q|, r in m at 1 m3/s.
+    pub fn fouling(&self, id: LineId) -> f64 {
+        self.foulings[id.index()]
+    }
+
+    /// Sets [`Self::fouling`]; finite and not negative.
+    pub fn set_fouling(&mut self, id: LineId, r: f64) {
+        self.foulings[id.index()] = r;
     }
 
     /// How a pump is run.

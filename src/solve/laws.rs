@@ -108,7 +108,9 @@ impl<'n> Laws<'n> {
 
     /// Writes the numbers for these settings. With a `cover`, drooping head curves are replaced by that falling one.
     pub fn set(&mut self, network: &'n Network, settings: &Settings, cover: Option<Cover>) {
-        self.r.copy_from_slice(&self.fixed_r);
+        for ((r, fixed), line) in self.r.iter_mut().zip(&self.fixed_r).zip(network.line_ids()) {
+            *r = fixed + settings.fouling(line);
+        }
         for id in network.valve_ids() {
             let open = network.valve(id).loss_at(settings.valve(id).opening);
             self.r[network.line_of_valve(id).index()] += open.map_or(0.0, QuadraticLoss::r);

@@ -83,7 +83,8 @@ impl Newton {
         one_way: OneWay,
         effort: &mut Effort,
     ) -> Outcome {
-        let mut settled = one_way == OneWay::Frozen || shut_wrong_way(system, state);
+        let mut settled = one_way == OneWay::Frozen
+            || (shut_wrong_way(system, state) && !any_to_open(system, state));
         let mut best = f64::INFINITY;
         let mut since_best = 0;
         for _ in 0..LIMIT {
@@ -240,4 +241,12 @@ fn shut_wrong_way(system: &System, state: &mut State) -> bool {
         }
     }
     none
+}
+
+/// Whether a line that the last answer held shut now has the head to open. A warm start may balance everywhere else.
+fn any_to_open(system: &System, state: &State) -> bool {
+    system.live.iter().any(|&line| {
+        let line = line as usize;
+        state.shut[line] && system.push(state, line) > HEAD.absolute
+    })
 }

@@ -227,5 +227,7 @@ fn inlet_head(
     let lost: f64 = before
         .map(|part| part_loss(network, settings, part, flow))
         .sum();
-    Some(solution.head(line.from)? - lost)
+    // A fouled strainer stands before everything else.
+    let fouled = settings.fouling(line_id) * flow * flow.abs();
+    Some(solution.head(line.from)? - lost - fouled)
 }

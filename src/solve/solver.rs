@@ -139,6 +139,11 @@ impl<'n> Solver<'n> {
         self.system.network
     }
 
+    /// The last answer; before the first one every head in it is absent. Not to be used after an error.
+    pub fn last(&self) -> &Solution {
+        &self.solution
+    }
+
     /// Solves from a cold start: the same settings give the same bits, whatever was solved before.
     ///
     /// # Errors

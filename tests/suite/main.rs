@@ -1,5 +1,8 @@
 //! All integration tests in one crate.
 
+mod meadow;
 mod properties_of_liquids;
 mod published;
 mod random;
+mod shift_closed_forms;
+mod shift_meadow;
