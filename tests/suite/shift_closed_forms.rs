@@ -9,7 +9,8 @@ use dutybank::part::pump::{PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::{Part, PumpId};
 use dutybank::shift::{
-    Bands, Call, Event, Follow, Group, Plan, Record, Rotate, Shape, Shift, Step, Tank, Varying, What, run,
+    Bands, Call, Event, Follow, Group, Plan, Record, Rotate, Shape, Shift, Step, Tank, Varying,
+    What, run,
 };
 
 const G: f64 = 9.81;
@@ -40,18 +41,28 @@ fn record(network: &Network, shift: &Shift, plan: &Plan) -> Record {
     let mut record = Record::new();
     let outcome = run(network, shift, plan, &mut record).unwrap();
     println!("{:?}", outcome.effort);
-    assert!(outcome.score.volume_error < 1e-12, "{:e}", outcome.score.volume_error);
+    assert!(
+        outcome.score.volume_error < 1e-12,
+        "{:e}",
+        outcome.score.volume_error
+    );
     record
 }
 
 fn time_of(record: &Record, what: What) -> f64 {
     let event = record.events().iter().find(|event| event.what == what);
-    event.unwrap_or_else(|| panic!("{:?}", record.events())).time
+    event
+        .unwrap_or_else(|| panic!("{:?}", record.events()))
+        .time
 }
 
 /// Level (first column) at a reported time.
 fn level_at(record: &Record, time: f64) -> f64 {
-    let row = record.times().iter().position(|t| (t - time).abs() < 1e-6).unwrap();
+    let row = record
+        .times()
+        .iter()
+        .position(|t| (t - time).abs() < 1e-6)
+        .unwrap();
     record.column(0)[row]
 }
 
@@ -74,7 +85,11 @@ fn pool_drains_through_a_pipe() {
     let exact = 100.0 / 0.0025 * (2.0 * 2.0 * (1.0 + 0.022 * 25.0 / 0.05) / G).sqrt();
     let area = std::f64::consts::PI * 25.0;
     let tank = Tank::open(pool, Shape::Upright { area }, 3.0, 2.0);
-    let run = record(&network, &shift(100_000.0, exact / 4.0, vec![tank]), &Plan::default());
+    let run = record(
+        &network,
+        &shift(100_000.0, exact / 4.0, vec![tank]),
+        &Plan::default(),
+    );
     let empty = time_of(&run, What::Empty);
     assert!((empty - 88_480.0).abs() < 1.0, "{empty}");
     assert!((empty - exact).abs() < 0.01, "{}", empty - exact);
@@ -155,7 +170,11 @@ fn tank_drains_through_a_capillary() {
         area: std::f64::consts::PI / 16.0,
     };
     let tank = Tank::open(tank, shape, 1.5, 1.0);
-    let run = record(&network, &shift(21_000.0, 19909.1592 / 2.0, vec![tank]), &Plan::default());
+    let run = record(
+        &network,
+        &shift(21_000.0, 19909.1592 / 2.0, vec![tank]),
+        &Plan::default(),
+    );
     let empty = time_of(&run, What::Empty);
     assert!((empty - 19909.1592).abs() < 1e-3, "{empty}");
     let half = level_at(&run, 19909.1592 / 2.0);
@@ -202,7 +221,11 @@ fn pump_fills_a_tank() {
         ..Tank::open(tank, Shape::Upright { area: 50.0 }, 20.0, 10.0)
     };
     let exact = 9016.13323;
-    let run = record(&network, &shift(10_000.0, exact / 2.0, vec![tank]), &Plan::default());
+    let run = record(
+        &network,
+        &shift(10_000.0, exact / 2.0, vec![tank]),
+        &Plan::default(),
+    );
     let filled = time_of(&run, What::Alarm);
     assert!((filled - exact).abs() < 1e-4, "{filled}");
     assert!((level_at(&run, exact / 2.0) - 14.2540333).abs() < 1e-6);
@@ -267,7 +290,11 @@ fn sump_cycles() {
     for (inflow, cycle) in [(0.025, 240.0), (0.01, 375.0), (0.04, 375.0)] {
         let (network, shift, plan) = sump(inflow);
         let run = record(&network, &shift, &plan);
-        let starts: Vec<&Event> = run.events().iter().filter(|e| e.what == What::Start).collect();
+        let starts: Vec<&Event> = run
+            .events()
+            .iter()
+            .filter(|e| e.what == What::Start)
+            .collect();
         assert!(starts.len() > 5);
         for pair in starts.windows(2) {
             let found = pair[1].time - pair[0].time;
@@ -292,7 +319,12 @@ fn an_empty_tank_passes_on_what_flows_in() {
     let tank = Tank {
         inflows: vec![Varying::steady(0.01)],
         draws: vec![Varying::steady(0.004)],
-        ..Tank::open(find(&network, "tank"), Shape::Upright { area: 10.0 }, 2.0, 1.0)
+        ..Tank::open(
+            find(&network, "tank"),
+            Shape::Upright { area: 10.0 },
+            2.0,
+            1.0,
+        )
     };
     let shift = shift(7200.0, 60.0, vec![tank]);
     let mut rows = Record::new();
@@ -317,7 +349,11 @@ fn a_full_tank_spills() {
     // 0.06 in, 0.05 out: from 1.5 m at 25 s to 2 m takes 150 s, then 0.01 m3/s spills
     let score = outcome.score.tanks[0];
     let full = 25.0 + 0.5 * 3.0 / 0.01;
-    assert!((score.spilled - 0.01 * (3600.0 - full)).abs() < 1e-6, "{}", score.spilled);
+    assert!(
+        (score.spilled - 0.01 * (3600.0 - full)).abs() < 1e-6,
+        "{}",
+        score.spilled
+    );
     assert!((score.above_alarm - (3600.0 - 25.0 - 0.3 * 3.0 / 0.01)).abs() < 1e-6);
     assert_eq!(score.end_level, 2.0);
     assert!(outcome.score.volume_error < 1e-12);

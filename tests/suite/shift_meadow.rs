@@ -3,10 +3,18 @@
 use crate::meadow::{self, Meadow, NARROW, WIDE_COMMON, WIDE_STEPPED};
 use dutybank::shift::{Outcome, Plan, Record, Rotate, run};
 
-fn level() -> f64 { std::env::var("LEVEL").map_or(1.0, |x| x.parse().unwrap()) }
+fn level() -> f64 {
+    std::env::var("LEVEL").map_or(1.0, |x| x.parse().unwrap())
+}
 fn outcome(meadow: &Meadow, plan: &Plan, storm: bool, one_out: bool) -> Outcome {
     let mut shift = meadow::day(meadow, storm, level());
-    if one_out { shift.faults.push(dutybank::shift::Fault { at: 0.0, lasts: None, kind: dutybank::shift::FaultKind::PumpOut(meadow.pumps[2]) }); }
+    if one_out {
+        shift.faults.push(dutybank::shift::Fault {
+            at: 0.0,
+            lasts: None,
+            kind: dutybank::shift::FaultKind::PumpOut(meadow.pumps[2]),
+        });
+    }
     run(&meadow.network, &shift, plan, &mut ()).unwrap()
 }
 
@@ -14,8 +22,20 @@ fn outcome(meadow: &Meadow, plan: &Plan, storm: bool, one_out: bool) -> Outcome 
 fn print_table() {
     let meadow = meadow::station();
     let rules: [(&str, &[(f64, f64)], Rotate, bool, bool); 6] = [
-        ("wide common fixed", &WIDE_COMMON, Rotate::Never, false, false),
-        ("wide stepped alt", &WIDE_STEPPED, Rotate::EachStart, false, false),
+        (
+            "wide common fixed",
+            &WIDE_COMMON,
+            Rotate::Never,
+            false,
+            false,
+        ),
+        (
+            "wide stepped alt",
+            &WIDE_STEPPED,
+            Rotate::EachStart,
+            false,
+            false,
+        ),
         ("narrow alt", &NARROW, Rotate::EachStart, false, false),
         ("narrow fixed", &NARROW, Rotate::Never, false, false),
         ("peak hold", &WIDE_STEPPED, Rotate::EachStart, true, false),
@@ -26,8 +46,7 @@ fn print_table() {
         if peak {
             meadow::hold_peak(&mut plan);
         }
-        if one_out {
-        }
+        if one_out {}
         for storm in [false, true] {
             let out = outcome(&meadow, &plan, storm, one_out);
             let s = &out.score;
@@ -51,9 +70,24 @@ fn print_table() {
     let mut record = Record::new();
     let plan = meadow::plan(&meadow, &WIDE_STEPPED, Rotate::EachStart);
     let t = std::time::Instant::now();
-    run(&meadow.network, &meadow::day(&meadow, true, 1.0), &plan, &mut record).unwrap();
-    println!("{:?} {} rows {} events", t.elapsed(), record.times().len(), record.events().len());
+    run(
+        &meadow.network,
+        &meadow::day(&meadow, true, 1.0),
+        &plan,
+        &mut record,
+    )
+    .unwrap();
+    println!(
+        "{:?} {} rows {} events",
+        t.elapsed(),
+        record.times().len(),
+        record.events().len()
+    );
     for e in record.events().iter().take(12) {
-        println!("{:.6} {}", e.time, e.words(&meadow.network, &|k, x| format!("{x:.2} {k:?}")));
+        println!(
+            "{:.6} {}",
+            e.time,
+            e.words(&meadow.network, &|k, x| format!("{x:.2} {k:?}"))
+        );
     }
 }
