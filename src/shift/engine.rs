@@ -682,7 +682,12 @@ impl<'a> Engine<'a> {
             }
             if let Some(far) = bracket {
                 let tolerance = (LOCATED / self.step.h).max(1e-15);
-                let near = (0.0, -far.1.max(f64::MIN_POSITIVE));
+                let start = self.figure_inside(0.0, watch)?;
+                if start >= 0.0 {
+                    // It was there already; what acts on it has acted.
+                    continue;
+                }
+                let near = (0.0, start);
                 let theta = far_side(near, far, tolerance, |theta| {
                     self.figure_inside(theta, watch)
                 })?;

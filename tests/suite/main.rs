@@ -6,3 +6,4 @@ mod published;
 mod random;
 mod shift_closed_forms;
 mod shift_meadow;
+mod shift_staging;
