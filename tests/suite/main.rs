@@ -7,3 +7,4 @@ mod random;
 mod shift_closed_forms;
 mod shift_meadow;
 mod shift_staging;
+mod shift_tanks;

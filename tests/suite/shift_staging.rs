@@ -396,9 +396,13 @@ fn speed_holds_a_level() {
         let (record, outcome) = record(&meadow, &meadow::day(&meadow, false, 1.2), &plan);
         let tank = outcome.score.tanks[0];
         let write = |_, figure: f64| format!("{figure:.4}");
-        let told = |event: &Event| format!("{:.0} {}", event.time, event.words(&meadow.network, &write));
+        let told =
+            |event: &Event| format!("{:.0} {}", event.time, event.words(&meadow.network, &write));
         let events: Vec<String> = record.events().iter().map(told).collect();
-        assert!(tank.highest < 1.5 && tank.lowest > 1.0, "{tank:?} {events:#?}");
+        assert!(
+            tank.highest < 1.5 && tank.lowest > 1.0,
+            "{tank:?} {events:#?}"
+        );
         // one pump carries 63 L/s at most, so at 62 L/s it is near its top speed
         assert!(outcome.score.starts >= 2, "{events:#?}");
     }
