@@ -1,1 +1,5 @@
-fn main() {}
+//! The command; everything it does is in the library.
+
+fn main() -> std::process::ExitCode {
+    dutybank::cli::run()
+}

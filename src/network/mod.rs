@@ -255,6 +255,24 @@ impl Network {
         self.covers[self.pump(id).model].as_ref()
     }
 
+    /// Whether two lines hold the same parts in the same order, valves standing alike; names and elevations aside.
+    pub fn equal_parts(&self, a: LineId, b: LineId, settings: &Settings) -> bool {
+        let (a, b) = (&self.line(a).parts, &self.line(b).parts);
+        let equal = |(a, b): (&Part, &Part)| match (a, b) {
+            (Part::Pipe(a), Part::Pipe(b)) => a == b,
+            (Part::Loss(a), Part::Loss(b)) | (Part::CheckValve(a), Part::CheckValve(b)) => a == b,
+            (Part::Valve(a), Part::Valve(b)) => {
+                self.valve(*a) == self.valve(*b) && settings.valve(*a) == settings.valve(*b)
+            }
+            (Part::Pump(a), Part::Pump(b)) => {
+                self.pump(*a).model == self.pump(*b).model
+                    && self.pump(*a).when_stopped == self.pump(*b).when_stopped
+            }
+            _ => false,
+        };
+        a.len() == b.len() && a.iter().zip(b).all(equal)
+    }
+
     /// Which way water can go through a line as it stands: by its check valves, the outlets at its ends and the ports above
     /// a tank's surface.
     pub fn direction(&self, id: LineId, settings: &Settings) -> Direction {

@@ -22,6 +22,7 @@ mod yaml;
 pub use changes::Change;
 pub use needs::Case;
 pub use table::Load;
+pub use yaml::LARGEST;
 
 use crate::diagnostic::{Diagnostic, Diagnostics, Severity};
 use crate::network::{Need, Network};

@@ -197,7 +197,7 @@ pub(crate) fn ordinary_flow(network: &Network, settings: &Settings, line: usize)
 }
 
 /// Head lost in one part at flow `q`, m.
-pub(crate) fn part_loss(network: &Network, settings: &Settings, part: &Part, q: f64) -> f64 {
+pub fn part_loss(network: &Network, settings: &Settings, part: &Part, q: f64) -> f64 {
     let loss = match part {
         Part::Pipe(pipe) => pipe.friction.loss(q),
         Part::Loss(loss) | Part::CheckValve(loss) => loss.loss(q),

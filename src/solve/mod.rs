@@ -35,5 +35,5 @@ mod system;
 mod tolerance;
 
 pub use certificate::Balance;
-pub use solution::{LineState, Solution};
+pub use solution::{Balances, LineState, Solution};
 pub use solver::{SolveError, Solver};

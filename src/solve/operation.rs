@@ -1,6 +1,6 @@
 //! From the answer back to what a person asks of a pump, a line or a node: pressures, power, NPSH, share of best efficiency.
 
-use super::laws::part_loss;
+pub use super::laws::part_loss;
 use super::{LineState, Solution};
 use crate::network::{LineId, Network, NodeId, Settings};
 use crate::part::pump::{PowerCurve, PumpModel};
@@ -33,6 +33,8 @@ pub struct LineOperation {
 pub struct PumpOperation {
     /// Whether it runs.
     pub running: bool,
+    /// Speed ratio times trim ratio, by which its curves are scaled.
+    pub speed_ratio: f64,
     /// Flow through it, m3/s.
     pub flow: f64,
     /// Head it adds, m.
@@ -129,6 +131,7 @@ pub fn pump(
     if !setting.running {
         return PumpOperation {
             running: false,
+            speed_ratio: setting.ratio(),
             flow,
             head: None,
             efficiency: None,
@@ -154,6 +157,7 @@ pub fn pump(
         .map(|(head, vapour)| air_head(vapour) + head - elevation);
     PumpOperation {
         running: true,
+        speed_ratio: s,
         flow,
         head: Some(head),
         efficiency: efficiency(model, q, weight * flow * head, shaft_power, setting.wear),

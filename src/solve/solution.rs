@@ -53,3 +53,12 @@ impl Solution {
         &self.balance
     }
 }
+
+/// The balances found for one set of settings; more than one only where a running pump's head curve droops.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Balances {
+    /// The one with the largest flows.
+    pub first: Solution,
+    /// Those with smaller flows.
+    pub others: Vec<Solution>,
+}

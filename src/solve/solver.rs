@@ -3,7 +3,7 @@
 use super::certain::Certain;
 use super::certificate::{Balance, certify};
 use super::newton::{Effort, Newton, OneWay, Outcome};
-use super::solution::{LineState, Solution};
+use super::solution::{Balances, LineState, Solution};
 use super::system::{Role, State, System};
 use crate::network::{LineId, Network, NodeId, Passage, Settings, Standing, Unreachable};
 use crate::part::curve::Cover;
@@ -162,54 +162,55 @@ impl<'n> Solver<'n> {
         self.run(settings)
     }
 
-    /// Every balance found near: one where all head curves fall; where a running pump's curve droops, also the one with the
-    /// larger or smaller flow if there is such, the larger first.
+    /// The balances: one where all head curves fall; where a running pump's curve droops, the one with the larger flows
+    /// and the one with the smaller, if they differ.
     ///
     /// # Errors
-    /// The error of the first, if none was found.
-    pub fn balances(&mut self, settings: &Settings) -> Result<Vec<Solution>, SolveError> {
+    /// See [`SolveError`].
+    pub fn balances(&mut self, settings: &Settings) -> Result<Balances, SolveError> {
         let network = self.network();
         let droops = network
             .pump_ids()
             .any(|pump| settings.pump(pump).running && network.covers(pump).is_some());
         if !droops {
-            return Ok(vec![self.solve(settings)?.clone()]);
+            let first = self.solve(settings)?.clone();
+            return Ok(Balances {
+                first,
+                others: Vec::new(),
+            });
         }
-        let mut found: Vec<Solution> = Vec::new();
-        let mut failure = None;
-        for cover in [Some(Cover::Upper), Some(Cover::Lower), None] {
-            match self.from_cover(settings, cover) {
-                Ok(solution) => {
-                    if !found.iter().any(|other| same_flows(other, &solution)) {
-                        found.push(solution);
-                    }
-                }
-                Err(error) => failure = failure.or(Some(error)),
+        let upper = self.through_cover(settings, Cover::Upper);
+        let lower = self.through_cover(settings, Cover::Lower);
+        match (upper, lower) {
+            (Ok(first), Ok(other)) if !same_flows(&first, &other) => Ok(Balances {
+                first,
+                others: vec![other],
+            }),
+            (Ok(first), _) | (_, Ok(first)) => Ok(Balances {
+                first,
+                others: Vec::new(),
+            }),
+            (Err(_), Err(_)) => {
+                let first = self.solve(settings)?.clone();
+                Ok(Balances {
+                    first,
+                    others: Vec::new(),
+                })
             }
-            if cover == Some(Cover::Lower) && !found.is_empty() {
-                break;
-            }
-        }
-        match failure {
-            Some(error) if found.is_empty() => Err(error),
-            _ => Ok(found),
         }
     }
 
-    /// Solves with falling stand-ins first, then from there with the plain curves.
-    fn from_cover(
-        &mut self,
-        settings: &Settings,
-        cover: Option<Cover>,
-    ) -> Result<Solution, SolveError> {
+    /// Solves with falling stand-ins for drooping curves first, then from there with the plain curves.
+    fn through_cover(&mut self, settings: &Settings, cover: Cover) -> Result<Solution, SolveError> {
         self.prepare(settings)?;
+        self.solved = false;
         self.system.cold_start(&mut self.state);
         let mut effort = Effort::default();
-        if cover.is_some() {
-            self.system.laws.set(self.system.network, settings, cover);
-            self.iterate(&mut effort);
-            self.system.laws.set(self.system.network, settings, None);
-        }
+        self.system
+            .laws
+            .set(self.system.network, settings, Some(cover));
+        self.iterate(&mut effort);
+        self.system.laws.set(self.system.network, settings, None);
         self.finish(settings, effort).cloned()
     }
 
@@ -255,7 +256,7 @@ impl<'n> Solver<'n> {
     fn finish(&mut self, settings: &Settings, mut effort: Effort) -> Result<&Solution, SolveError> {
         let certain_path = self.iterate(&mut effort);
         self.system.settle(&mut self.state);
-        let balance = certify(&self.system, &self.state, &mut self.scratch)
+        let balance = certify(&mut self.system, &self.state, &mut self.scratch)
             .map_err(|error| self.explain(settings, error))?;
         self.solved = true;
         self.solution.balance = Balance {

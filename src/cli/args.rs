@@ -1,0 +1,128 @@
+//! What can be typed.
+
+use std::path::PathBuf;
+
+use clap::{Args, Parser, Subcommand};
+
+const EXIT_CODES: &str = "\
+Exit codes:
+  0  the answer was found, needs met or not
+  1  a need is unmet, and --fail-unmet was given
+  2  bad input, or a run that broke";
+
+/// Finds what several centrifugal pumps in one system really do, in parallel and in series.
+#[derive(Parser)]
+#[command(name = "dutybank", version, after_help = EXIT_CODES, max_term_width = 100)]
+pub(crate) struct Arguments {
+    #[command(subcommand)]
+    pub command: Command,
+}
+
+#[derive(Subcommand)]
+pub(crate) enum Command {
+    /// Read a system file, report all its problems, and describe the network in words
+    #[command(after_help = "Example:\n  dutybank check networks/starter.yaml")]
+    Check(CheckOptions),
+    /// Solve the system as it stands: what every pump, line and node does, and whether the needs are met
+    #[command(after_help = SOLVE_EXAMPLES)]
+    Solve(SolveOptions),
+    /// Solve every distinct set of running pumps in every case, and say what each further pump really adds
+    #[command(after_help = DUTY_EXAMPLES)]
+    Duty(DutyOptions),
+}
+
+const SOLVE_EXAMPLES: &str = "\
+Examples:
+  dutybank solve networks/starter.yaml
+  dutybank solve networks/starter.yaml --running duty.1 --level pond=2.5m
+  dutybank solve networks/starter.yaml --speed duty.2=90% --json
+
+Exit codes:
+  0  the answer was found, needs met or not
+  1  a need is unmet, and --fail-unmet was given
+  2  bad input, or a run that broke";
+
+const DUTY_EXAMPLES: &str = "\
+Examples:
+  dutybank duty networks/mill_pond_transfer.yaml
+  dutybank duty networks/mill_pond_transfer.yaml --worst-first --csv sets.csv
+  dutybank duty networks/plant_cooling_loop.yaml --pumps P1,P3
+
+Exit codes:
+  0  the table was made, needs met or not
+  1  a need is unmet in every set of some case, and --fail-unmet was given
+  2  bad input, or a run that broke";
+
+#[derive(Args)]
+pub(crate) struct FileOption {
+    /// The system file (YAML); `-` reads standard input
+    #[arg(value_name = "FILE")]
+    pub file: PathBuf,
+}
+
+#[derive(Args)]
+pub(crate) struct CheckOptions {
+    #[command(flatten)]
+    pub input: FileOption,
+}
+
+/// Changes from the command line, checked like the file.
+#[derive(Args)]
+pub(crate) struct ChangeOptions {
+    /// Run just these pumps, stop all others
+    #[arg(long, value_name = "PUMP,..", value_delimiter = ',')]
+    pub running: Option<Vec<String>>,
+    /// Speed of a pump or bank, in rpm or per cent of its model's: `duty.1=90%`
+    #[arg(long, value_name = "PUMP=SPEED")]
+    pub speed: Vec<String>,
+    /// Level of a tank above its floor, or surface of a reservoir: `pond=2.5m`
+    #[arg(long, value_name = "NODE=LEVEL")]
+    pub level: Vec<String>,
+    /// Any other value of the file by its path: `rising_main.roughness=1mm`
+    #[arg(long, value_name = "PATH=VALUE")]
+    pub set: Vec<String>,
+    /// One of the file's cases
+    #[arg(long, value_name = "NAME")]
+    pub case: Option<String>,
+}
+
+#[derive(Args)]
+pub(crate) struct SolveOptions {
+    #[command(flatten)]
+    pub input: FileOption,
+    #[command(flatten)]
+    pub changes: ChangeOptions,
+    /// Print one JSON object instead of tables
+    #[arg(long)]
+    pub json: bool,
+    /// Also write one CSV file per table into this folder
+    #[arg(long, value_name = "DIR")]
+    pub csv: Option<PathBuf>,
+    /// Exit with 1 if a need is unmet
+    #[arg(long)]
+    pub fail_unmet: bool,
+}
+
+#[derive(Args)]
+pub(crate) struct DutyOptions {
+    #[command(flatten)]
+    pub input: FileOption,
+    /// Switch only these pumps or banks; the others stay as the file has them
+    #[arg(long, value_name = "PUMP,..", value_delimiter = ',')]
+    pub pumps: Option<Vec<String>>,
+    /// Only these cases; `as-is` is the file as it stands
+    #[arg(long, value_name = "NAME,..", value_delimiter = ',')]
+    pub cases: Option<Vec<String>>,
+    /// Unmet needs and tightest limits first
+    #[arg(long)]
+    pub worst_first: bool,
+    /// Print one JSON object instead of tables
+    #[arg(long)]
+    pub json: bool,
+    /// Also write the table to this CSV file
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
+    /// Exit with 1 if in some case no set meets all needs
+    #[arg(long)]
+    pub fail_unmet: bool,
+}

@@ -1,0 +1,13 @@
+//! Finished figures put into a form: tables, CSV, JSON, sentences. Computes nothing.
+
+pub mod describe;
+pub mod duty;
+pub mod grid;
+pub mod json;
+pub mod solve;
+pub mod words;
+
+/// Stands at the foot of results.
+pub const CAUTION: &str = "\
+Steady state: surge, pump starts and valve slam are not modelled. Curves are for clean cold water unless corrected.
+Limits are defaults of the trade, not the law: local codes, the authority and a licensed engineer decide.";
