@@ -251,9 +251,10 @@ impl<'a> Engine<'a> {
             if self.toggles[i] >= 2 {
                 continue;
             }
-            let dry = volume <= 0.0 && net < -STILL;
+            let dry = volume <= tank.floor && net < -STILL;
             // Where the outflow dies away as the last of it goes, the floor is touched, never passed.
-            let dried_up = volume <= 1e-9 * tank.capacity && net.abs() <= STILL;
+            let above = volume - tank.floor;
+            let dried_up = above.abs() <= 1e-9 * tank.capacity && net.abs() <= STILL;
             let what = match tank.mode {
                 Mode::Free if dry || dried_up => {
                     tank.mode = Mode::Floor;
@@ -277,7 +278,7 @@ impl<'a> Engine<'a> {
                 _ => continue,
             };
             match what {
-                What::Empty => self.sums[i] = volume.max(0.0),
+                What::Empty => self.sums[i] = volume.max(tank.floor),
                 What::Spills => self.sums[i] = tank.capacity,
                 _ => {}
             }
@@ -486,7 +487,7 @@ impl<'a> Engine<'a> {
             };
             match tank.mode {
                 Mode::Free => {
-                    watch(0.0, Way::Down);
+                    watch(tank.floor, Way::Down);
                     watch(tank.capacity, Way::Up);
                 }
                 Mode::Floor | Mode::Brim => self.figure_watches.push(FigureWatch {

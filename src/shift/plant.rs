@@ -52,6 +52,8 @@ pub(super) struct TankState {
     pub node: NodeId,
     pub mode: Mode,
     pub capacity: f64,
+    /// Volume at which nothing can leave any more: below all ports, if nobody else draws from it.
+    pub floor: f64,
     pub start_volume: f64,
     /// Lines that end here, with +1 where forward flow comes in.
     joins: Vec<(LineId, f64)>,
@@ -109,6 +111,11 @@ impl<'a> Plant<'a> {
                 node: tank.node,
                 mode: Mode::Free,
                 capacity: tank.capacity(),
+                floor: if tank.draws.is_empty() {
+                    tank.shape.volume(lowest_port(network, tank.node))
+                } else {
+                    0.0
+                },
                 start_volume: tank.shape.volume(tank.level),
                 joins: joins(tank.node),
                 inflow: StraightFlow::default(),
@@ -454,6 +461,16 @@ impl<'a> Plant<'a> {
         }
         rates[books.total_energy()] = total;
     }
+}
+
+/// The lowest end of a line at a tank, m above its floor.
+fn lowest_port(network: &Network, node: NodeId) -> f64 {
+    let lines = network.lines().iter();
+    let ends = lines.flat_map(|line| [(line.from, line.ports[0]), (line.to, line.ports[1])]);
+    let heights = ends
+        .filter(|end| end.0 == node)
+        .map(|end| end.1.unwrap_or(0.0));
+    heights.min_by(f64::total_cmp).unwrap_or(0.0)
 }
 
 /// Sums of what lines bring to a tank and take from it, m3/s.
