@@ -159,7 +159,7 @@ fn nothing_leaves_through_a_port_above_the_surface() {
         record
             .events()
             .iter()
-            .any(|event| event.what == What::PortUncovered)
+            .any(|event| event.what == What::Empty)
     );
 }
 
