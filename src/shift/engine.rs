@@ -14,6 +14,7 @@ use super::score::Score;
 use super::staging::{Control, Figure, FigureWatch, SLACK, Watch};
 use super::tally::Tally;
 use crate::network::{LineId, Network, NodeId};
+use crate::solve::operation;
 use std::ops::ControlFlow;
 
 /// Relative tolerance of the volumes in a step, where the shift asks for none.
@@ -898,6 +899,8 @@ fn fill_row(row: &mut Vec<f64>, plant: &Plant, side: Side, volumes: &[f64], rate
         if network.pump(pump).name != network.line(line).name {
             row.push(plant.answer(side).flow(line));
         }
+        let operation = operation::pump(network, &plant.settings, plant.answer(side), pump);
+        row.push(operation.npsh_available.unwrap_or(f64::NAN));
         row.push(rates[books.shaft_energy(i)]);
         row.push(rates[books.energy(i)]);
     }

@@ -3,6 +3,7 @@
 mod meadow;
 mod properties_of_liquids;
 mod published;
+mod published_over_time;
 mod random;
 mod shift_closed_forms;
 mod shift_meadow;
