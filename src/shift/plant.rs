@@ -306,31 +306,47 @@ impl<'a> Plant<'a> {
         }
     }
 
-    /// Solves; a draw or inflow at a point that no flow can meet is left out, and so booked.
+    /// Solves; a draw or inflow at a point that no flow can meet is left out, and so booked as unmet or spilled.
     fn resolve(&mut self, side: Side) -> Result<(), SolveError> {
+        // Where the last answer leads astray the way from nothing may do.
+        let mut cold = false;
         loop {
             if side == Side::Run {
                 self.solves += 1;
             }
-            match self.solvers[side as usize].resolve(&self.settings) {
+            let solver = &mut self.solvers[side as usize];
+            let answer = if cold {
+                solver.solve(&self.settings)
+            } else {
+                solver.resolve(&self.settings)
+            };
+            match answer {
                 Ok(_) => return Ok(()),
                 Err(SolveError::Unreachable(Unreachable { node, draw })) => {
-                    let point = self
+                    let uncut = |point: &&mut PointState| point.node == node && !point.cut;
+                    let Some(point) = self.points.iter_mut().find(uncut) else {
+                        return Err(SolveError::Unreachable(Unreachable { node, draw }));
+                    };
+                    point.cut = true;
+                    self.settings.set_draw(node, 0.0);
+                }
+                Err(_) if !cold => cold = true,
+                Err(error) => {
+                    // No balance within reason: what is drawn most is not to be had.
+                    let settings = &self.settings;
+                    let size = |point: &PointState| settings.draw(point.node).abs();
+                    let largest = self
                         .points
                         .iter_mut()
-                        .find(|point| point.node == node && !point.cut);
-                    match point {
-                        Some(point) => {
-                            point.cut = true;
-                            self.settings.set_draw(node, 0.0);
-                        }
-                        None => {
-                            let at = Unreachable { node, draw };
-                            return Err(SolveError::Unreachable(at));
-                        }
-                    }
+                        .filter(|point| !point.cut && size(point) > 0.0)
+                        .max_by(|a, b| size(a).total_cmp(&size(b)));
+                    let Some(point) = largest else {
+                        return Err(error);
+                    };
+                    point.cut = true;
+                    let node = point.node;
+                    self.settings.set_draw(node, 0.0);
                 }
-                Err(error) => return Err(error),
             }
         }
     }

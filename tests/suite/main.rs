@@ -7,5 +7,6 @@ mod published_over_time;
 mod random;
 mod shift_closed_forms;
 mod shift_meadow;
+mod shift_read;
 mod shift_staging;
 mod shift_tanks;
