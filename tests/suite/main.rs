@@ -3,6 +3,10 @@
 mod meadow;
 mod properties_of_liquids;
 mod published;
+mod published_over_time;
 mod random;
 mod shift_closed_forms;
 mod shift_meadow;
+mod shift_read;
+mod shift_staging;
+mod shift_tanks;
