@@ -48,7 +48,7 @@ impl Certain {
         Self {
             slope: vec![0.0; system.held.len()],
             conductance: vec![0.0; system.roles.len()],
-            step: vec![0.0; system.free.iter().flatten().count()],
+            step: vec![0.0; system.unknowns()],
             base: vec![0.0; system.held.len()],
             extra_slope: 0.0,
             damping: 0.0,
@@ -97,8 +97,8 @@ impl Certain {
     /// Flows, conductances and slopes at the heads of `state`; returns the largest slope.
     fn evaluate(&mut self, system: &System, state: &mut State) -> f64 {
         self.slope.copy_from_slice(&system.draws);
-        for &line in &system.live {
-            let line = line as usize;
+        for live in &system.live {
+            let line = live.index();
             let (from, to) = system.ends[line];
             let drop = system.drop(state, line);
             let sense = system.sense[line];
@@ -149,8 +149,8 @@ impl Certain {
                 self.step[i as usize] = -slope;
             }
         }
-        for &line in &system.live {
-            let line = line as usize;
+        for live in &system.live {
+            let line = live.index();
             let y = self.conductance[line];
             let (from, to) = system.ends[line];
             let (a, b) = (system.free[from as usize], system.free[to as usize]);

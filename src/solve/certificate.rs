@@ -22,13 +22,14 @@ pub struct Balance {
 
 /// Recomputes the balances of `state`, whose leaves are settled. `imbalance` is scratch, one per node.
 pub(super) fn certify(
-    system: &System,
+    system: &mut System,
     state: &State,
     imbalance: &mut [f64],
 ) -> Result<Balance, SolveError> {
     let mut balance = Balance::default();
     let mut largest_flow: f64 = 0.0;
     imbalance.fill(0.0);
+    system.laws.evaluate(&state.flows);
     for (line, &role) in system.roles.iter().enumerate() {
         let q = state.flows[line];
         let (from, to) = system.ends[line];
@@ -38,7 +39,7 @@ pub(super) fn certify(
         if role == Role::Idle {
             continue;
         }
-        let loss = system.loss(line, q).head;
+        let loss = system.laws.loss_at(line, q).head;
         let (above, below) = (state.heads[from as usize], state.heads[to as usize]);
         let off = loss - system.drop(state, line);
         let off = if state.shut[line] {

@@ -11,9 +11,9 @@
 #[derive(Clone, Debug)]
 pub(crate) struct Factor {
     n: usize,
-    /// Position of each unknown in elimination order.
+    /// Position of each unknown in elimination order, and one past the last.
     position: Vec<u32>,
-    /// Upper triangle of the permuted matrix by column: row indices and values.
+    /// Upper triangle of the permuted matrix by column: row indices, and values from place 1 on.
     a_first: Vec<u32>,
     a_row: Vec<u32>,
     a: Vec<f64>,
@@ -36,6 +36,11 @@ pub(crate) struct Factor {
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(crate) struct Slot(u32);
 
+impl Slot {
+    /// An entry that no equation reads: where a line ends at a held head.
+    pub const UNUSED: Self = Self(0);
+}
+
 impl Factor {
     /// For `n` unknowns coupled pairwise as in `couplings`. Returns one slot per coupling.
     pub fn new(n: usize, couplings: &[(u32, u32)]) -> (Self, Vec<Slot>) {
@@ -50,7 +55,9 @@ impl Factor {
         entries.dedup();
         let slots = couplings
             .iter()
-            .map(|coupling| Slot(entries.partition_point(|entry| *entry < placed(coupling)) as u32))
+            .map(|coupling| {
+                Slot(1 + entries.partition_point(|entry| *entry < placed(coupling)) as u32)
+            })
             .collect();
         let mut a_first = vec![0; n + 1];
         for &(column, _) in &entries {
@@ -59,12 +66,14 @@ impl Factor {
         prefix_sums(&mut a_first);
         let a_row: Vec<u32> = entries.iter().map(|&(_, row)| row).collect();
         let (row_first, row_column, l_first, l_row) = symbolic(n, &a_first, &a_row);
+        let mut position = position;
+        position.push(n as u32);
         let factor = Self {
             n,
-            a: vec![0.0; a_row.len()],
+            a: vec![0.0; 1 + a_row.len()],
             a_first,
             a_row,
-            diagonal: vec![0.0; n],
+            diagonal: vec![0.0; n + 1],
             l: vec![0.0; l_row.len()],
             filled: vec![0; n],
             l_first,
@@ -78,13 +87,18 @@ impl Factor {
         (factor, slots)
     }
 
+    /// Number of unknowns.
+    pub fn unknowns(&self) -> usize {
+        self.n
+    }
+
     /// Sets the matrix to zero.
     pub fn clear(&mut self) {
         self.a.fill(0.0);
         self.diagonal.fill(0.0);
     }
 
-    /// Adds to the diagonal entry of unknown `i`.
+    /// Adds to the diagonal entry of unknown `i`; one past the last is a place that no equation reads.
     #[inline]
     pub fn add_diagonal(&mut self, i: u32, value: f64) {
         self.diagonal[self.position[i as usize] as usize] += value;
@@ -105,7 +119,7 @@ impl Factor {
         self.filled.copy_from_slice(&self.l_first[..self.n]);
         for k in 0..self.n {
             for p in self.a_first[k] as usize..self.a_first[k + 1] as usize {
-                self.work[self.a_row[p] as usize] = self.a[p];
+                self.work[self.a_row[p] as usize] = self.a[p + 1];
             }
             let mut pivot = self.diagonal[k];
             for p in self.row_first[k] as usize..self.row_first[k + 1] as usize {
@@ -136,7 +150,7 @@ impl Factor {
     /// Solves with the last factorisation; `right` holds the right side, then the answer.
     pub fn solve(&mut self, right: &mut [f64]) {
         let x = &mut self.work;
-        for (i, &p) in self.position.iter().enumerate() {
+        for (i, &p) in self.position[..self.n].iter().enumerate() {
             x[p as usize] = right[i];
         }
         for k in 0..self.n {
@@ -152,7 +166,7 @@ impl Factor {
             }
             x[k] = y;
         }
-        for (i, &p) in self.position.iter().enumerate() {
+        for (i, &p) in self.position[..self.n].iter().enumerate() {
             right[i] = std::mem::take(&mut x[p as usize]);
         }
         x.fill(0.0);

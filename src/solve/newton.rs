@@ -23,7 +23,7 @@
 //! primal-dual active set strategy as a semismooth Newton method", SIAM J. Optim. 13, 2002.
 
 use super::system::{State, System};
-use super::tolerance::{HEAD, SLOPE_FLOOR, flow_tolerance};
+use super::tolerance::{HEAD, OPENING, SLOPE_FLOOR, flow_tolerance};
 
 /// How the iterations ended.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -37,6 +37,9 @@ const LIMIT: u32 = 80;
 
 /// Iterations without a better state after which the fast path is given up.
 const PATIENCE: u32 = 8;
+
+/// Residual over its tolerance at which a converged state needs no further step.
+const POLISHED: f64 = 1e-3;
 
 /// Iterations done, and factorisations.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
@@ -56,22 +59,21 @@ pub(super) enum OneWay {
 
 /// Scratch of the fast path.
 pub(super) struct Newton {
+    /// Per live line.
     residual: Vec<f64>,
     conductance: Vec<f64>,
-    /// Per node: imbalance, then right side.
+    /// Per unknown and one for all held heads.
     imbalance: Vec<f64>,
-    /// Per unknown.
     step: Vec<f64>,
 }
 
 impl Newton {
     pub fn new(system: &System) -> Self {
-        let unknowns = system.free.iter().flatten().count();
         Self {
             residual: vec![0.0; system.roles.len()],
             conductance: vec![0.0; system.roles.len()],
-            imbalance: vec![0.0; system.held.len()],
-            step: vec![0.0; unknowns],
+            imbalance: vec![0.0; system.unknowns() + 1],
+            step: vec![0.0; system.unknowns() + 1],
         }
     }
 
@@ -85,6 +87,7 @@ impl Newton {
     ) -> Outcome {
         let mut settled = one_way == OneWay::Frozen
             || (shut_wrong_way(system, state) && !any_to_open(system, state));
+        let mut polished = false;
         let mut best = f64::INFINITY;
         let mut since_best = 0;
         for _ in 0..LIMIT {
@@ -93,9 +96,13 @@ impl Newton {
             if !worst.is_finite() {
                 return Outcome::Stalled;
             }
-            if worst <= 1.0 && settled {
+            // One more step takes what has just come within tolerance to rounding: a tank that empties through a line asks for
+            // the flow under its last nanometres, where a tolerance on heads says little.
+            let good = worst <= 1.0 && settled;
+            if good && (polished || worst <= POLISHED) {
                 return Outcome::Converged;
             }
+            polished = good;
             since_best = if worst < 0.9 * best {
                 0
             } else {
@@ -105,7 +112,6 @@ impl Newton {
             if since_best > PATIENCE {
                 return Outcome::Stalled;
             }
-            self.assemble(system, state);
             effort.factorisations += 1;
             if !system.factor.factorise() {
                 return Outcome::Stalled;
@@ -116,114 +122,101 @@ impl Newton {
         Outcome::Stalled
     }
 
-    /// Residuals and conductances at `state`; returns the worst residual over its tolerance.
+    /// Residuals at `state`, and the system for the next step; returns the worst residual over its tolerance.
     fn evaluate(&mut self, system: &mut System, state: &State) -> f64 {
         system.laws.evaluate(&state.flows);
+        let System {
+            laws,
+            factor,
+            live,
+            free,
+            draws,
+            ..
+        } = system;
+        factor.clear();
+        for (node, unknown) in free.iter().enumerate() {
+            if let Some(i) = *unknown {
+                self.imbalance[i as usize] = -draws[node];
+            }
+        }
+        self.step.fill(0.0);
         let mut worst_head: f64 = 0.0;
         let mut largest_flow: f64 = 0.0;
-        for (imbalance, draw) in self.imbalance.iter_mut().zip(&system.draws) {
-            *imbalance = -draw;
-        }
-        for &line in &system.live {
-            let line = line as usize;
+        let mut sum = 0.0;
+        for (k, live) in live.iter().enumerate() {
+            let line = live.index();
             if state.shut[line] {
                 continue;
             }
             let q = state.flows[line];
-            let loss = system.laws.loss_at(line, q);
-            let (from, to) = system.ends[line];
-            let (above, below) = (state.heads[from as usize], state.heads[to as usize]);
-            let r = loss.head - system.drop(state, line);
-            self.residual[line] = r;
+            let loss = laws.loss_at(line, q);
+            let drop = live.drop(&state.heads);
+            let r = loss.head - drop;
             // A law that is flat at no flow would leave the system singular there.
-            self.conductance[line] = 1.0 / loss.slope.max(SLOPE_FLOOR);
-            let scale =
-                HEAD.absolute + HEAD.relative * loss.head.abs().max(above.abs()).max(below.abs());
-            worst_head = worst_head.max(r.abs() / scale);
+            let y = 1.0 / loss.slope.max(SLOPE_FLOOR);
+            (self.residual[k], self.conductance[k]) = (r, y);
+            let size = state.heads[live.from as usize].abs() + drop.abs();
+            worst_head = worst_head.max(r.abs() / (HEAD.absolute + HEAD.relative * size));
             largest_flow = largest_flow.max(q.abs());
-            self.imbalance[from as usize] -= q;
-            self.imbalance[to as usize] += q;
-            // `max` passes a NaN over
-            if r.is_nan() {
-                return f64::NAN;
-            }
+            sum += r;
+            let (a, b) = (live.from_unknown as usize, live.to_unknown as usize);
+            self.imbalance[a] -= q;
+            self.imbalance[b] += q;
+            self.step[a] += y * r;
+            self.step[b] -= y * r;
+            factor.add_diagonal(live.from_unknown, y);
+            factor.add_diagonal(live.to_unknown, y);
+            factor.add(live.slot, -y);
+        }
+        // `max` passes a NaN over, a sum does not
+        if !sum.is_finite() {
+            return f64::NAN;
         }
         let mut worst_flow: f64 = 0.0;
-        for (imbalance, free) in self.imbalance.iter().zip(&system.free) {
-            if free.is_some() {
-                worst_flow = worst_flow.max(imbalance.abs());
-            }
+        for unknown in free.iter().flatten() {
+            let e = self.imbalance[*unknown as usize];
+            worst_flow = worst_flow.max(e.abs());
+            self.step[*unknown as usize] += e;
         }
         worst_head.max(worst_flow / flow_tolerance(largest_flow))
     }
 
-    fn assemble(&mut self, system: &mut System, state: &State) {
-        let factor = &mut system.factor;
-        factor.clear();
-        self.step.fill(0.0);
-        for (node, free) in system.free.iter().enumerate() {
-            if let Some(i) = *free {
-                self.step[i as usize] = self.imbalance[node];
-            }
-        }
-        for &line in &system.live {
-            let line = line as usize;
-            if state.shut[line] {
-                continue;
-            }
-            let y = self.conductance[line];
-            let yr = y * self.residual[line];
-            let (from, to) = system.ends[line];
-            let (a, b) = (system.free[from as usize], system.free[to as usize]);
-            if let Some(i) = a {
-                factor.add_diagonal(i, y);
-                self.step[i as usize] += yr;
-            }
-            if let Some(i) = b {
-                factor.add_diagonal(i, y);
-                self.step[i as usize] -= yr;
-            }
-            if let (Some(_), Some(_), Some(slot)) = (a, b, system.slots[line]) {
-                factor.add(slot, -y);
-            }
-        }
-    }
-
     /// Takes the step; true if no one-way line changed.
     fn advance(&mut self, system: &System, state: &mut State, one_way: OneWay) -> bool {
-        for (node, head) in state.heads.iter_mut().enumerate() {
-            if let Some(i) = system.free[node] {
+        if let Some(shared) = self.step.last_mut() {
+            *shared = 0.0;
+        }
+        for (head, unknown) in state.heads.iter_mut().zip(&system.free) {
+            if let Some(i) = *unknown {
                 *head += self.step[i as usize];
             }
         }
-        let change = |node: u32| system.free[node as usize].map_or(0.0, |i| self.step[i as usize]);
         let mut settled = true;
-        for &line in &system.live {
-            let line = line as usize;
-            let sense = system.sense[line];
+        for (k, live) in system.live.iter().enumerate() {
+            let line = live.index();
             if state.shut[line] {
-                if one_way == OneWay::Free && system.push(state, line) > HEAD.absolute {
+                if one_way == OneWay::Free && system.push(state, line) > OPENING {
                     system.open_line(state, line);
                     settled = false;
                 }
                 continue;
             }
-            let (from, to) = system.ends[line];
             let old = state.flows[line];
-            let (y, r) = (self.conductance[line], self.residual[line]);
-            let (above, below) = (change(from), change(to));
+            let (y, r) = (self.conductance[k], self.residual[k]);
+            let above = self.step[live.from_unknown as usize];
+            let below = self.step[live.to_unknown as usize];
             let new = old + y * (above - below - r);
+            if live.sense * new >= 0.0 || one_way == OneWay::Frozen {
+                state.flows[line] = new;
+                continue;
+            }
+            state.flows[line] = 0.0;
+            // Where continuity alone makes it stand still, shutting it would leave its far end without a head.
             let rounding = 1e-15 * y * (above.abs() + below.abs() + r.abs()) + 1e-12 * old.abs();
-            state.flows[line] = if sense * new >= 0.0 || one_way == OneWay::Frozen {
-                new
-            } else if sense * new >= -rounding {
-                // Continuity alone makes it stand still; shutting it would leave its far end without a head.
-                0.0
-            } else {
+            if live.sense * new < -rounding {
                 state.shut[line] = true;
                 settled = false;
-                0.0
-            };
+            }
         }
         settled
     }
@@ -232,9 +225,9 @@ impl Newton {
 /// Shuts one-way lines that flow against their sense; true if there was none.
 fn shut_wrong_way(system: &System, state: &mut State) -> bool {
     let mut none = true;
-    for &line in &system.live {
-        let line = line as usize;
-        if system.sense[line] * state.flows[line] < 0.0 {
+    for live in &system.live {
+        let line = live.index();
+        if live.sense * state.flows[line] < 0.0 {
             state.shut[line] = true;
             state.flows[line] = 0.0;
             none = false;
@@ -245,8 +238,8 @@ fn shut_wrong_way(system: &System, state: &mut State) -> bool {
 
 /// Whether a line that the last answer held shut now has the head to open. A warm start may balance everywhere else.
 fn any_to_open(system: &System, state: &State) -> bool {
-    system.live.iter().any(|&line| {
-        let line = line as usize;
-        state.shut[line] && system.push(state, line) > HEAD.absolute
+    system.live.iter().any(|live| {
+        let line = live.index();
+        state.shut[line] && system.push(state, line) > OPENING
     })
 }

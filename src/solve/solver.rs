@@ -256,7 +256,7 @@ impl<'n> Solver<'n> {
     fn finish(&mut self, settings: &Settings, mut effort: Effort) -> Result<&Solution, SolveError> {
         let certain_path = self.iterate(&mut effort);
         self.system.settle(&mut self.state);
-        let balance = certify(&self.system, &self.state, &mut self.scratch)
+        let balance = certify(&mut self.system, &self.state, &mut self.scratch)
             .map_err(|error| self.explain(settings, error))?;
         self.solved = true;
         self.solution.balance = Balance {

@@ -33,6 +33,36 @@ struct Leaf {
     parent: u32,
 }
 
+/// A live line, with all that an iteration asks of it side by side.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Live {
+    pub line: u32,
+    pub from: u32,
+    pub to: u32,
+    /// Unknowns of its ends. Held heads share one more, [`System::unknowns`], whose change is zero.
+    pub from_unknown: u32,
+    pub to_unknown: u32,
+    /// Where its ends meet in the matrix.
+    pub slot: Slot,
+    /// 0 both ways, 1 forward only, -1 backward only.
+    pub sense: f64,
+    pub lift: f64,
+}
+
+impl Live {
+    /// Its position among all lines.
+    #[inline]
+    pub fn index(&self) -> usize {
+        self.line as usize
+    }
+
+    /// Head difference along it, from its `from` end to its `to` end, m.
+    #[inline]
+    pub fn drop(&self, heads: &[f64]) -> f64 {
+        heads[self.from as usize] - heads[self.to as usize] + self.lift
+    }
+}
+
 /// Heads, flows and shut one-way lines: what the iterations write.
 #[derive(Clone, Debug)]
 pub(super) struct State {
@@ -58,7 +88,7 @@ pub(super) struct System<'n> {
     lift: Vec<f64>,
     pub roles: Vec<Role>,
     /// The live lines, ascending.
-    pub live: Vec<u32>,
+    pub live: Vec<Live>,
     /// Per node: its head does not change while iterating.
     pub held: Vec<bool>,
     /// Per node: its head is held by what it is.
@@ -242,12 +272,41 @@ impl<'n> System<'n> {
                 self.queue.push(parent as u32);
             }
         }
-        self.live.clear();
-        self.live
-            .extend((0..self.roles.len() as u32).filter(|&i| self.roles[i as usize] == Role::Live));
         for (node, free) in self.free.iter_mut().enumerate() {
             *free = self.places[node].filter(|_| !self.held[node] && self.degree[node] > 0);
         }
+        self.gather_live();
+    }
+
+    fn gather_live(&mut self) {
+        self.live.clear();
+        let shared = self.unknowns() as u32;
+        for (line, role) in self.roles.iter().enumerate() {
+            if *role != Role::Live {
+                continue;
+            }
+            let (from, to) = self.ends[line];
+            let (a, b) = (self.free[from as usize], self.free[to as usize]);
+            let slot = match (a, b, self.slots[line]) {
+                (Some(_), Some(_), Some(slot)) => slot,
+                _ => Slot::UNUSED,
+            };
+            self.live.push(Live {
+                line: line as u32,
+                from,
+                to,
+                from_unknown: a.unwrap_or(shared),
+                to_unknown: b.unwrap_or(shared),
+                slot,
+                sense: self.sense[line],
+                lift: self.lift[line],
+            });
+        }
+    }
+
+    /// Number of unknowns of the matrix; those of held heads and leaves have no entries.
+    pub fn unknowns(&self) -> usize {
+        self.factor.unknowns()
     }
 
     /// A start when nothing is known: ordinary flows, all lines open, heads amid the held ones.
@@ -271,19 +330,16 @@ impl<'n> System<'n> {
         {
             *head = middle;
         }
-        for &line in &self.live {
-            self.open_line(state, line as usize);
+        for live in &self.live {
+            self.open_line(state, live.index());
         }
     }
 
     /// A start from the last answer; lines that were not live then get their ordinary flow.
     pub fn warm_start(&self, state: &mut State) {
-        for &line in self
-            .live
-            .iter()
-            .filter(|&&line| !self.was_live[line as usize])
-        {
-            self.open_line(state, line as usize);
+        let new = |live: &&Live| !self.was_live[live.index()];
+        for live in self.live.iter().filter(new) {
+            self.open_line(state, live.index());
         }
     }
 
@@ -315,8 +371,8 @@ impl<'n> System<'n> {
     pub fn complementary(&self, state: &mut State) -> bool {
         let rounding = flow_tolerance(0.0);
         let mut all = true;
-        for &line in &self.live {
-            let line = line as usize;
+        for live in &self.live {
+            let line = live.index();
             if state.shut[line] {
                 all &= self.push(state, line) <= HEAD.absolute;
             } else if self.sense[line] * state.flows[line] < 0.0 {

@@ -13,6 +13,10 @@ pub(super) const HEAD: HeadTolerance = HeadTolerance {
     relative: 1e-14,
 };
 
+/// A line held shut opens when the head along it exceeds its loss at no flow by this, m. Finer than [`HEAD`]: the flow
+/// grows with the square root of what is missing.
+pub(super) const OPENING: f64 = 1e-12;
+
 /// The certificate asks for this; heads are promised to 1e-8 m.
 pub(super) const CERTIFIED_HEAD: HeadTolerance = HeadTolerance {
     absolute: 1e-8,

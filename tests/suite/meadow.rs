@@ -13,8 +13,8 @@ use dutybank::part::pump::{Motor, PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::{Part, PumpId};
 use dutybank::shift::{
-    Bands, Between, Call, Daily, Follow, Group, Plan, Rotate, Schedule, Shape, Shift, Step, Tank, Tariff,
-    TariffWindow, Varying, Window,
+    Bands, Between, Call, Daily, Follow, Group, Plan, Rotate, Schedule, Shape, Shift, Step, Tank,
+    Tariff, TariffWindow, Varying, Window,
 };
 
 pub const GRAVITY: f64 = 9.80665;
@@ -212,7 +212,10 @@ pub fn day(meadow: &Meadow, storm: bool, level: f64) -> Shift {
 
 pub fn plan(meadow: &Meadow, steps: &[(f64, f64)], rotate: Rotate) -> Plan {
     let well = meadow.network.find_node("wet_well").unwrap();
-    let steps: Vec<Step> = steps.iter().map(|&(start, stop)| Step { start, stop }).collect();
+    let steps: Vec<Step> = steps
+        .iter()
+        .map(|&(start, stop)| Step { start, stop })
+        .collect();
     let bands = Bands {
         follow: Follow::Level(well),
         steps,
