@@ -50,7 +50,6 @@ fn one(cx: &mut Context, key: &Key, node: &Marked) -> Option<NodeSpec> {
     }?;
     Some(NodeSpec {
         name: key.name.clone(),
-        place: key.place,
         kind,
     })
 }
@@ -176,12 +175,11 @@ fn tank(cx: &mut Context, what: &str, node: &Marked) -> Option<NodeKindSpec> {
             );
         }
         (Some(_), Some(node)) => {
-            cx.error(
-                "both-keys",
-                node.place,
-                format!("give `area` or `diameter` of {what}, not both"),
-            );
+            let message = format!("give `area` or `diameter` of {what}, not both");
+            let help = "`diameter` is for a round tank; it makes the area";
+            cx.push(Diagnostic::error("both-keys", node.place, message).help(help));
         }
+        (None, None) if fields.is_misspelt("area") || fields.is_misspelt("diameter") => {}
         (None, None) => {
             let message = format!("{what} needs `area` or `diameter`");
             let help = "add for example `area: 40 m2`, or `diameter: 6 m` for a round one";
