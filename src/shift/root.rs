@@ -17,7 +17,7 @@ pub(super) fn far_side<E>(
     tolerance: f64,
     mut f: impl FnMut(f64) -> Result<f64, E>,
 ) -> Result<f64, E> {
-    const LIMIT: u32 = 200;
+    const LIMIT: u32 = 400;
     let positive = fb > 0.0;
     let mut last_moved = 0;
     let mut width = (b - a).abs();

@@ -2,6 +2,7 @@
 
 use super::certain::Certain;
 use super::certificate::{Balance, certify};
+use super::floating::Floating;
 use super::newton::{Effort, Newton, OneWay, Outcome};
 use super::solution::{Balances, LineState, Solution};
 use super::system::{Role, State, System};
@@ -106,6 +107,7 @@ pub struct Solver<'n> {
     system: System<'n>,
     newton: Newton,
     certain: Certain,
+    floating: Floating,
     state: State,
     solution: Solution,
     scratch: Vec<f64>,
@@ -121,6 +123,7 @@ impl<'n> Solver<'n> {
         Self {
             newton: Newton::new(&system),
             certain: Certain::new(&system),
+            floating: Floating::new(&system),
             state,
             solution: Solution {
                 heads: vec![f64::NAN; n],
@@ -237,6 +240,7 @@ impl<'n> Solver<'n> {
             system,
             newton,
             certain,
+            floating,
             state,
             ..
         } = self;
@@ -247,6 +251,7 @@ impl<'n> Solver<'n> {
         certain.approach(system, state, effort);
         // The states are known now; only where the approach ended too far off may they change once more.
         let outcome = newton.solve(system, state, OneWay::Frozen, effort);
+        floating.settle(system, state);
         if outcome == Outcome::Stalled || !system.complementary(state) {
             newton.solve(system, state, OneWay::Free, effort);
         }
@@ -255,6 +260,7 @@ impl<'n> Solver<'n> {
 
     fn finish(&mut self, settings: &Settings, mut effort: Effort) -> Result<&Solution, SolveError> {
         let certain_path = self.iterate(&mut effort);
+        self.floating.settle(&self.system, &mut self.state);
         self.system.settle(&mut self.state);
         let balance = certify(&mut self.system, &self.state, &mut self.scratch)
             .map_err(|error| self.explain(settings, error))?;

@@ -2,6 +2,7 @@
 
 mod bad;
 mod meadow;
+mod properties;
 mod properties_of_liquids;
 mod published;
 mod published_over_time;
