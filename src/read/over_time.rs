@@ -1,8 +1,9 @@
 //! `shift`, `faults`, `tariff` and what flows in and out of tanks and points: everything over time but the plans.
 
 use super::context::{Bound, Context, Fields};
-use super::schedules::{NamedSchedule, schedules, time};
-use super::staging::{Names, plans};
+use super::references::Names;
+use super::schedules::{schedules, time};
+use super::staging::plans;
 use super::tanks;
 use super::yaml::{Form, Marked};
 use super::{Change, Document, Load, System, changes};
@@ -401,23 +402,4 @@ fn fault(cx: &mut Context, names: &Names, node: &Marked, starts: f64) -> Option<
             .map(|kind| Fault { at, lasts, kind })
             .collect(),
     )
-}
-
-impl Names<'_> {
-    /// The position of the schedule that a value names.
-    pub(super) fn schedule(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<usize> {
-        let name = cx.text(node, what)?;
-        let found = self
-            .schedules
-            .iter()
-            .position(|schedule| schedule.name == name);
-        if found.is_none() {
-            let names = self
-                .schedules
-                .iter()
-                .map(|schedule: &NamedSchedule| schedule.name.as_str());
-            super::staging::unknown(cx, "schedule", node, &name, names);
-        }
-        found
-    }
 }

@@ -2,21 +2,15 @@
 
 use super::context::{Bound, Context, Fields, found, scalar_text};
 use super::over_time::daily;
-use super::schedules::NamedSchedule;
+use super::references::Names;
 use super::yaml::Marked;
-use crate::diagnostic::{Diagnostic, Place, nearest};
-use crate::network::{LineId, Network, NodeId, NodeKind};
+use crate::diagnostic::{Diagnostic, Place};
+use crate::network::{LineId, Network, NodeKind};
 use crate::part::PumpId;
 use crate::shift::{
     Bands, Call, Exercise, Follow, Group, Hold, HoldStyle, Plan, Rotate, Step, Trip, Window,
 };
 use crate::units::Kind;
-
-/// Names that rules refer to.
-pub(super) struct Names<'n> {
-    pub network: &'n Network,
-    pub schedules: &'n [NamedSchedule],
-}
 
 const GROUP_KEYS: [&str; 17] = [
     "name",
@@ -450,87 +444,4 @@ fn hold(
         down_at: down_at?,
         down_delay: down_delay?,
     }))
-}
-
-impl Names<'_> {
-    /// The pump, or the pumps of the bank or line, that a value names.
-    pub(super) fn pumps(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<Vec<PumpId>> {
-        let name = cx.text(node, what)?;
-        let network = self.network;
-        if let Some(pump) = network.find_pump(&name) {
-            return Some(vec![pump]);
-        }
-        let lines = self.find_lines(&name);
-        let pumps: Vec<PumpId> = lines
-            .iter()
-            .flat_map(|line| network.line(*line).pumps())
-            .collect();
-        if pumps.is_empty() {
-            let names = network.pumps().iter().map(|pump| pump.name.as_str());
-            unknown(cx, "pump", node, &name, names);
-            return None;
-        }
-        Some(pumps)
-    }
-
-    fn find_lines(&self, name: &str) -> Vec<LineId> {
-        match self.network.banks().iter().find(|bank| bank.name == name) {
-            Some(bank) => bank.lines.clone(),
-            None => self.network.find_line(name).into_iter().collect(),
-        }
-    }
-
-    /// The line, or the lines of the bank, that a value names.
-    pub(super) fn lines(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<Vec<LineId>> {
-        let name = cx.text(node, what)?;
-        let lines = self.find_lines(&name);
-        if lines.is_empty() {
-            let names = self.network.lines().iter().map(|line| line.name.as_str());
-            unknown(cx, "line", node, &name, names);
-            return None;
-        }
-        Some(lines)
-    }
-
-    /// The node that a value names.
-    fn node(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<NodeId> {
-        let name = cx.text(node, what)?;
-        let found = self.network.find_node(&name);
-        if found.is_none() {
-            let names = self.network.nodes().iter().map(|node| node.name.as_str());
-            unknown(cx, "node", node, &name, names);
-        }
-        found
-    }
-}
-
-/// Reports a name that points nowhere.
-pub(super) fn unknown<'a>(
-    cx: &mut Context,
-    what: &str,
-    node: &Marked,
-    name: &str,
-    names: impl Iterator<Item = &'a str>,
-) {
-    let mut names: Vec<&str> = names.collect();
-    names.sort_unstable();
-    let mut diagnostic = Diagnostic::error(
-        "unknown-name",
-        node.place,
-        format!("no {what} is called `{name}`"),
-    );
-    diagnostic.help = match nearest(name, names.iter().copied()) {
-        Some(near) => Some(format!("did you mean `{near}`?")),
-        None if names.is_empty() => Some(format!("the file has no {what}")),
-        None => Some(format!(
-            "there are `{}`",
-            names
-                .iter()
-                .take(8)
-                .copied()
-                .collect::<Vec<_>>()
-                .join("`, `")
-        )),
-    };
-    cx.push(diagnostic);
 }

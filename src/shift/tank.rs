@@ -130,6 +130,9 @@ impl Shape {
 /// phi with phi - sin phi = `wanted` (0 to 2 pi), by Newton kept inside a bracket.
 fn segment_angle(wanted: f64) -> f64 {
     let full = std::f64::consts::TAU;
+    if wanted <= 0.0 {
+        return 0.0;
+    }
     if wanted > 0.5 * full {
         return full - segment_angle(full - wanted);
     }
