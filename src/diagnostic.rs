@@ -85,7 +85,7 @@ impl Diagnostic {
     }
 }
 
-/// Problems kept before the rest is only counted.
+/// Errors, and cautions, kept before the rest is only counted.
 const KEPT: usize = 100;
 
 /// All problems of one text, in the order in which they were found until [`Self::sort`].
@@ -93,23 +93,39 @@ const KEPT: usize = 100;
 pub struct Diagnostics {
     list: Vec<Diagnostic>,
     errors: usize,
-    dropped: usize,
+    cautions: usize,
 }
 
 impl Diagnostics {
     /// Adds one.
-    pub fn push(&mut self, diagnostic: Diagnostic) {
-        self.errors += usize::from(diagnostic.severity == Severity::Error);
-        if self.list.len() < KEPT || diagnostic.severity == Severity::Caution {
+    pub fn push(&mut self, mut diagnostic: Diagnostic) {
+        // A change from the command line stands nowhere in the text.
+        diagnostic.place = diagnostic.place.filter(|place| place.line > 0);
+        let count = match diagnostic.severity {
+            Severity::Error => &mut self.errors,
+            Severity::Caution => &mut self.cautions,
+        };
+        // Members of a bank are read from the same text: what is wrong there is said once.
+        if *count < KEPT && self.list.contains(&diagnostic) {
+            return;
+        }
+        *count += 1;
+        if *count <= KEPT {
             self.list.push(diagnostic);
-        } else {
-            self.dropped += 1;
         }
     }
 
-    /// Whether further problems are only counted: no need for a costly search for the nearest name.
+    /// Adds the errors of others that are not here yet.
+    pub fn add_errors(&mut self, others: &Self) {
+        let errors = others.list.iter();
+        errors
+            .filter(|d| d.severity == Severity::Error)
+            .for_each(|d| self.push(d.clone()));
+    }
+
+    /// Whether further errors are only counted: no need for a costly search for the nearest name.
     pub fn is_full(&self) -> bool {
-        self.list.len() >= KEPT
+        self.errors >= KEPT
     }
 
     /// Whether the text cannot be used.
@@ -126,7 +142,6 @@ impl Diagnostics {
     pub fn sort(&mut self) {
         self.list
             .sort_by_key(|d| d.place.map(|place| (place.line, place.column)));
-        self.list.dedup();
     }
 
     /// All problems as text: file, line and column, the source line with the place marked, what would mend it.
@@ -156,8 +171,10 @@ impl Diagnostics {
             out.push_str(&renderer.render(&[group]));
             out.push_str("\n\n");
         }
-        if self.dropped > 0 {
-            out.push_str(&format!("and {} more problems\n", self.dropped));
+        for (count, what) in [(self.errors, "errors"), (self.cautions, "cautions")] {
+            if count > KEPT {
+                out.push_str(&format!("and {} more {what}\n", count - KEPT));
+            }
         }
         out
     }
@@ -206,6 +223,8 @@ fn snippet<'a>(
 /// Byte offsets at which the lines of a text start.
 struct LineStarts {
     starts: Vec<usize>,
+    /// One byte a character: no need to walk through a line for a column.
+    is_ascii: bool,
 }
 
 impl LineStarts {
@@ -217,6 +236,7 @@ impl LineStarts {
             .map(|(i, _)| i + 1);
         Self {
             starts: std::iter::once(0).chain(after).collect(),
+            is_ascii: text.is_ascii(),
         }
     }
 
@@ -228,6 +248,9 @@ impl LineStarts {
             .starts
             .get(line.max(1) as usize)
             .map_or(text.len(), |next| next - 1);
+        if self.is_ascii {
+            return (start + column.max(1) as usize - 1).min(end);
+        }
         let mut offsets = text[start..end].char_indices().map(|(i, _)| start + i);
         offsets.nth(column.max(1) as usize - 1).unwrap_or(end)
     }

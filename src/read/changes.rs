@@ -8,7 +8,7 @@ use std::collections::BTreeMap;
 use super::context::{Context, scalar_text};
 use super::lines::PARTS;
 use super::names::EVERY;
-use super::yaml::{Form, Key, Marked};
+use super::yaml::{Form, Key, Marked, Scalar};
 use crate::diagnostic::{Diagnostic, Place, nearest};
 
 /// One change.
@@ -21,7 +21,7 @@ pub struct Change {
 impl Change {
     /// From text, as on a command line: `Change::new("duty.1.speed", "90 %")`.
     pub fn new(path: &str, value: &str) -> Self {
-        let scalar = match serde_yaml::from_str::<serde_yaml::Value>(value) {
+        let meant = match serde_yaml::from_str::<serde_yaml::Value>(value) {
             Ok(plain) if plain.is_bool() || plain.is_number() => plain,
             _ => value.into(),
         };
@@ -33,7 +33,10 @@ impl Change {
             },
             value: Marked {
                 place,
-                value: Form::Scalar(scalar),
+                value: Form::Scalar(Scalar {
+                    value: meant,
+                    written: value.to_owned(),
+                }),
             },
         }
     }
@@ -49,7 +52,7 @@ impl Change {
 
     /// The value as written.
     pub fn value(&self) -> String {
-        scalar_text(&self.value).unwrap_or_else(|| "(a map)".to_owned())
+        scalar_text(&self.value).unwrap_or("(a map)").to_owned()
     }
 }
 
@@ -133,7 +136,7 @@ impl PartChange {
     fn apply(&self, line: &mut Marked) {
         for (kind, part) in parts_mut(line) {
             let named =
-                |pump: &String| get(part, "name").and_then(scalar_text).as_ref() == Some(pump);
+                |pump: &String| get(part, "name").and_then(scalar_text) == Some(pump.as_str());
             if kind == self.kind && self.pump.as_ref().is_none_or(named) {
                 let is_k_beside_friction = self.kind == "pipe" && self.key.name == "k";
                 set(part, &self.key, &self.value, !is_k_beside_friction);
@@ -196,8 +199,15 @@ fn one(root: &mut Marked, change: &Change, members: &mut MemberChanges) -> Outco
 
 /// `all.KEY` and `all.PART.KEY`.
 fn every(root: &mut Marked, words: &[&str], key: &Key, change: &Change) -> Outcome {
+    let mut present: Vec<&'static str> = section_mut(root, "lines")
+        .into_iter()
+        .flat_map(|(_, line)| parts_mut(line))
+        .map(|(kind, _)| kind)
+        .collect();
+    present.sort_unstable();
+    present.dedup();
     let kind = match words {
-        [] => kind_with_key(&PARTS, key, change, EVERY)?,
+        [] => kind_with_key(&present, key, change, EVERY)?,
         [kind] => match PARTS.iter().find(|part| *part == kind) {
             Some(kind) => kind,
             None => {
@@ -242,8 +252,11 @@ fn every(root: &mut Marked, words: &[&str], key: &Key, change: &Change) -> Outco
     if count == 0 {
         return fail(
             change,
-            format!("no {kind} of this system has `{}`", key.name),
-            "check the key",
+            format!("`{}` changes nothing", change.path.name),
+            match present.contains(&kind) {
+                true => "no pipe gives its friction in this way",
+                false => "there is no such part",
+            },
         );
     }
     Ok(())
@@ -311,7 +324,7 @@ fn named(
         .into_iter()
         .find_map(|(line_name, line)| {
             let has = parts_mut(line).into_iter().any(|(kind, part)| {
-                kind == "pump" && get(part, "name").and_then(scalar_text).as_deref() == Some(name)
+                kind == "pump" && get(part, "name").and_then(scalar_text) == Some(name)
             });
             has.then(|| (line_name.to_owned(), line))
         });
@@ -397,7 +410,7 @@ fn line_change(
             let message = format!("`{line_name}` has no member {member}");
             let help = match highest {
                 0 => format!("it is a single line: write `{line_name}.{}`", key.name),
-                highest => format!("its members are {line_name}.1 to {line_name}.{highest}"),
+                highest => format!("its members are `{line_name}.1` to `{line_name}.{highest}`"),
             };
             return fail(change, message, help);
         }

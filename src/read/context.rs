@@ -2,14 +2,53 @@
 
 use serde_yaml::Value;
 
-use super::yaml::{Form, Key, Marked};
+use super::spec::Placed;
+use super::yaml::{Form, Key, Marked, Scalar, shortened};
 use crate::diagnostic::{Diagnostic, Diagnostics, Place, nearest};
-use crate::units::{self, Kind, Quantity, SpeedValue, UnitSet, ViscosityValue, parse_quantity};
+use crate::units::{
+    self, Kind, Quantity, QuantityError, SpeedValue, UnitSet, ViscosityValue, parse_quantity,
+};
 
 /// What reading needs at hand: the file's units, and where problems go.
 pub(super) struct Context {
     pub units: UnitSet,
     pub diagnostics: Diagnostics,
+    /// Every name that refers to something, also in lines and needs that cannot be read for another reason.
+    pub references: Vec<(Referent, Placed<String>)>,
+}
+
+/// What a name refers to.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Referent {
+    Node,
+    Line,
+    PumpModel,
+}
+
+impl Context {
+    /// Nothing read yet.
+    pub fn new() -> Self {
+        Self {
+            units: UnitSet::metric(),
+            diagnostics: Diagnostics::default(),
+            references: Vec::new(),
+        }
+    }
+
+    /// A name that refers to something.
+    pub fn reference(
+        &mut self,
+        node: &Marked,
+        what: &str,
+        referent: Referent,
+    ) -> Option<Placed<String>> {
+        let name = Placed {
+            value: self.text(node, what)?,
+            place: node.place,
+        };
+        self.references.push((referent, name.clone()));
+        Some(name)
+    }
 }
 
 /// The range a figure must lie in.
@@ -25,10 +64,11 @@ pub(super) enum Bound {
 }
 
 /// The entries of a map whose keys have been checked.
-#[derive(Clone, Copy)]
 pub(super) struct Fields<'a> {
     pub place: Place,
     entries: &'a [(Key, Marked)],
+    /// Keys that unknown ones seem to stand for: reported already, so not missing too.
+    misspelt: Vec<&'a str>,
 }
 
 impl<'a> Fields<'a> {
@@ -41,6 +81,11 @@ impl<'a> Fields<'a> {
 
     pub fn has(&self, key: &str) -> bool {
         self.get(key).is_some()
+    }
+
+    /// Whether an unknown key seems to stand for this one.
+    pub fn is_misspelt(&self, key: &str) -> bool {
+        self.misspelt.contains(&key)
     }
 
     pub fn key_place(&self, key: &str) -> Place {
@@ -65,11 +110,17 @@ impl Context {
     }
 
     /// A map whose keys are all among `keys`; unknown ones are reported.
-    pub fn map<'a>(&mut self, node: &'a Marked, what: &str, keys: &[&str]) -> Option<Fields<'a>> {
-        let fields = self.any_map(node, what, &keys.join("`, `"))?;
+    pub fn map<'a>(
+        &mut self,
+        node: &'a Marked,
+        what: &str,
+        keys: &[&'a str],
+    ) -> Option<Fields<'a>> {
+        let mut fields = self.any_map(node, what, &keys.join("`, `"))?;
         for (key, _) in fields.entries {
             if !keys.contains(&key.name.as_str()) {
-                self.unknown_key(key, what, keys);
+                let near = self.unknown_key(key, what, keys);
+                fields.misspelt.extend(near);
             }
         }
         Some(fields)
@@ -83,25 +134,37 @@ impl Context {
         would_fit: &str,
     ) -> Option<Fields<'a>> {
         match &node.value {
-            Form::Map(entries) => Some(Fields {
-                place: node.place,
-                entries,
-            }),
+            Form::Map(entries) => {
+                if let Some((key, _)) = entries.iter().find(|(key, _)| key.name == "<<") {
+                    let message = format!("{what} merges another map, which is not read here");
+                    let help =
+                        "write the keys out; an alias can stand for a whole value: `pipe: *pipe`";
+                    self.push(Diagnostic::error("merge", key.place, message).help(help));
+                    return None;
+                }
+                Some(Fields {
+                    place: node.place,
+                    entries,
+                    misspelt: Vec::new(),
+                })
+            }
             other => {
                 let message = format!("{what} must be a map, found {}", form_name(other));
-                self.push(
-                    Diagnostic::error("wrong-form", node.place, message).help(format!(
-                        "write it as `key: value` with keys such as `{would_fit}`"
-                    )),
-                );
+                let help = match would_fit.contains(": ") {
+                    true => format!("write entries such as `{would_fit}`"),
+                    false => format!("write it as `key: value`; it knows `{would_fit}`"),
+                };
+                self.push(Diagnostic::error("wrong-form", node.place, message).help(help));
                 None
             }
         }
     }
 
-    pub fn unknown_key(&mut self, key: &Key, what: &str, keys: &[&str]) {
-        let message = format!("{what} has no key `{}`", key.name);
-        let help = match nearest(&key.name, keys.iter().copied()) {
+    /// Reports it; hands back the key that is meant, as far as that can be told.
+    fn unknown_key<'k>(&mut self, key: &Key, what: &str, keys: &[&'k str]) -> Option<&'k str> {
+        let near = nearest(&key.name, keys.iter().copied());
+        let message = format!("{what} has no key `{}`", shortened(&key.name));
+        let help = match near {
             Some(near) => format!("did you mean `{near}`? It knows `{}`", keys.join("`, `")),
             None => format!("it knows `{}`", keys.join("`, `")),
         };
@@ -110,6 +173,7 @@ impl Context {
                 .label("unknown key")
                 .help(help),
         );
+        near
     }
 
     /// The value of a key that must be there.
@@ -121,7 +185,7 @@ impl Context {
         example: &str,
     ) -> Option<&'a Marked> {
         let found = fields.get(key);
-        if found.is_none() {
+        if found.is_none() && !fields.is_misspelt(key) {
             let message = format!("{what} needs `{key}`");
             self.push(
                 Diagnostic::error("missing-key", fields.place, message)
@@ -134,9 +198,9 @@ impl Context {
     /// A name or other text; numbers serve as names too.
     pub fn text(&mut self, node: &Marked, what: &str) -> Option<String> {
         match scalar_text(node) {
-            Some(text) if !text.is_empty() => Some(text),
+            Some(text) if !text.is_empty() => Some(text.to_owned()),
             _ => {
-                let message = format!("{what} must be text, found {}", form_name(&node.value));
+                let message = format!("{what} must be text, found {}", found(node));
                 self.error("wrong-form", node.place, message);
                 None
             }
@@ -144,8 +208,10 @@ impl Context {
     }
 
     pub fn boolean(&mut self, node: &Marked, what: &str) -> Option<bool> {
-        if let Form::Scalar(Value::Bool(value)) = &node.value {
-            return Some(*value);
+        if let Form::Scalar(scalar) = &node.value
+            && let Value::Bool(value) = scalar.value
+        {
+            return Some(value);
         }
         let message = format!("{what} must be `true` or `false`, found {}", found(node));
         self.error("wrong-form", node.place, message);
@@ -168,36 +234,68 @@ impl Context {
         None
     }
 
-    /// A number or a number with a unit.
-    pub fn any_quantity(&mut self, node: &Marked, what: &str) -> Option<Quantity> {
-        let read = match &node.value {
-            Form::Scalar(Value::Number(number)) => number
+    /// A number or a number with a unit; `kind` is what it shall measure, none for a plain number.
+    pub fn any_quantity(
+        &mut self,
+        node: &Marked,
+        what: &str,
+        kind: Option<Kind>,
+    ) -> Option<Quantity> {
+        let scalar = match &node.value {
+            Form::Scalar(scalar) => Some(&scalar.value),
+            _ => None,
+        };
+        let read = match scalar {
+            Some(Value::Number(number)) => number
                 .as_f64()
                 .ok_or(None)
                 .and_then(|number| Quantity::bare(number).map_err(Some)),
-            Form::Scalar(Value::String(text)) => parse_quantity(text).map_err(Some),
+            Some(Value::String(text)) => parse_quantity(text).map_err(Some),
             _ => Err(None),
         };
         match read {
             Ok(quantity) => Some(quantity),
             Err(why) => {
-                let message = format!(
-                    "{what} must be a number, with or without a unit; found {}",
-                    found(node)
-                );
-                let mut diagnostic = Diagnostic::error("not-a-quantity", node.place, message);
-                if let Some(why) = why {
-                    diagnostic = diagnostic.help(why.to_string());
-                }
-                self.push(diagnostic);
+                let wanted = kind.map_or("a number".to_owned(), Kind::with_article);
+                let message = format!("{what} must be {wanted}, found {}", found(node));
+                let help = self.way_to_quantity(why, kind);
+                self.push(Diagnostic::error("not-a-quantity", node.place, message).help(help));
                 None
             }
         }
     }
 
+    /// What to write in place of something that is no quantity.
+    fn way_to_quantity(&self, why: Option<QuantityError>, kind: Option<Kind>) -> String {
+        let fits = || match kind? {
+            Kind::Speed => Some("rpm, %".to_owned()),
+            kind => Some(units::spellings(kind).collect::<Vec<_>>().join(", ")),
+        };
+        match (why, kind) {
+            (Some(QuantityError::UnknownUnit { unit, .. }), Some(kind)) => {
+                let unit = shortened(&unit);
+                match units::nearest(&unit, Some(kind)) {
+                    Some(near) => format!("`{unit}` is no unit known here; did you mean `{near}`?"),
+                    None => format!(
+                        "`{unit}` is no unit known here; units that fit: {}",
+                        fits().unwrap_or_default()
+                    ),
+                }
+            }
+            (Some(QuantityError::UnknownUnit { unit, .. }), None) => {
+                format!("it has no unit, and `{}` is none", shortened(&unit))
+            }
+            (Some(QuantityError::NoNumber { .. }) | None, _) => match fits() {
+                Some(units) => format!("write a number and its unit ({units})"),
+                None => "write a number without a unit".to_owned(),
+            },
+            (Some(why), _) => why.to_string(),
+        }
+    }
+
     /// A quantity of one kind, in SI.
     pub fn quantity(&mut self, node: &Marked, what: &str, kind: Kind, bound: Bound) -> Option<f64> {
-        let quantity = self.any_quantity(node, what)?;
+        let quantity = self.any_quantity(node, what, Some(kind))?;
         match quantity.to_si(kind, &self.units) {
             Ok(value) => self.bounded(node, what, value, bound),
             Err(wrong) => {
@@ -213,20 +311,16 @@ impl Context {
             kind.with_article(),
             found(node)
         );
-        let fits: Vec<&str> = units::spellings(kind).take(8).collect();
-        let help = format!("{why}; units that fit: {}", fits.join(", "));
-        self.push(Diagnostic::error("wrong-unit", node.place, message).help(help));
+        self.push(Diagnostic::error("wrong-unit", node.place, message).help(why));
     }
 
     /// A plain number, such as a loss coefficient.
     pub fn number(&mut self, node: &Marked, what: &str, bound: Bound) -> Option<f64> {
-        let quantity = self.any_quantity(node, what)?;
+        let quantity = self.any_quantity(node, what, None)?;
         if let Some(unit) = quantity.unit() {
-            let message = format!(
-                "{what} is a plain number, found {} with the unit {unit}",
-                found(node)
-            );
-            self.error("wrong-unit", node.place, message);
+            let message = format!("{what} must be a plain number, found {}", found(node));
+            let help = format!("it has no unit: write it without `{}`", unit.symbol);
+            self.push(Diagnostic::error("wrong-unit", node.place, message).help(help));
             return None;
         }
         self.bounded(node, what, quantity.number(), bound)
@@ -234,7 +328,7 @@ impl Context {
 
     /// A pump's speed.
     pub fn speed(&mut self, node: &Marked, what: &str) -> Option<SpeedValue> {
-        let quantity = self.any_quantity(node, what)?;
+        let quantity = self.any_quantity(node, what, Some(Kind::Speed))?;
         match quantity.to_speed() {
             Ok(speed) => {
                 let (SpeedValue::Rpm(value) | SpeedValue::Ratio(value)) = speed;
@@ -249,7 +343,7 @@ impl Context {
     }
 
     pub fn viscosity(&mut self, node: &Marked, what: &str) -> Option<ViscosityValue> {
-        let quantity = self.any_quantity(node, what)?;
+        let quantity = self.any_quantity(node, what, Some(Kind::Viscosity))?;
         match quantity.to_viscosity(&self.units) {
             Ok(value) => {
                 let (ViscosityValue::Kinematic(v) | ViscosityValue::Dynamic(v)) = value;
@@ -279,34 +373,34 @@ impl Context {
     }
 }
 
-/// A scalar as the user could have written it.
-pub(super) fn scalar_text(node: &Marked) -> Option<String> {
+/// A scalar as the user wrote it; none where nothing stands.
+pub(super) fn scalar_text(node: &Marked) -> Option<&str> {
     match &node.value {
-        Form::Scalar(Value::String(text)) => Some(text.clone()),
-        Form::Scalar(Value::Number(number)) => Some(number.to_string()),
-        Form::Scalar(Value::Bool(value)) => Some(value.to_string()),
+        Form::Scalar(Scalar {
+            value: Value::Null, ..
+        }) => None,
+        Form::Scalar(scalar) => Some(&scalar.written),
         _ => None,
     }
 }
 
 /// What stands there, for a message.
 pub(super) fn found(node: &Marked) -> String {
-    const LONGEST: usize = 60;
     match scalar_text(node) {
-        Some(text) if text.chars().count() > LONGEST => {
-            format!("`{}..`", text.chars().take(LONGEST).collect::<String>())
-        }
-        Some(text) => format!("`{text}`"),
+        Some("") => "an empty text".to_owned(),
+        Some(text) => format!("`{}`", shortened(text)),
         None => form_name(&node.value).to_owned(),
     }
 }
 
 pub(super) fn form_name(form: &Form) -> &'static str {
     match form {
-        Form::Scalar(Value::Null) => "nothing",
-        Form::Scalar(Value::Bool(_)) => "true or false",
-        Form::Scalar(Value::Number(_)) => "a number",
-        Form::Scalar(_) => "text",
+        Form::Scalar(scalar) => match scalar.value {
+            Value::Null => "nothing",
+            Value::Bool(_) => "true or false",
+            Value::Number(_) => "a number",
+            _ => "text",
+        },
         Form::List(_) => "a list",
         Form::Map(_) => "a map",
     }

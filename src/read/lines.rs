@@ -1,12 +1,12 @@
 //! `lines`: ends, banks, and the parts in their order.
 
 use super::changes::MemberChanges;
-use super::context::{Bound, Context, Fields, found, scalar_text};
+use super::context::{Bound, Context, Fields, Referent, found, scalar_text};
 use super::spec::{
     FrictionSpec, LineSpec, LossSpec, PartKindSpec, PartSpec, Placed, PumpSpec, SiteSpec,
 };
-use super::yaml::{Form, Key, Marked};
-use crate::diagnostic::Diagnostic;
+use super::yaml::{Key, Marked, shortened};
+use crate::diagnostic::{Diagnostic, Place};
 use crate::part::quadratic::QuadraticLoss;
 use crate::part::valve::{Characteristic, Valve};
 use crate::part::{fittings, materials};
@@ -47,10 +47,7 @@ fn line(
     let fields = cx.map(node, &what, &keys)?;
     let from = end(cx, &fields, "from", &what);
     let to = end(cx, &fields, "to", &what);
-    let count = match fields.get("count") {
-        Some(node) => Some(count(cx, node, &what)?),
-        None => None,
-    };
+    let count = fields.get("count").map(|node| count(cx, node, &what));
     let port = |cx: &mut Context, key: &str| {
         let node = fields.get(key)?;
         cx.quantity(
@@ -61,12 +58,12 @@ fn line(
         )
     };
     let ports = [port(cx, "from_port"), port(cx, "to_port")];
-    let parts = parts(cx, site, &what, &fields)?;
+    let parts = parts(cx, site, &what, &fields);
     let mut members = Vec::new();
     for member in changes.members_of(&key.name) {
         let changed = changes.applied(&key.name, member, node);
         let fields = cx.map(&changed, &what, &keys)?;
-        members.push((member, self::parts(cx, site, &what, &fields)?));
+        members.push((member, self::parts(cx, site, &what, &fields)));
     }
     Some(LineSpec {
         name: key.name.clone(),
@@ -74,19 +71,18 @@ fn line(
         from: from?,
         to: to?,
         ports,
-        count,
-        parts,
-        members,
+        count: transposed(count)?,
+        parts: parts?,
+        members: members
+            .into_iter()
+            .map(|(member, parts)| Some((member, parts?)))
+            .collect::<Option<_>>()?,
     })
 }
 
 fn end(cx: &mut Context, fields: &Fields, key: &str, what: &str) -> Option<Placed<String>> {
     let node = cx.required(fields, key, what, "NODE")?;
-    let value = cx.text(node, &format!("`{key}` of {what}"))?;
-    Some(Placed {
-        value,
-        place: node.place,
-    })
+    cx.reference(node, &format!("`{key}` of {what}"), Referent::Node)
 }
 
 fn count(cx: &mut Context, node: &Marked, what: &str) -> Option<u32> {
@@ -98,7 +94,12 @@ fn count(cx: &mut Context, node: &Marked, what: &str) -> Option<u32> {
         "`count` of {what} must be a whole number from 1 to {LARGEST_BANK}, found {}",
         found(node)
     );
-    cx.error("out-of-range", node.place, message);
+    let help = "large numbers of equal lines behave like one line with their flow together";
+    let diagnostic = Diagnostic::error("out-of-range", node.place, message);
+    cx.push(match value > LARGEST_BANK {
+        true => diagnostic.help(help),
+        false => diagnostic,
+    });
     None
 }
 
@@ -118,7 +119,7 @@ fn parts(cx: &mut Context, site: &SiteSpec, what: &str, fields: &Fields) -> Opti
                 "- pipe: {length: 3 m, bore: 200 mm}",
             )?;
             if items.is_empty() {
-                cx.error("missing-key", list.place, format!("{what} has no part"));
+                no_part(cx, what, list.place);
                 return None;
             }
             let read: Vec<Option<PartSpec>> = items
@@ -128,9 +129,13 @@ fn parts(cx: &mut Context, site: &SiteSpec, what: &str, fields: &Fields) -> Opti
             read.into_iter().collect()
         }
         (None, []) => {
-            let message = format!("{what} has no part");
-            let help = format!("give `parts:`, or one of `{}` directly", PARTS.join("`, `"));
-            cx.push(Diagnostic::error("missing-key", fields.place, message).help(help));
+            if !PARTS
+                .iter()
+                .chain(&["parts"])
+                .any(|key| fields.is_misspelt(key))
+            {
+                no_part(cx, what, fields.place);
+            }
             None
         }
         (Some(_), [extra, ..]) | (None, [_, extra, ..]) => {
@@ -140,6 +145,12 @@ fn parts(cx: &mut Context, site: &SiteSpec, what: &str, fields: &Fields) -> Opti
             None
         }
     }
+}
+
+fn no_part(cx: &mut Context, what: &str, place: Place) {
+    let message = format!("{what} has no part");
+    let help = format!("give `parts:`, or one of `{}` directly", PARTS.join("`, `"));
+    cx.push(Diagnostic::error("missing-key", place, message).help(help));
 }
 
 /// One item of `parts`: `- pipe: {..}`.
@@ -175,25 +186,23 @@ fn part(
             if !fields.has("k") && !fields.has("fittings") {
                 missing(cx, &fields, &what, &["k", "fittings"], "k: 2");
             }
-            let k = loss_coefficient(cx, &fields, &what)?;
-            PartKindSpec::Loss(LossSpec::K {
-                k,
-                bore: bore(cx, &fields, &what)?,
-            })
+            let k = loss_coefficient(cx, &fields, &what);
+            let bore = bore(cx, &fields, &what);
+            PartKindSpec::Loss(LossSpec::K { k: k?, bore: bore? })
         }
         "valve" => {
             let keys = ["k", "kv", "cv", "bore", "open", "opening", "characteristic"];
             let fields = cx.map(node, &what, &keys)?;
             let open = match fields.get("open") {
-                Some(node) => cx.boolean(node, &format!("`open` of {what}"))?,
-                None => true,
+                Some(node) => cx.boolean(node, &format!("`open` of {what}")),
+                None => Some(true),
             };
-            let loss = valve_loss(cx, site, &fields, &what)?;
+            let loss = valve_loss(cx, site, &fields, &what);
             let (characteristic, opening) = opening(cx, &fields, &what)?;
             PartKindSpec::Valve {
-                loss,
+                loss: loss?,
                 characteristic,
-                open,
+                open: open?,
                 opening,
             }
         }
@@ -203,10 +212,10 @@ fn part(
                 &what,
                 &["k", "kv", "cv", "bore", "opening", "characteristic"],
             )?;
-            let loss = valve_loss(cx, site, &fields, &what)?;
+            let loss = valve_loss(cx, site, &fields, &what);
             let (characteristic, opening) = opening(cx, &fields, &what)?;
             PartKindSpec::CheckValve {
-                loss,
+                loss: loss?,
                 characteristic,
                 opening,
             }
@@ -221,6 +230,9 @@ fn part(
 }
 
 fn missing(cx: &mut Context, fields: &Fields, what: &str, keys: &[&str], example: &str) {
+    if keys.iter().any(|key| fields.is_misspelt(key)) {
+        return;
+    }
     let message = format!("{what} needs one of `{}`", keys.join("`, `"));
     let help = format!("add for example `{example}`");
     cx.push(Diagnostic::error("missing-key", fields.place, message).help(help));
@@ -242,8 +254,9 @@ fn only_one<'k>(
             None
         }
         [_, second, ..] => {
-            let message = format!("{what} takes only one of `{}`", given.join("`, `"));
-            cx.error("both-keys", fields.key_place(second), message);
+            let message = format!("{what} takes only one of `{}`", keys.join("`, `"));
+            let help = format!("keep one of `{}`", given.join("`, `"));
+            cx.push(Diagnostic::error("both-keys", fields.key_place(second), message).help(help));
             None
         }
     }
@@ -331,7 +344,9 @@ fn friction(
             if let Some(material) = materials::material(&name) {
                 return Some(FrictionSpec::Roughness(material.roughness));
             }
-            unknown_name(cx, node, "material", &name, materials::nearest(&name));
+            let near = materials::nearest(&name);
+            let known = materials::TABLE.iter().map(|material| material.name);
+            unknown_name(cx, node.place, "material", &name, near, known);
             None
         }
         "c_factor" => cx
@@ -343,22 +358,21 @@ fn friction(
     }
 }
 
-pub(super) fn unknown_name(
+/// A name that a table does not have.
+fn unknown_name(
     cx: &mut Context,
-    node: &Marked,
+    place: Place,
     what: &str,
     name: &str,
     near: Option<&str>,
+    known: impl Iterator<Item = &'static str>,
 ) {
-    let mut diagnostic = Diagnostic::error(
-        "unknown-name",
-        node.place,
-        format!("no {what} is called {}", found(node)),
-    );
-    if let Some(near) = near.filter(|near| *near != name) {
-        diagnostic = diagnostic.help(format!("did you mean `{near}`?"));
-    }
-    cx.push(diagnostic);
+    let message = format!("no {what} is called `{}`", shortened(name));
+    let help = match near {
+        Some(near) => format!("did you mean `{near}`?"),
+        None => format!("{what}s are {}", known.collect::<Vec<_>>().join(", ")),
+    };
+    cx.push(Diagnostic::error("unknown-name", place, message).help(help));
 }
 
 /// `k` plus the sum over `fittings`.
@@ -385,11 +399,8 @@ fn loss_coefficient(cx: &mut Context, fields: &Fields, what: &str) -> Option<f64
                         Some(fitting) => add(count.map(|count| count * fitting.k)),
                         None => {
                             let near = fittings::nearest(&key.name);
-                            let at = Marked {
-                                place: key.place,
-                                value: Form::Scalar(key.name.clone().into()),
-                            };
-                            unknown_name(cx, &at, "fitting", &key.name, near);
+                            let known = fittings::TABLE.iter().map(|fitting| fitting.name);
+                            unknown_name(cx, key.place, "fitting", &key.name, near, known);
                             add(None);
                         }
                     }
@@ -405,12 +416,12 @@ fn valve_loss(cx: &mut Context, site: &SiteSpec, fields: &Fields, what: &str) ->
     let key = only_one(cx, fields, what, &["k", "kv", "cv"], "k: 0.2")?;
     let node = fields.get(key)?;
     let label = format!("`{key}` of {what}");
-    let bore = bore(cx, fields, what)?;
+    let bore = bore(cx, fields, what);
     match key {
-        "k" => Some(LossSpec::K {
-            k: cx.number(node, &label, Bound::NotNegative)?,
-            bore,
-        }),
+        "k" => {
+            let k = cx.number(node, &label, Bound::NotNegative);
+            Some(LossSpec::K { k: k?, bore: bore? })
+        }
         // A flow coefficient is a number whose unit its definition fixes.
         "kv" => {
             let kv = cx.number(node, &label, Bound::Positive)? / 3600.0;
@@ -426,17 +437,17 @@ fn valve_loss(cx: &mut Context, site: &SiteSpec, fields: &Fields, what: &str) ->
 
 fn opening(cx: &mut Context, fields: &Fields, what: &str) -> Option<(Characteristic, f64)> {
     let characteristic = match fields.get("characteristic") {
-        None => Characteristic::Linear,
-        Some(node) => match scalar_text(node).as_deref() {
-            Some("linear") => Characteristic::Linear,
-            Some("equal_percentage") => Characteristic::EqualPercentage,
+        None => Some(Characteristic::Linear),
+        Some(node) => match scalar_text(node) {
+            Some("linear") => Some(Characteristic::Linear),
+            Some("equal_percentage") => Some(Characteristic::EqualPercentage),
             _ => {
                 let message = format!(
-                    "`characteristic` of {what} is `linear` or `equal_percentage`, found {}",
+                    "`characteristic` of {what} must be `linear` or `equal_percentage`, found {}",
                     found(node)
                 );
                 cx.error("unknown-name", node.place, message);
-                return None;
+                None
             }
         },
     };
@@ -449,7 +460,7 @@ fn opening(cx: &mut Context, fields: &Fields, what: &str) -> Option<(Characteris
         )?,
         None => 1.0,
     };
-    Some((characteristic, opening))
+    Some((characteristic?, opening))
 }
 
 fn equipment(
@@ -462,7 +473,7 @@ fn equipment(
     let loss = cx.required(&fields, "loss", what, "1.5 m");
     let loss = loss.and_then(|node| {
         let label = format!("`loss` of {what}");
-        let quantity = cx.any_quantity(node, &label)?;
+        let quantity = cx.any_quantity(node, &label, Some(Kind::Length))?;
         match quantity.to_loss(&cx.units) {
             Ok(value) => {
                 let head = match value {
@@ -472,7 +483,12 @@ fn equipment(
                 cx.bounded(node, &label, head, Bound::NotNegative)
             }
             Err(why) => {
-                cx.wrong_kind(node, &label, why.to_string(), Kind::Length);
+                let message = format!(
+                    "{label} must be a head or a pressure, found {}",
+                    found(node)
+                );
+                let help = format!("{why}; or a pressure, such as `0.2 bar`");
+                cx.push(Diagnostic::error("wrong-unit", node.place, message).help(help));
                 None
             }
         }
@@ -488,11 +504,9 @@ fn equipment(
     });
     let law = QuadraticLoss::checked_at(loss?, at?);
     if law.is_none() {
-        cx.error(
-            "out-of-range",
-            fields.place,
-            format!("{what} has a loss beyond any range"),
-        );
+        let message = format!("the loss of {what} is beyond any range");
+        let help = "check `loss` and `at` and their units";
+        cx.push(Diagnostic::error("out-of-range", fields.place, message).help(help));
     }
     law
 }
@@ -510,12 +524,8 @@ fn pump(cx: &mut Context, site: &SiteSpec, what: &str, node: &Marked) -> Option<
     ];
     let fields = cx.map(node, what, &keys)?;
     let model = cx.required(&fields, "model", what, "P200");
-    let model = model.and_then(|node| {
-        Some(Placed {
-            value: cx.text(node, &format!("`model` of {what}"))?,
-            place: node.place,
-        })
-    });
+    let model = model
+        .and_then(|node| cx.reference(node, &format!("`model` of {what}"), Referent::PumpModel));
     let elevation = fields.get("elevation").map(|node| {
         cx.quantity(
             node,
@@ -570,8 +580,8 @@ fn pump(cx: &mut Context, site: &SiteSpec, what: &str, node: &Marked) -> Option<
         None => None,
         Some(node) => {
             let what = format!("`when_stopped` of {what}");
-            let fields = cx.map(node, &what, &["k", "kv", "cv", "bore"])?;
-            Some(valve_loss(cx, site, &fields, &what)?)
+            let fields = cx.map(node, &what, &["k", "kv", "cv", "bore"]);
+            Some(fields.and_then(|fields| valve_loss(cx, site, &fields, &what)))
         }
     };
     // A key that was given and could not be read spoils the pump: `?` on the inner option of each.
@@ -583,7 +593,7 @@ fn pump(cx: &mut Context, site: &SiteSpec, what: &str, node: &Marked) -> Option<
         impeller: transposed(impeller)?,
         wear: wear?,
         running: running?,
-        when_stopped,
+        when_stopped: transposed(when_stopped)?,
     })
 }
 

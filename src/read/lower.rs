@@ -1,12 +1,13 @@
 //! From the typed file to the network: names resolved, banks written out, bores found.
 
-use std::collections::HashMap;
+use std::collections::{HashMap, HashSet};
 
-use super::context::Context;
+use super::context::{Context, Referent};
 use super::spec::{
-    FrictionSpec, LineSpec, LossSpec, NeedSpec, NodeKindSpec, PartKindSpec, PartSpec, Placed,
-    PumpSpec, Spec, TargetSpec,
+    FrictionSpec, LineSpec, LossSpec, Names, NeedSpec, NodeKindSpec, PartKindSpec, PartSpec,
+    Placed, PumpSpec, Spec, TargetSpec,
 };
+use super::yaml::shortened;
 use crate::diagnostic::{Diagnostic, Place, nearest};
 use crate::network::{
     End, LineId, Need, Network, NetworkBuilder, NodeId, NodeKind, PumpSetting, Target, ValveSetting,
@@ -27,9 +28,16 @@ struct Lowering<'c> {
     lines: HashMap<String, Vec<LineId>>,
     models: HashMap<String, usize>,
     /// Every name that a path can begin with, and where it was given.
-    taken: HashMap<String, Place>,
-    pump_names: HashMap<String, Place>,
+    taken: HashMap<String, (&'static str, Place)>,
+    /// Lines so far, banks written out.
+    count: usize,
 }
+
+/// Most lines of a network, banks written out.
+const MOST_LINES: usize = 1_000_000;
+
+/// Most names that a wrong one is compared with.
+const MOST_COMPARED: usize = 20_000;
 
 /// The network and the needs; none if there are errors.
 pub(super) fn lower(cx: &mut Context, spec: Spec) -> Option<(Network, Vec<Need>)> {
@@ -43,14 +51,17 @@ pub(super) fn lower(cx: &mut Context, spec: Spec) -> Option<(Network, Vec<Need>)
         lines: HashMap::new(),
         models: HashMap::new(),
         taken: HashMap::new(),
-        pump_names: HashMap::new(),
+        count: 0,
     };
+    lowering.take_names();
     lowering.nodes();
     lowering.models();
+    lowering.check_references(&[Referent::Node, Referent::PumpModel]);
     let lines = std::mem::take(&mut lowering.spec.lines);
     for line in &lines {
         lowering.line(line);
     }
+    lowering.check_references(&[Referent::Line]);
     lowering.unused_nodes(&lines);
     let needs = std::mem::take(&mut lowering.spec.needs);
     let needs: Vec<Need> = needs
@@ -70,23 +81,42 @@ pub(super) fn lower(cx: &mut Context, spec: Spec) -> Option<(Network, Vec<Need>)
 }
 
 impl Lowering<'_> {
-    /// Takes a name; reports one that is taken.
-    fn take(&mut self, name: &str, place: Place, what: &str) {
-        if let Some(first) = self.taken.insert(name.to_owned(), place) {
-            let message = format!("the name `{name}` of this {what} is used already");
-            let help = format!(
-                "it stands in line {} too; nodes, lines and pump models share their names",
-                first.line
-            );
-            self.cx
-                .push(Diagnostic::error("name-twice", place, message).help(help));
+    /// Takes the names of nodes, lines and pump models, in the order of the text.
+    fn take_names(&mut self) {
+        let Names {
+            nodes,
+            lines,
+            models,
+            ..
+        } = self.spec.names.clone();
+        let mut names = Vec::new();
+        for (what, list) in [("node", nodes), ("line", lines), ("pump model", models)] {
+            names.extend(list.into_iter().flatten().map(|name| (what, name)));
         }
+        names.sort_by_key(|(_, name)| (name.place.line, name.place.column));
+        for (what, name) in names {
+            self.take(&name.value, name.place, what);
+        }
+    }
+
+    /// Takes a name; reports one that is taken.
+    fn take(&mut self, name: &str, place: Place, what: &'static str) {
+        let Some((other, first)) = self.taken.get(name) else {
+            self.taken.insert(name.to_owned(), (what, place));
+            return;
+        };
+        let message = format!("the name `{name}` of this {what} is taken");
+        let help = format!(
+            "a {other} in line {} of the file has it; nodes, lines, pumps and pump models share their names",
+            first.line
+        );
+        let problem = Diagnostic::error("name-twice", place, message);
+        self.cx.push(problem.help(help));
     }
 
     fn nodes(&mut self) {
         let mut fixed = false;
         for node in std::mem::take(&mut self.spec.nodes) {
-            self.take(&node.name, node.place, "node");
             let (kind, draw, level, pressure) = match node.kind {
                 NodeKindSpec::Point { elevation, draw } => {
                     (NodeKind::Point { elevation }, draw, 0.0, 0.0)
@@ -108,17 +138,22 @@ impl Lowering<'_> {
             self.net.settings_mut().set_gas_pressure(id, pressure);
             self.nodes.insert(node.name, id);
         }
-        if !fixed && !self.nodes.is_empty() && !self.cx.diagnostics.has_errors() {
+        let Names {
+            nodes, nodes_place, ..
+        } = &self.spec.names;
+        let all_read = nodes
+            .as_ref()
+            .is_some_and(|names| names.len() == self.nodes.len());
+        if !fixed && all_read {
             let message = "no node holds a head: every node is a point";
             let help = "at least one node must be a `reservoir`, a `tank` or an `outlet`";
-            self.cx
-                .push(Diagnostic::whole("no-fixed-head", message).help(help));
+            let problem = Diagnostic::error("no-fixed-head", *nodes_place, message);
+            self.cx.push(problem.help(help));
         }
     }
 
     fn models(&mut self) {
         for model in std::mem::take(&mut self.spec.models) {
-            self.take(&model.name, model.place, "pump model");
             let position = self.net.model(PumpModel {
                 name: model.name.clone(),
                 speed: model.speed,
@@ -133,27 +168,94 @@ impl Lowering<'_> {
         }
     }
 
-    fn node(&mut self, name: &Placed<String>) -> Option<NodeId> {
-        if let Some(id) = self.nodes.get(&name.value) {
-            return Some(*id);
+    /// Reports names that lead nowhere; silent about what is there and could not be read.
+    fn check_references(&mut self, wanted: &[Referent]) {
+        let set = |given: &Option<Vec<Placed<String>>>| {
+            let names = given.as_ref()?.iter().map(|name| name.value.clone());
+            Some(names.collect::<HashSet<String>>())
+        };
+        let names = &self.spec.names;
+        let (nodes, lines, models) = (set(&names.nodes), set(&names.lines), set(&names.models));
+        for (referent, name) in self.cx.references.clone() {
+            let given = match referent {
+                Referent::Node => &nodes,
+                Referent::Line => &lines,
+                Referent::PumpModel => &models,
+            };
+            let Some(given) = given.as_ref().filter(|_| wanted.contains(&referent)) else {
+                continue;
+            };
+            let member_of_unread = || {
+                let bank = name.value.rsplit_once('.').map(|(bank, _)| bank);
+                bank.is_some_and(|bank| given.contains(bank) && !self.lines.contains_key(bank))
+            };
+            let is_line = referent == Referent::Line
+                && (self.lines.contains_key(&name.value) || member_of_unread());
+            if !is_line && !given.contains(&name.value) {
+                self.unknown(referent, &name, given);
+            }
         }
-        let names = self.nodes.keys().map(String::as_str);
-        unknown(self.cx, "node", name, names);
-        None
+    }
+
+    fn unknown(&mut self, referent: Referent, name: &Placed<String>, given: &HashSet<String>) {
+        let (what, section) = match referent {
+            Referent::Node => ("node", "nodes"),
+            Referent::Line => ("line", "lines"),
+            Referent::PumpModel => ("pump model", "pump_models"),
+        };
+        let message = format!("no {what} is called `{}`", shortened(&name.value));
+        let mut diagnostic = Diagnostic::error("unknown-name", name.place, message);
+        if given.len() > MOST_COMPARED {
+            diagnostic = diagnostic.help(format!("the file has {} {what}s", given.len()));
+        } else if !self.cx.diagnostics.is_full() {
+            let mut known: Vec<&str> = given.iter().map(String::as_str).collect();
+            if referent == Referent::Line {
+                known.extend(self.lines.keys().map(String::as_str));
+            }
+            known.sort_unstable();
+            known.dedup();
+            let listed = listed(what, &known);
+            let near = nearest(&name.value, known.iter().copied());
+            diagnostic = diagnostic.help(match (self.taken.get(&name.value), near) {
+                (Some((other, _)), _) => format!("that is a {other}; {listed}"),
+                (None, Some(near)) => format!("did you mean `{near}`?"),
+                (None, None) if known.is_empty() => {
+                    format!("the file has none: give it under `{section}`")
+                }
+                (None, None) => listed,
+            });
+        }
+        self.cx.push(diagnostic);
     }
 
     fn line(&mut self, line: &LineSpec) {
-        self.take(&line.name, line.place, "line");
-        let (from, to) = (self.node(&line.from), self.node(&line.to));
-        if from.is_some() && from == to {
+        let (from, to) = (
+            self.nodes.get(&line.from.value).copied(),
+            self.nodes.get(&line.to.value).copied(),
+        );
+        let is_loop = line.from.value == line.to.value;
+        if is_loop && from.is_some() {
             let message = format!(
                 "line `{}` starts and ends at `{}`",
                 line.name, line.to.value
             );
-            self.cx.error("self-loop", line.to.place, message);
+            let help = "a line joins two nodes; name another one here";
+            let problem = Diagnostic::error("self-loop", line.to.place, message);
+            self.cx.push(problem.help(help));
+        }
+        let named = self.pumps_have_names(line);
+        let to = to.filter(|_| named && !is_loop);
+        if self.count + line.count.unwrap_or(1) as usize > MOST_LINES {
+            let message = format!(
+                "with line `{}` there are more than {MOST_LINES} lines",
+                line.name
+            );
+            let help = "every member of a bank is a line";
+            let problem = Diagnostic::error("out-of-range", line.place, message);
+            self.cx.push(problem.help(help));
             return;
         }
-        self.pumps_have_names(line);
+        self.count += line.count.unwrap_or(1) as usize;
         let mut ids = Vec::new();
         for member in 1..=line.count.unwrap_or(1) {
             let suffix = line.count.map(|_| member);
@@ -181,8 +283,8 @@ impl Lowering<'_> {
         self.lines.insert(line.name.clone(), ids);
     }
 
-    /// Several pumps in one line each need a name.
-    fn pumps_have_names(&mut self, line: &LineSpec) {
+    /// Several pumps in one line each need a name; whether they have them.
+    fn pumps_have_names(&mut self, line: &LineSpec) -> bool {
         let pumps: Vec<(&PumpSpec, Place)> = line
             .parts
             .iter()
@@ -191,10 +293,11 @@ impl Lowering<'_> {
                 _ => None,
             })
             .collect();
-        if pumps.len() < 2 {
-            return;
+        let without = pumps.iter().filter(|(pump, _)| pump.name.is_none());
+        if pumps.len() < 2 || without.clone().count() == 0 {
+            return true;
         }
-        for (_, place) in pumps.iter().filter(|(pump, _)| pump.name.is_none()) {
+        for (_, place) in without {
             let message = format!(
                 "line `{}` holds several pumps; this one has no name",
                 line.name
@@ -204,6 +307,7 @@ impl Lowering<'_> {
                     .help("add for example `name: booster`"),
             );
         }
+        false
     }
 
     fn parts(
@@ -290,11 +394,10 @@ impl Lowering<'_> {
                     {
                         Some(loss) => parts.push(Part::CheckValve(loss)),
                         None => {
-                            self.cx.error(
-                                "out-of-range",
-                                spec.place,
-                                "a check valve cannot have an opening of 0 %",
-                            );
+                            let message = "a check valve cannot have an opening of 0 %";
+                            let help = "a valve that is shut is a `valve` with `open: false`";
+                            let problem = Diagnostic::error("out-of-range", spec.place, message);
+                            self.cx.push(problem.help(help));
                             whole = false;
                         }
                     }
@@ -312,11 +415,9 @@ impl Lowering<'_> {
 
     fn in_reach(&mut self, place: Place, finite: bool) -> bool {
         if !finite {
-            self.cx.error(
-                "out-of-range",
-                place,
-                "the loss of this part is beyond any range; check its sizes and units",
-            );
+            let message = "the loss of this part is beyond any range";
+            let problem = Diagnostic::error("out-of-range", place, message);
+            self.cx.push(problem.help("check its sizes and units"));
         }
         finite
     }
@@ -371,27 +472,11 @@ impl Lowering<'_> {
         if pump.name.is_some() && member.is_none_or(|member| member == 1) {
             self.take(base, name_place, "pump");
         }
-        if let Some(first) = self.pump_names.insert(name.clone(), name_place) {
-            let message = format!(
-                "two pumps are called `{name}`; the other stands in line {}",
-                first.line
-            );
-            self.cx.error("name-twice", name_place, message);
-            return None;
-        }
         let when_stopped = match &pump.when_stopped {
             Some(loss) => Some(self.loss(loss, parts, at)?),
             None => None,
         };
-        let Some(&model) = self.models.get(&pump.model.value) else {
-            unknown(
-                self.cx,
-                "pump model",
-                &pump.model,
-                self.models.keys().map(String::as_str),
-            );
-            return None;
-        };
+        let model = *self.models.get(&pump.model.value)?;
         let (model_speed, model_impeller) = self.net.model_size(model);
         let speed = match &pump.speed {
             None => 1.0,
@@ -471,6 +556,10 @@ impl Lowering<'_> {
 
     /// Nodes that no line touches.
     fn unused_nodes(&mut self, lines: &[LineSpec]) {
+        // Lines that could not be read may touch any of them.
+        if self.cx.diagnostics.has_errors() {
+            return;
+        }
         let used: std::collections::HashSet<&str> = lines
             .iter()
             .flat_map(|line| [line.from.value.as_str(), line.to.value.as_str()])
@@ -482,26 +571,22 @@ impl Lowering<'_> {
             .collect();
         unused.sort_by_key(|(_, id)| id.index());
         for (name, _) in unused {
-            let place = self.taken.get(name).copied().unwrap_or_default();
-            self.cx.push(Diagnostic::caution(
-                "unused-node",
-                place,
-                format!("no line touches node `{name}`"),
-            ));
+            let place = self
+                .taken
+                .get(name)
+                .map_or(Place::default(), |taken| taken.1);
+            let message = format!("no line touches node `{name}`");
+            let help = "join it to others by a line, or remove it";
+            let caution = Diagnostic::caution("unused-node", place, message);
+            self.cx.push(caution.help(help));
         }
     }
 
-    fn need(&mut self, need: &NeedSpec) -> Option<Need> {
+    fn need(&self, need: &NeedSpec) -> Option<Need> {
         let target = match &need.target {
-            TargetSpec::FlowInto(name) => Target::FlowInto(self.node(name)?),
-            TargetSpec::PressureAt(name) => Target::PressureAt(self.node(name)?),
-            TargetSpec::FlowIn(name) => match self.lines.get(&name.value) {
-                Some(lines) => Target::FlowIn(lines.clone()),
-                None => {
-                    unknown(self.cx, "line", name, self.lines.keys().map(String::as_str));
-                    return None;
-                }
-            },
+            TargetSpec::FlowInto(name) => Target::FlowInto(*self.nodes.get(&name.value)?),
+            TargetSpec::PressureAt(name) => Target::PressureAt(*self.nodes.get(&name.value)?),
+            TargetSpec::FlowIn(name) => Target::FlowIn(self.lines.get(&name.value)?.clone()),
         };
         Some(Need {
             name: need.name.clone(),
@@ -516,37 +601,17 @@ fn numbered(name: &str, member: Option<u32>) -> String {
     member.map_or_else(|| name.to_owned(), |member| format!("{name}.{member}"))
 }
 
-fn unknown<'a>(
-    cx: &mut Context,
-    what: &str,
-    name: &Placed<String>,
-    names: impl Iterator<Item = &'a str>,
-) {
-    let message = format!("no {what} is called `{}`", name.value);
-    let mut diagnostic = Diagnostic::error("unknown-name", name.place, message);
-    if !cx.diagnostics.is_full() {
-        let mut names: Vec<&str> = names.collect();
-        names.sort_unstable();
-        diagnostic.help = match nearest(&name.value, names.iter().copied()) {
-            Some(near) => Some(format!("did you mean `{near}`?")),
-            None if names.is_empty() => None,
-            None => Some(format!("there are {}", listed(&names))),
-        };
-    }
-    cx.push(diagnostic);
-}
-
-fn listed(names: &[&str]) -> String {
+/// What there is, for a message: all names, or the first few.
+fn listed(what: &str, names: &[&str]) -> String {
     const SHOWN: usize = 8;
     let shown: Vec<String> = names
         .iter()
         .take(SHOWN)
-        .map(|name| format!("`{name}`"))
+        .map(|name| format!("`{}`", shortened(name)))
         .collect();
-    let more = names.len().saturating_sub(SHOWN);
-    if more > 0 {
-        format!("{} and {more} more", shown.join(", "))
-    } else {
-        shown.join(", ")
+    match (names.len(), names.len().saturating_sub(SHOWN)) {
+        (1, _) => format!("the only {what} is {}", shown.join("")),
+        (_, 0) => format!("{what}s are {}", shown.join(", ")),
+        (_, more) => format!("{what}s are {} and {more} more", shown.join(", ")),
     }
 }

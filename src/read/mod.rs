@@ -35,8 +35,8 @@ use crate::network::{Need, Network};
 use crate::units::UnitSet;
 use changes::MemberChanges;
 use context::{Context, Fields};
-use spec::Spec;
-use yaml::Marked;
+use spec::{Names, Placed, Spec};
+use yaml::{Form, Marked};
 
 /// Sections of a system file.
 const SECTIONS: [&str; 14] = [
@@ -143,16 +143,14 @@ impl Document {
     /// # Errors
     /// All problems of the file and the changes.
     pub fn system(&self, changes: &[Change], load: Load) -> Result<System, Diagnostics> {
-        let mut cx = Context {
-            units: UnitSet::metric(),
-            diagnostics: Diagnostics::default(),
-        };
+        let mut cx = Context::new();
         let mut root = self.root.clone();
         let members = changes::apply(&mut cx, &mut root, changes);
         let lowered = read(&mut cx, &root, &members, load);
         let Context {
             units,
             mut diagnostics,
+            ..
         } = cx;
         diagnostics.sort();
         match lowered {
@@ -179,10 +177,7 @@ impl Document {
     /// # Errors
     /// Problems of the form of `cases`; the changes in them are checked when a system is asked for.
     pub fn cases(&self) -> Result<Vec<Case>, Diagnostics> {
-        let mut cx = Context {
-            units: UnitSet::metric(),
-            diagnostics: Diagnostics::default(),
-        };
+        let mut cx = Context::new();
         let section = cx
             .any_map(&self.root, "a system file", "nodes")
             .and_then(|fields| fields.get("cases"));
@@ -199,21 +194,31 @@ impl Document {
     /// # Errors
     /// As said.
     pub fn check(&self, load: Load) -> Result<System, Diagnostics> {
-        let system = self.system(&[], load)?;
-        let mut all = Diagnostics::default();
-        for case in self.cases()? {
+        let (system, mut all) = match self.system(&[], load) {
+            Ok(system) => (Some(system), Diagnostics::default()),
+            Err(diagnostics) => (None, diagnostics),
+        };
+        // A file that is no map has no cases, and has been complained of.
+        let cases = match self.root.value {
+            Form::Map(_) => self.cases(),
+            _ => Ok(Vec::new()),
+        };
+        let cases = cases.unwrap_or_else(|diagnostics| {
+            all.add_errors(&diagnostics);
+            Vec::new()
+        });
+        for case in cases {
+            if all.is_full() {
+                break;
+            }
             if let Err(diagnostics) = self.system(&case.changes, load) {
-                diagnostics
-                    .list()
-                    .iter()
-                    .filter(|d| d.severity == Severity::Error)
-                    .for_each(|d| all.push(d.clone()));
+                all.add_errors(&diagnostics);
             }
         }
-        if all.has_errors() {
-            Err(all)
-        } else {
-            Ok(system)
+        all.sort();
+        match system {
+            Some(system) if !all.has_errors() => Ok(system),
+            _ => Err(all),
         }
     }
 }
@@ -236,6 +241,17 @@ fn read(
 }
 
 fn spec(cx: &mut Context, fields: &Fields, members: &MemberChanges, load: Load) -> Spec {
+    let given = |section: &str, if_missing: Option<Vec<Placed<String>>>| match fields.get(section) {
+        Some(node) => names_in(node),
+        None if fields.is_misspelt(section) => None,
+        None => if_missing,
+    };
+    let names = Names {
+        nodes: given("nodes", None),
+        lines: given("lines", None),
+        models: given("pump_models", Some(Vec::new())),
+        nodes_place: fields.key_place("nodes"),
+    };
     let title = fields
         .get("title")
         .and_then(|node| cx.text(node, "`title`"));
@@ -257,9 +273,22 @@ fn spec(cx: &mut Context, fields: &Fields, members: &MemberChanges, load: Load) 
     Spec {
         title,
         site,
+        names,
         nodes,
         lines,
         models,
         needs,
     }
+}
+
+/// The names that a section gives.
+fn names_in(section: &Marked) -> Option<Vec<Placed<String>>> {
+    let Form::Map(entries) = &section.value else {
+        return None;
+    };
+    let names = entries.iter().map(|(key, _)| Placed {
+        value: key.name.clone(),
+        place: key.place,
+    });
+    Some(names.collect())
 }

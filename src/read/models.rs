@@ -91,7 +91,6 @@ fn model(
     let best_efficiency_flow = best_efficiency_flow(&columns, &head, site);
     Some(ModelSpec {
         name: key.name.clone(),
-        place: key.place,
         speed: speed.flatten(),
         impeller: impeller.flatten(),
         head,
@@ -108,7 +107,8 @@ fn speed(cx: &mut Context, node: &Marked, what: &str) -> Option<f64> {
         SpeedValue::Rpm(rpm) => Some(rpm / 60.0),
         SpeedValue::Ratio(_) => {
             let message = format!("{label} must be in rpm, found {}", found(node));
-            cx.error("wrong-unit", node.place, message);
+            let help = "the speed at which the curve holds, for example `speed: 1480 rpm`";
+            cx.push(Diagnostic::error("wrong-unit", node.place, message).help(help));
             None
         }
     }
@@ -117,13 +117,11 @@ fn speed(cx: &mut Context, node: &Marked, what: &str) -> Option<f64> {
 fn motor(cx: &mut Context, node: &Marked, what: &str) -> Option<Motor> {
     let what = format!("the motor of {what}");
     let fields = cx.map(node, &what, &["rated", "efficiency"])?;
-    let rated = cx.required(&fields, "rated", &what, "22 kW")?;
-    let rated = cx.quantity(
-        rated,
-        &format!("`rated` of {what}"),
-        Kind::Power,
-        Bound::Positive,
-    );
+    let rated = cx.required(&fields, "rated", &what, "22 kW");
+    let rated = rated.and_then(|node| {
+        let label = format!("`rated` of {what}");
+        cx.quantity(node, &label, Kind::Power, Bound::Positive)
+    });
     let efficiency = match fields.get("efficiency") {
         None => None,
         Some(node) => {
@@ -133,7 +131,7 @@ fn motor(cx: &mut Context, node: &Marked, what: &str) -> Option<Motor> {
                 cx.error(
                     "out-of-range",
                     node.place,
-                    format!("{label} must be above zero"),
+                    format!("{label} must be above zero, found {}", found(node)),
                 );
                 return None;
             }
@@ -154,22 +152,41 @@ fn read_columns(cx: &mut Context, node: &Marked, what: &str, load: Load) -> Opti
         Some(file) => {
             if let Some(other) = names.iter().find(|name| fields.has(name)) {
                 let message = format!("`file` gives the columns; `{other}` cannot stand beside it");
-                cx.error("both-keys", fields.key_place(other), message);
+                let help = "keep `file`, or give all columns here";
+                let place = fields.key_place(other);
+                cx.push(Diagnostic::error("both-keys", place, message).help(help));
             }
             table::read(cx, file, what, load)?
         }
         None => listed_columns(cx, &fields, what)?,
     };
-    let flows = columns.columns[0].as_deref();
-    if flows.is_none() {
-        let message = format!("the curve of {what} needs a column `flow`");
-        cx.push(
-            Diagnostic::error("missing-key", node.place, message)
-                .help("add for example `flow: [0, 60, 120, 180]`"),
+    if columns.columns[0].is_none() {
+        if !fields.is_misspelt("flow") {
+            let message = format!("the curve of {what} needs a column `flow`");
+            let help = match fields.has("file") {
+                true => "its heading is for example `flow [m3/h]`",
+                false => "add for example `flow: [0, 60, 120, 180]`",
+            };
+            cx.push(Diagnostic::error("missing-key", node.place, message).help(help));
+        }
+        return None;
+    }
+    let flows = columns.columns[0].as_deref().unwrap_or_default();
+    if let Some(i) = (1..flows.len()).find(|&i| flows[i] <= flows[i - 1]) {
+        let message = format!(
+            "`flow` of {what} must rise from point to point: number {} is {} after {}",
+            i + 1,
+            cx.units.format(Kind::Flow, flows[i]),
+            cx.units.format(Kind::Flow, flows[i - 1])
         );
+        let help = "put the points in the order of their flows, each flow once";
+        cx.push(Diagnostic::error("curve", columns.places[0], message).help(help));
         return None;
     }
     check_efficiency(cx, &columns, what);
+    if keys.iter().any(|key| fields.is_misspelt(key)) {
+        return None;
+    }
     Some(columns)
 }
 
@@ -223,10 +240,8 @@ fn through(cx: &mut Context, columns: &Columns, i: usize, what: &str) -> Option<
                 _ => columns.places[i],
             };
             let message = format!("`{}` of {what} makes no curve: {why}", COLUMNS[i].0);
-            cx.push(
-                Diagnostic::error("curve", place, message)
-                    .help("flows must rise from one point to the next, with one value for each"),
-            );
+            let help = "a column has one figure for each flow, and a curve two points or more";
+            cx.push(Diagnostic::error("curve", place, message).help(help));
             None
         }
     }
@@ -239,13 +254,17 @@ fn head_through_points(
     what: &str,
 ) -> Option<Curve> {
     if let Some(limit) = fields.get("flow_limit") {
-        cx.error(
-            "both-keys",
-            limit.place,
-            format!("`flow_limit` of {what} goes with `head_polynomial` only"),
-        );
+        let message = format!("`flow_limit` of {what} goes with `head_polynomial` only");
+        let help = "a curve by points ends at its last flow";
+        cx.push(Diagnostic::error("both-keys", limit.place, message).help(help));
     }
     if columns.columns[1].is_none() {
+        if ["curve", "head_polynomial"]
+            .iter()
+            .any(|key| fields.is_misspelt(key))
+        {
+            return None;
+        }
         let message = format!("{what} needs a head curve");
         let help = "add `curve: {flow: [..], head: [..]}`, or `head_polynomial` and `flow_limit`";
         cx.push(Diagnostic::error("missing-key", fields.place, message).help(help));
@@ -262,11 +281,10 @@ fn polynomial(
     columns: &Columns,
 ) -> Option<Curve> {
     if columns.columns[1].is_some() {
-        cx.error(
-            "both-keys",
-            columns.places[1],
-            format!("give the head of {what} by points or by `head_polynomial`, not both"),
-        );
+        let message =
+            format!("give the head of {what} by points or by `head_polynomial`, not both");
+        let help = "keep one of the two";
+        cx.push(Diagnostic::error("both-keys", columns.places[1], message).help(help));
     }
     let limit = cx.required(fields, "flow_limit", what, "240 m3/h");
     let limit = limit.and_then(|node| {
@@ -280,11 +298,12 @@ fn polynomial(
     let label = format!("`head_polynomial` of {what}");
     let items = cx.list(node, &label, "[42, 0, -0.00035]")?;
     if items.len() > 10 {
-        cx.error(
-            "out-of-range",
-            node.place,
-            format!("{label} has more than 10 coefficients"),
+        let message = format!(
+            "{label} must have at most 10 coefficients, found {}",
+            items.len()
         );
+        let help = "give the head by points: `curve: {flow: [..], head: [..]}`";
+        cx.push(Diagnostic::error("out-of-range", node.place, message).help(help));
         return None;
     }
     // head = a + b q + c q2 in the file's units; to SI: a_i x (unit of head) / (unit of flow)^i
@@ -300,11 +319,9 @@ fn polynomial(
     match Polynomial::new(&coefficients?, limit?) {
         Ok(polynomial) => Some(Curve::Polynomial(polynomial)),
         Err(why) => {
-            cx.error(
-                "curve",
-                node.place,
-                format!("{label} makes no curve: {why}"),
-            );
+            let message = format!("{label} makes no curve: {why}");
+            let help = "coefficients are in the file's units of head and flow, the constant first";
+            cx.push(Diagnostic::error("curve", node.place, message).help(help));
             None
         }
     }
@@ -350,11 +367,11 @@ fn judge_head(cx: &mut Context, head: &Curve, place: Place, what: &str) {
         cx.push(Diagnostic::caution("drooping-curve", place, message).help(help));
     }
     if head.at(0.0).value <= 0.0 {
-        cx.error(
-            "out-of-range",
-            place,
-            format!("the head of {what} at no flow must be above zero"),
+        let message = format!(
+            "the head of {what} at no flow must be above zero, found {}",
+            cx.units.format(Kind::Length, head.at(0.0).value)
         );
+        cx.error("out-of-range", place, message);
     }
 }
 

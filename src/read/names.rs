@@ -13,17 +13,20 @@ pub(super) const EVERY: &str = "all";
 pub(super) fn check(cx: &mut Context, key: &Key, what: &str) {
     let name = &key.name;
     let shown: String = name.chars().take(24).collect();
-    let problem = if name.is_empty() || name.trim() != name {
-        "is empty or starts or ends with a space"
+    let strange = |c: &char| !(c.is_alphanumeric() || "_- ".contains(*c));
+    let problem = if name.is_empty() {
+        "is empty".to_owned()
+    } else if name.trim() != name {
+        "starts or ends with a space".to_owned()
     } else if name.chars().count() > LONGEST {
-        "is too long"
-    } else if !name
-        .chars()
-        .all(|c| c.is_alphanumeric() || "_- ".contains(c))
-    {
-        "holds a character that a name cannot have"
+        "is too long".to_owned()
+    } else if let Some(c) = name.chars().find(strange) {
+        match c {
+            '.' => "holds a dot, which numbers the members of a bank".to_owned(),
+            c => format!("holds `{}`", c.escape_debug()),
+        }
     } else if name == EVERY || name == "fluid" || name == "site" {
-        "has a meaning of its own in `cases`"
+        "has a meaning of its own in `cases`".to_owned()
     } else {
         return;
     };
@@ -35,7 +38,7 @@ pub(super) fn check(cx: &mut Context, key: &Key, what: &str) {
         Diagnostic::error(
             "name",
             key.place,
-            format!("the name of {what} `{shown}` {problem}"),
+            format!("the name `{shown}` of this {what} {problem}"),
         )
         .help(help),
     );
@@ -53,7 +56,7 @@ pub(super) fn check_label(cx: &mut Context, key: &Key, what: &str) {
             Diagnostic::error(
                 "name",
                 key.place,
-                format!("this name of a {what} cannot be used"),
+                format!("the name of this {what} cannot be used"),
             )
             .help(help),
         );

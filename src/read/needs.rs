@@ -1,8 +1,8 @@
 //! `needs` and `cases`.
 
 use super::changes::Change;
-use super::context::{Bound, Context, Fields};
-use super::spec::{NeedSpec, Placed, TargetSpec};
+use super::context::{Bound, Context, Fields, Referent};
+use super::spec::{NeedSpec, TargetSpec};
 use super::yaml::{Key, Marked};
 use crate::diagnostic::Diagnostic;
 use crate::units::Kind;
@@ -35,24 +35,37 @@ fn need(cx: &mut Context, key: &Key, node: &Marked) -> Option<NeedSpec> {
         .filter(|target| fields.has(target))
         .collect();
     let &[target] = given.as_slice() else {
-        let message = format!("{what} must look at one thing");
+        if TARGETS.iter().any(|target| fields.is_misspelt(target)) {
+            return None;
+        }
+        let found = match given.as_slice() {
+            [] => "none".to_owned(),
+            given => format!("`{}`", given.join("`, `")),
+        };
+        let message = format!("{what} must look at one thing, found {found}");
         let help = format!("give one of `{}`", TARGETS.join("`, `"));
         cx.push(Diagnostic::error("need", fields.place, message).help(help));
         return None;
     };
     let at = fields.get(target)?;
-    let name = Placed {
-        value: cx.text(at, &format!("`{target}` of {what}"))?,
-        place: at.place,
+    let (kind, referent) = match target {
+        "flow_into" => (Kind::Flow, Referent::Node),
+        "flow_in" => (Kind::Flow, Referent::Line),
+        _ => (Kind::Pressure, Referent::Node),
     };
-    let (target, kind) = match target {
-        "flow_into" => (TargetSpec::FlowInto(name), Kind::Flow),
-        "flow_in" => (TargetSpec::FlowIn(name), Kind::Flow),
-        _ => (TargetSpec::PressureAt(name), Kind::Pressure),
+    let name = cx.reference(at, &format!("`{target}` of {what}"), referent);
+    let at_least = limit(cx, &fields, "at_least", &what, kind);
+    let at_most = limit(cx, &fields, "at_most", &what, kind);
+    let (name, at_least, at_most) = (name?, at_least?, at_most?);
+    let target = match target {
+        "flow_into" => TargetSpec::FlowInto(name),
+        "flow_in" => TargetSpec::FlowIn(name),
+        _ => TargetSpec::PressureAt(name),
     };
-    let at_least = limit(cx, &fields, "at_least", &what, kind)?;
-    let at_most = limit(cx, &fields, "at_most", &what, kind)?;
     if at_least.is_none() && at_most.is_none() {
+        if fields.is_misspelt("at_least") || fields.is_misspelt("at_most") {
+            return None;
+        }
         let message = format!("{what} has no limit");
         cx.push(
             Diagnostic::error("missing-key", fields.place, message)
@@ -60,16 +73,17 @@ fn need(cx: &mut Context, key: &Key, node: &Marked) -> Option<NeedSpec> {
         );
         return None;
     }
-    if at_least
-        .zip(at_most)
-        .is_some_and(|(least, most)| least > most)
+    if let (Some(least), Some(most)) = (at_least, at_most)
+        && least > most
     {
-        let place = fields.key_place("at_most");
-        cx.error(
-            "out-of-range",
-            place,
-            format!("{what} asks for at least more than at most"),
+        let message = format!(
+            "{what} asks for at least {} and at most {}",
+            cx.units.format(kind, least),
+            cx.units.format(kind, most)
         );
+        let help = "`at_most` must not lie below `at_least`";
+        let place = fields.key_place("at_most");
+        cx.push(Diagnostic::error("out-of-range", place, message).help(help));
         return None;
     }
     Some(NeedSpec {

@@ -51,7 +51,6 @@ fn one(cx: &mut Context, key: &Key, node: &Marked) -> Option<NodeSpec> {
     }?;
     Some(NodeSpec {
         name: key.name.clone(),
-        place: key.place,
         kind,
     })
 }

@@ -12,7 +12,7 @@ use crate::network::{CheckCondition, Network, NodeId};
 use crate::shift::{
     Daily, Fault, FaultKind, Plan, PointDraw, Shift, Tank, Tariff, TariffWindow, Trip, Varying,
 };
-use crate::units::{Kind, UnitSet};
+use crate::units::Kind;
 
 /// J in a kWh.
 const KWH: f64 = 3.6e6;
@@ -39,10 +39,7 @@ impl Document {
         changes: &[Change],
         load: Load,
     ) -> Result<OverTime, Diagnostics> {
-        let mut cx = Context {
-            units: UnitSet::metric(),
-            diagnostics: Diagnostics::default(),
-        };
+        let mut cx = Context::new();
         let mut root = self.root.clone();
         changes::apply(&mut cx, &mut root, changes);
         cx.units = system.units.clone();

@@ -30,7 +30,9 @@ pub(super) fn units(cx: &mut Context, node: &Marked) {
                     continue;
                 };
                 if let Some(Err(why)) = set.as_mut().map(|set| set.set(&key.name, &unit)) {
-                    cx.error("wrong-unit", value.place, why.to_string());
+                    let message = format!("the unit of `{}` does not fit", key.name);
+                    let problem = Diagnostic::error("wrong-unit", value.place, message);
+                    cx.push(problem.help(why.to_string()));
                 }
             }
             set
@@ -43,14 +45,14 @@ pub(super) fn units(cx: &mut Context, node: &Marked) {
 }
 
 fn unit_set(cx: &mut Context, node: &Marked) -> Option<UnitSet> {
-    let set = super::context::scalar_text(node).and_then(|name| UnitSet::base(&name));
+    let set = super::context::scalar_text(node).and_then(UnitSet::base);
     if set.is_none() {
         let message = format!(
-            "`{}` is expected here, found {}",
+            "the set of units must be one of `{}`, found {}",
             SETS.join("`, `"),
             found(node)
         );
-        let help = "or a map such as `units: {base: metric, flow: L/s}`";
+        let help = "it may also be a map such as `units: {base: metric, flow: L/s}`";
         cx.push(Diagnostic::error("units", node.place, message).help(help));
     }
     set
@@ -76,11 +78,9 @@ pub(super) fn site(cx: &mut Context, fluid: Option<&Marked>, site: Option<&Marke
     }
     match (fields.get("elevation"), fields.get("barometer")) {
         (Some(_), Some(barometer)) => {
-            cx.error(
-                "both-keys",
-                barometer.place,
-                "give `elevation` or `barometer` of the site, not both",
-            );
+            let message = "give `elevation` or `barometer` of the site, not both";
+            let help = "the air pressure follows from the elevation unless it is given";
+            cx.push(Diagnostic::error("both-keys", barometer.place, message).help(help));
         }
         (Some(node), None) => {
             if let Some(elevation) =
@@ -88,7 +88,12 @@ pub(super) fn site(cx: &mut Context, fluid: Option<&Marked>, site: Option<&Marke
             {
                 match standard_barometer(elevation) {
                     Ok(pressure) => spec.barometer = pressure,
-                    Err(why) => cx.error("out-of-range", node.place, why.to_string()),
+                    Err(why) => {
+                        let help = "give `barometer` in place of `elevation`, or check the unit";
+                        let problem =
+                            Diagnostic::error("out-of-range", node.place, why.to_string());
+                        cx.push(problem.help(help));
+                    }
                 }
             }
         }
@@ -112,7 +117,9 @@ fn read_fluid(cx: &mut Context, node: &Marked) -> Option<Fluid> {
     if let Some(water) = fields.get("water") {
         if let Some(other) = keys[1..].iter().find(|key| fields.has(key)) {
             let message = format!("`water` gives all properties; `{other}` cannot stand beside it");
-            cx.error("both-keys", fields.key_place(other), message);
+            let help = "keep `water`, or give density, viscosity and vapour pressure without it";
+            let place = fields.key_place(other);
+            cx.push(Diagnostic::error("both-keys", place, message).help(help));
         }
         let temperature = cx.quantity(
             water,
@@ -123,7 +130,9 @@ fn read_fluid(cx: &mut Context, node: &Marked) -> Option<Fluid> {
         return match Fluid::water(temperature) {
             Ok(fluid) => Some(fluid),
             Err(why) => {
-                cx.error("out-of-range", water.place, why.to_string());
+                let help = "for water under pressure give density, viscosity and vapour pressure";
+                let problem = Diagnostic::error("out-of-range", water.place, why.to_string());
+                cx.push(problem.help(help));
                 None
             }
         };

@@ -19,10 +19,24 @@ pub(super) struct Placed<T> {
 pub(super) struct Spec {
     pub title: Option<String>,
     pub site: SiteSpec,
+    pub names: Names,
     pub nodes: Vec<NodeSpec>,
     pub lines: Vec<LineSpec>,
     pub models: Vec<ModelSpec>,
     pub needs: Vec<NeedSpec>,
+}
+
+/// The names that the file gives, also to what could not be read: nobody who uses such a name is to blame.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Names {
+    /// None: the section is there and cannot be read, or it is missing though it must be there.
+    pub nodes: Option<Vec<Placed<String>>>,
+    /// As for nodes.
+    pub lines: Option<Vec<Placed<String>>>,
+    /// As for nodes.
+    pub models: Option<Vec<Placed<String>>>,
+    /// Where the nodes stand.
+    pub nodes_place: Place,
 }
 
 /// Liquid and place.
@@ -36,7 +50,6 @@ pub(super) struct SiteSpec {
 #[derive(Clone, Debug)]
 pub(super) struct NodeSpec {
     pub name: String,
-    pub place: Place,
     pub kind: NodeKindSpec,
 }
 
@@ -134,7 +147,6 @@ pub(super) struct PumpSpec {
 #[derive(Clone, Debug)]
 pub(super) struct ModelSpec {
     pub name: String,
-    pub place: Place,
     pub speed: Option<f64>,
     pub impeller: Option<f64>,
     pub head: Curve,

@@ -1,10 +1,10 @@
 //! Columns from a CSV file: headings are names with their unit in brackets, `flow [L/s]`.
 
-use super::context::{Bound, Context, found};
+use super::context::Context;
 use super::models::{COLUMNS, Columns};
-use super::yaml::Marked;
+use super::yaml::{Form, Marked, Scalar, shortened};
 use crate::diagnostic::{Diagnostic, nearest};
-use crate::units::Quantity;
+use crate::units::{Unit, spellings};
 
 /// Fetches a file that a system file names, by the name it gives.
 pub type Load<'a> = &'a dyn Fn(&str) -> std::io::Result<Vec<u8>>;
@@ -12,121 +12,146 @@ pub type Load<'a> = &'a dyn Fn(&str) -> std::io::Result<Vec<u8>>;
 /// Most rows of a curve.
 const MOST_ROWS: usize = 10_000;
 
+/// A column of the file: which of `COLUMNS`, and its unit if the heading gives one.
+type Target<'a> = (usize, Option<&'a str>);
+
 /// Reads the columns of a curve.
 pub(super) fn read(cx: &mut Context, file: &Marked, what: &str, load: Load) -> Option<Columns> {
     let name = cx.text(file, &format!("`file` of {what}"))?;
-    let mut fail = |message: String, help: Option<String>| {
-        let mut diagnostic = Diagnostic::error("csv", file.place, message);
-        diagnostic.help = help;
-        cx.diagnostics.push(diagnostic);
-    };
     let bytes = match load(&name) {
         Ok(bytes) => bytes,
         Err(why) => {
-            let help = "the path is taken from the folder of the system file".to_owned();
-            fail(format!("`{name}` cannot be read: {why}"), Some(help));
+            let help = "the path is taken from the folder of the system file";
+            fail(cx, file, format!("`{name}` cannot be read: {why}"), help);
             return None;
         }
+    };
+    let Ok(text) = std::str::from_utf8(&bytes) else {
+        let help = "save the file as UTF-8 (plain ASCII is UTF-8 too)";
+        fail(cx, file, format!("`{name}` is no UTF-8 text"), help);
+        return None;
     };
     let mut reader = csv::ReaderBuilder::new()
         .trim(csv::Trim::All)
         .comment(Some(b'#'))
-        .from_reader(bytes.as_slice());
-    let headings = match reader.headers() {
-        Ok(headings) => headings.clone(),
-        Err(why) => {
-            fail(format!("`{name}` cannot be read: {why}"), None);
-            return None;
-        }
-    };
-    let names: Vec<&str> = COLUMNS.iter().map(|(name, ..)| *name).collect();
+        .flexible(true)
+        .from_reader(text.as_bytes());
+    // Text that is in memory and UTF-8 always makes records; what is in them is looked at below.
+    let headings = reader.headers().cloned().unwrap_or_default();
+    let targets = targets(cx, file, &name, &headings)?;
     let mut columns = Columns {
         places: [file.place; 5],
         ..Columns::default()
     };
-    let mut targets = Vec::new();
-    for heading in &headings {
-        let (column, unit) = split_heading(heading);
-        let Some(i) = names.iter().position(|name| *name == column) else {
-            let near = nearest(column, names.iter().copied());
-            let help = near.map(|near| format!("did you mean `{near}`?"));
-            fail(
-                format!(
-                    "`{name}` has a column `{column}`; known are `{}`",
-                    names.join("`, `")
-                ),
-                help,
+    for &(i, _) in &targets {
+        columns.columns[i] = Some(Vec::new());
+    }
+    let mut whole = true;
+    for (row, record) in reader.records().flatten().enumerate() {
+        let line = record.position().map_or(0, csv::Position::line);
+        if row >= MOST_ROWS {
+            let help = "a curve needs a few dozen points";
+            let message = format!("`{name}` has more than {MOST_ROWS} rows");
+            fail(cx, file, message, help);
+            return None;
+        }
+        if record.len() != targets.len() {
+            let message = format!(
+                "line {line} of `{name}` must have {} figures, found {}",
+                targets.len(),
+                record.len()
             );
-            return None;
+            let help = "every line needs one figure for each heading, with commas between them";
+            fail(cx, file, message, help);
+            whole = false;
+            continue;
+        }
+        for (field, &(i, unit)) in record.iter().zip(&targets) {
+            let label = format!("`{}` in line {line} of `{name}`", COLUMNS[i].0);
+            let value = figure(cx, file, &label, field, (i, unit));
+            whole &= value.is_some();
+            columns.columns[i].get_or_insert_default().extend(value);
+        }
+    }
+    whole.then_some(columns)
+}
+
+fn fail(cx: &mut Context, file: &Marked, message: String, help: &str) {
+    cx.push(Diagnostic::error("csv", file.place, message).help(help));
+}
+
+/// What the headings stand for.
+fn targets<'a>(
+    cx: &mut Context,
+    file: &Marked,
+    name: &str,
+    headings: &'a csv::StringRecord,
+) -> Option<Vec<Target<'a>>> {
+    let names: Vec<&str> = COLUMNS.iter().map(|(name, ..)| *name).collect();
+    let mut targets: Vec<Target> = Vec::new();
+    let mut whole = true;
+    for heading in headings {
+        let (column, unit) = split_heading(heading);
+        let mut refuse = |message: String, help: String| {
+            fail(cx, file, message, &help);
+            whole = false;
         };
-        if columns.columns[i].replace(Vec::new()).is_some() {
-            fail(format!("`{name}` has the column `{column}` twice"), None);
-            return None;
+        let Some(i) = names.iter().position(|name| *name == column) else {
+            let known = names.join("`, `");
+            let help = match nearest(column, names.iter().copied()) {
+                Some(near) => format!("did you mean `{near}`? Columns are `{known}`"),
+                None => format!("columns are `{known}`"),
+            };
+            let column = shortened(column);
+            refuse(format!("`{name}` has a column `{column}`"), help);
+            continue;
+        };
+        if targets.iter().any(|(other, _)| *other == i) {
+            let help = "remove one of the two".to_owned();
+            refuse(format!("`{name}` has the column `{column}` twice"), help);
+            continue;
+        }
+        let kind = COLUMNS[i].1;
+        let measures_kind =
+            |unit: &str| Unit::parse(unit).is_some_and(|unit| unit.kind == kind.dimension());
+        if let Some(unit) = unit.filter(|unit| !measures_kind(unit)) {
+            let message = format!(
+                "the column `{column}` of `{name}` must be {}, found the unit `{}`",
+                kind.with_article(),
+                shortened(unit)
+            );
+            let fits: Vec<&str> = spellings(kind).collect();
+            refuse(message, format!("units that fit: {}", fits.join(", ")));
+            continue;
         }
         targets.push((i, unit));
     }
-    for (row, record) in reader.records().enumerate() {
-        let line = row + 2;
-        let record = match record {
-            Ok(record) => record,
-            Err(why) => {
-                fail(format!("`{name}` cannot be read: {why}"), None);
-                return None;
-            }
-        };
-        if row >= MOST_ROWS {
-            fail(format!("`{name}` has more than {MOST_ROWS} rows"), None);
-            return None;
-        }
-        for (field, &(i, unit)) in record.iter().zip(&targets) {
-            let (column, kind, bound) = COLUMNS[i];
-            let text = unit.map_or(field.to_owned(), |unit| format!("{field} {unit}"));
-            let quantity: Result<Quantity, _> = crate::units::parse_quantity(&text);
-            let value = match quantity {
-                Ok(quantity) => quantity
-                    .to_si(kind, &cx.units)
-                    .map_err(|why| why.to_string()),
-                Err(why) => Err(why.to_string()),
-            };
-            match value {
-                Ok(value) if in_bound(value, bound) => {
-                    columns.columns[i].get_or_insert_default().push(value);
-                }
-                Ok(_) => {
-                    let message =
-                        format!("`{name}`, record {line}: `{column}` is out of range: `{text}`");
-                    cx.error("out-of-range", file.place, message);
-                    return None;
-                }
-                Err(why) => {
-                    let message = format!(
-                        "`{name}`, record {line}: `{column}` is {}",
-                        found_text(&text)
-                    );
-                    cx.push(Diagnostic::error("csv", file.place, message).help(why));
-                    return None;
-                }
-            }
-        }
+    if targets.is_empty() && whole {
+        let help = "its first line holds the headings, for example `flow [m3/h],head [m]`";
+        fail(cx, file, format!("`{name}` is empty"), help);
+        return None;
     }
-    Some(columns)
+    whole.then_some(targets)
 }
 
-fn in_bound(value: f64, bound: Bound) -> bool {
-    match bound {
-        Bound::Any => true,
-        Bound::NotNegative => value >= 0.0,
-        Bound::Positive => value > 0.0,
-        Bound::Share => (0.0..=1.0).contains(&value),
-        Bound::ShareBelowOne => (0.0..1.0).contains(&value),
-    }
-}
-
-fn found_text(text: &str) -> String {
-    found(&Marked {
-        place: crate::diagnostic::Place::default(),
-        value: super::yaml::Form::Scalar(text.into()),
-    })
+/// A figure with its heading's unit, as if both stood in the system file.
+fn figure(
+    cx: &mut Context,
+    file: &Marked,
+    label: &str,
+    field: &str,
+    (i, unit): Target,
+) -> Option<f64> {
+    let (_, kind, bound) = COLUMNS[i];
+    let text = match unit {
+        Some(unit) if !field.is_empty() => format!("{field} {unit}"),
+        _ => field.to_owned(),
+    };
+    let cell = Marked {
+        place: file.place,
+        value: Form::Scalar(Scalar::text(&text)),
+    };
+    cx.quantity(&cell, label, kind, bound)
 }
 
 /// `head [m]` into its name and unit.

@@ -23,12 +23,31 @@ pub struct Marked {
 /// What a value is.
 #[derive(Clone, Debug)]
 pub enum Form {
-    /// A scalar, resolved.
-    Scalar(Value),
+    /// A scalar.
+    Scalar(Scalar),
     /// A list.
     List(Vec<Marked>),
     /// A map; keys are unique, in the order of the text.
     Map(Vec<(Key, Marked)>),
+}
+
+/// A scalar as it is meant and as it is written.
+#[derive(Clone, Debug)]
+pub struct Scalar {
+    /// Resolved: nothing, true or false, a number or text.
+    pub value: Value,
+    /// As written, without quotes: `1e3` and `1000` are one number but two names.
+    pub written: String,
+}
+
+impl Scalar {
+    /// Text.
+    pub fn text(text: &str) -> Self {
+        Self {
+            value: text.into(),
+            written: text.to_owned(),
+        }
+    }
 }
 
 /// A key and its place.
@@ -44,6 +63,9 @@ pub struct Key {
 pub const LARGEST: usize = 64 << 20;
 /// Deepest nesting.
 const DEEPEST: usize = 48;
+/// What mostly is the matter where the parser stops.
+const HINT: &str =
+    "look at the indentation, brackets, quotes and colons here and in the lines above";
 /// Most values, aliases written out.
 const MOST_VALUES: usize = 4_000_000;
 
@@ -63,14 +85,14 @@ pub fn parse(bytes: &[u8]) -> Result<(String, Marked), (String, Diagnostic)> {
     let text = match std::str::from_utf8(bytes) {
         Ok(text) => text.strip_prefix('\u{feff}').unwrap_or(text),
         Err(error) => {
-            let line = 1 + bytes[..error.valid_up_to()]
-                .iter()
-                .filter(|b| **b == b'\n')
-                .count();
-            let message =
-                format!("the file is not UTF-8 text: line {line} holds a byte that cannot be read");
+            let before = String::from_utf8_lossy(&bytes[..error.valid_up_to()]);
+            let line = before.matches('\n').count() + 1;
+            let column = before.lines().last().map_or(0, |last| last.chars().count()) + 1;
+            let column = if before.ends_with('\n') { 1 } else { column };
+            let message = "the file is not UTF-8 text: this byte cannot be read";
             let help = "save the file as UTF-8 (plain ASCII is UTF-8 too)";
-            return fail("", Diagnostic::whole("not-utf8", message).help(help));
+            let diagnostic = Diagnostic::error("not-utf8", spot(line, column), message).help(help);
+            return fail(&String::from_utf8_lossy(bytes), diagnostic);
         }
     };
     let marks = match Guard::read(text) {
@@ -83,17 +105,16 @@ pub fn parse(bytes: &[u8]) -> Result<(String, Marked), (String, Diagnostic)> {
             let place = error
                 .location()
                 .map_or(Place::default(), |at| spot(at.line(), at.column()));
-            return fail(
-                text,
-                Diagnostic::error("yaml", place, format!("not readable as YAML: {error}")),
-            );
+            let message = format!("not readable as YAML: {error}");
+            return fail(text, Diagnostic::error("yaml", place, message).help(HINT));
         }
     };
     match join(marks, value) {
         Some(tree) => Ok((text.to_owned(), tree)),
         None => fail(
             text,
-            Diagnostic::whole("yaml", "this YAML is too unusual to be read safely"),
+            Diagnostic::whole("yaml", "this YAML is too unusual to be read safely")
+                .help("write maps as `key: value` with plain keys, each given once"),
         ),
     }
 }
@@ -125,6 +146,8 @@ struct Marks {
     children: Vec<Marks>,
     /// For a map, its keys.
     keys: Vec<String>,
+    /// For a scalar, what is written.
+    written: Option<String>,
     /// How many values this is, itself included.
     size: usize,
 }
@@ -135,6 +158,18 @@ struct Open {
     anchor: usize,
     is_map: bool,
     seen: HashMap<String, Place>,
+}
+
+impl Marks {
+    fn of(place: Place, written: Option<String>) -> Self {
+        Self {
+            place,
+            children: Vec::new(),
+            keys: Vec::new(),
+            written,
+            size: 1,
+        }
+    }
 }
 
 #[derive(Default)]
@@ -152,11 +187,8 @@ impl Guard {
         for event in Parser::new_from_str(text) {
             let (event, span) = event.map_err(|error| {
                 let at = spot(error.marker().line(), error.marker().col() + 1);
-                Diagnostic::error(
-                    "yaml",
-                    at,
-                    format!("not readable as YAML: {}", error.info()),
-                )
+                let message = format!("not readable as YAML: {}", error.info());
+                Diagnostic::error("yaml", at, message).help(hint(error.info()))
             })?;
             let place = place(span);
             match event {
@@ -164,18 +196,13 @@ impl Guard {
                     documents += 1;
                     if documents > 1 {
                         let message = "a second YAML document starts here; one is read";
-                        return Err(Diagnostic::error("two-documents", place, message));
+                        let help = "remove the line `---`, or give what follows a file of its own";
+                        return Err(Diagnostic::error("two-documents", place, message).help(help));
                     }
                 }
                 Event::Scalar(text, _, anchor, tag) => {
                     refuse_tag(tag.is_some(), place)?;
-                    let marks = Marks {
-                        place,
-                        children: Vec::new(),
-                        keys: Vec::new(),
-                        size: 1,
-                    };
-                    guard.add(marks, anchor, Some(&text))?;
+                    guard.add(Marks::of(place, Some(text.into_owned())), anchor)?;
                 }
                 Event::SequenceStart(anchor, tag) => {
                     refuse_tag(tag.is_some(), place)?;
@@ -189,10 +216,12 @@ impl Guard {
                 Event::Alias(anchor) => {
                     let Some(mut marks) = guard.anchors.get(&anchor).cloned() else {
                         let message = "this alias stands inside what it refers to";
-                        return Err(Diagnostic::error("alias", place, message));
+                        let help =
+                            "an alias repeats what its anchor marks, and cannot be part of it";
+                        return Err(Diagnostic::error("alias", place, message).help(help));
                     };
                     marks.place = place;
-                    guard.add(marks, 0, None)?;
+                    guard.add(marks, 0)?;
                 }
                 Event::Nothing | Event::StreamStart | Event::StreamEnd | Event::DocumentEnd => {}
             }
@@ -206,16 +235,11 @@ impl Guard {
     fn enter(&mut self, place: Place, anchor: usize, is_map: bool) -> Result<(), Diagnostic> {
         if self.open.len() >= DEEPEST {
             let message = format!("nested deeper than {DEEPEST} levels");
-            return Err(Diagnostic::error("too-deep", place, message));
+            let help = "a system file needs about ten; look for brackets that are never closed";
+            return Err(Diagnostic::error("too-deep", place, message).help(help));
         }
-        let marks = Marks {
-            place,
-            children: Vec::new(),
-            keys: Vec::new(),
-            size: 1,
-        };
         self.open.push(Open {
-            marks,
+            marks: Marks::of(place, None),
             anchor,
             is_map,
             seen: HashMap::new(),
@@ -235,15 +259,16 @@ impl Guard {
             (open.marks.place.end_line, open.marks.place.end_column) =
                 (last.end_line, last.end_column);
         }
-        self.add(open.marks, open.anchor, None)
+        self.add(open.marks, open.anchor)
     }
 
-    /// A finished value; `text` if it is a scalar.
-    fn add(&mut self, marks: Marks, anchor: usize, text: Option<&str>) -> Result<(), Diagnostic> {
+    /// A finished value.
+    fn add(&mut self, marks: Marks, anchor: usize) -> Result<(), Diagnostic> {
         self.values += marks.size;
         if self.values > MOST_VALUES {
             let message = format!("more than {MOST_VALUES} values, aliases written out");
-            return Err(Diagnostic::error("too-many-values", marks.place, message));
+            let help = "aliases multiply: write out what is needed";
+            return Err(Diagnostic::error("too-many-values", marks.place, message).help(help));
         }
         if anchor > 0 {
             self.anchors.insert(anchor, marks.clone());
@@ -253,19 +278,23 @@ impl Guard {
             return Ok(());
         };
         if parent.is_map && parent.marks.children.len() % 2 == 0 {
-            let Some(key) = text else {
-                return Err(Diagnostic::error(
-                    "key",
-                    marks.place,
-                    "a key must be plain text",
-                ));
+            let Some(key) = &marks.written else {
+                let help = "a list or a map cannot be a key";
+                let problem = Diagnostic::error("key", marks.place, "a key must be plain text");
+                return Err(problem.help(help));
             };
-            if let Some(first) = parent.seen.insert(key.to_owned(), marks.place) {
-                let message = format!("the key `{key}` is given twice");
-                let help = format!("the first stands in line {}; remove one", first.line);
+            if let Some(first) = parent.seen.insert(key.clone(), marks.place) {
+                let message = format!("the key `{}` is given twice", shortened(key));
+                let help = match first.line == marks.place.line {
+                    true => "remove one of the two".to_owned(),
+                    false => format!(
+                        "the first stands in line {} of the file; remove one",
+                        first.line
+                    ),
+                };
                 return Err(Diagnostic::error("key-twice", marks.place, message).help(help));
             }
-            parent.marks.keys.push(key.to_owned());
+            parent.marks.keys.push(key.clone());
         }
         parent.marks.size += marks.size;
         parent.marks.children.push(marks);
@@ -273,13 +302,31 @@ impl Guard {
     }
 }
 
+/// A text short enough for a message.
+pub(super) fn shortened(text: &str) -> String {
+    const LONGEST: usize = 60;
+    match text.char_indices().nth(LONGEST) {
+        Some((end, _)) => format!("{}..", &text[..end]),
+        None => text.to_owned(),
+    }
+}
+
+/// What would mend a text that the parser refuses.
+fn hint(why: &str) -> &'static str {
+    if why.contains("tab") {
+        "YAML is indented with spaces"
+    } else if why.contains("anchor") {
+        "an alias `*name` repeats what `&name` marks further up"
+    } else {
+        HINT
+    }
+}
+
 fn refuse_tag(tagged: bool, place: Place) -> Result<(), Diagnostic> {
     if tagged {
-        return Err(Diagnostic::error(
-            "tag",
-            place,
-            "YAML tags (`!..`) are not used in a system file",
-        ));
+        let message = "YAML tags (`!..`) are not used in a system file";
+        let help = "remove the tag; what a value is follows from its key";
+        return Err(Diagnostic::error("tag", place, message).help(help));
     }
     Ok(())
 }
@@ -313,7 +360,10 @@ fn join(marks: Marks, value: Value) -> Option<Marked> {
         scalar @ (Value::Null | Value::Bool(_) | Value::Number(_) | Value::String(_))
             if marks.children.is_empty() =>
         {
-            Form::Scalar(scalar)
+            Form::Scalar(Scalar {
+                value: scalar,
+                written: marks.written?,
+            })
         }
         _ => return None,
     };

@@ -1,5 +1,6 @@
 //! All integration tests in one crate.
 
+mod bad;
 mod meadow;
 mod properties_of_liquids;
 mod published;
