@@ -97,7 +97,10 @@ fn group(cx: &mut Context, names: &Names, node: &Marked, plan: &str) -> Option<(
         for key in ["steps", "windows"] {
             if fields.has(key) {
                 let message = format!("`{key}` of {what} goes with `follow` only");
-                cx.error("stray-key", fields.key_place(key), message);
+                cx.push(
+                    Diagnostic::error("stray-key", fields.key_place(key), message)
+                        .help("remove it, or give `follow`"),
+                );
             }
         }
     }
@@ -157,7 +160,10 @@ fn pumps(cx: &mut Context, names: &Names, node: &Marked, what: &str) -> Option<V
         for pump in names.pumps(cx, item, what)? {
             if found.contains(&pump) {
                 let message = format!("{what} name `{}` twice", names.network.pump(pump).name);
-                cx.error("name-twice", item.place, message);
+                cx.push(
+                    Diagnostic::error("name-twice", item.place, message)
+                        .help("a bank's name stands for all its pumps; name each pump once"),
+                );
                 return None;
             }
             found.push(pump);
@@ -186,7 +192,7 @@ fn rotate(cx: &mut Context, fields: &Fields, what: &str) -> Option<Rotate> {
     let Some(node) = fields.get("rotate") else {
         return Some(Rotate::Never);
     };
-    match scalar_text(node).as_deref() {
+    match scalar_text(node) {
         Some("never") => Some(Rotate::Never),
         Some("each_start") => Some(Rotate::EachStart),
         Some("least_hours") => Some(Rotate::LeastHours),
@@ -219,7 +225,10 @@ fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Optio
                     "`{}` is no tank and has no level to follow",
                     names.network.node(tank).name
                 );
-                cx.error("no-tank", node.place, message);
+                cx.push(
+                    Diagnostic::error("no-tank", node.place, message)
+                        .help("a level is that of a tank; `pressure: NODE` follows a pressure"),
+                );
                 return None;
             }
             Some((Follow::Level(tank), Kind::Length))
@@ -232,7 +241,10 @@ fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Optio
             [line] => Some((Follow::Flow(*line), Kind::Flow)),
             _ => {
                 let message = format!("{named} is a bank; one line can be followed");
-                cx.error("wrong-form", node.place, message);
+                cx.push(
+                    Diagnostic::error("wrong-form", node.place, message)
+                        .help("name one member, such as `duty.1`, or the line they feed"),
+                );
                 None
             }
         },
@@ -273,7 +285,10 @@ fn bands(
             let own = self::steps(cx, node, &format!("`steps` of {what}"), kind)?;
             if own.len() != steps.len() {
                 let message = format!("{what} has {} steps, the group {}", own.len(), steps.len());
-                cx.error("steps", node.place, message);
+                cx.push(
+                    Diagnostic::error("steps", node.place, message)
+                        .help("a window changes the levels of every step, not their number"),
+                );
                 return None;
             }
             windows.push(Window { daily, steps: own });
@@ -302,7 +317,10 @@ fn steps(cx: &mut Context, node: &Marked, what: &str, kind: Kind) -> Option<Vec<
     let mut steps: Vec<Step> = Vec::new();
     let items = cx.list(node, what, "[{start: 2.6 m, stop: 1.0 m}]")?;
     if items.is_empty() {
-        cx.error("wrong-form", node.place, format!("{what} are none"));
+        cx.push(
+            Diagnostic::error("wrong-form", node.place, format!("{what} are none"))
+                .help("write at least one `{start: 2.6 m, stop: 1.0 m}`"),
+        );
         return None;
     }
     for item in items {
@@ -396,16 +414,19 @@ fn hold(
         None => (0.5, 1.0),
     };
     if speeds.0 > speeds.1 {
-        cx.error(
-            "out-of-range",
-            fields.key_place("speed"),
-            format!("{what} has a least speed above its most"),
+        cx.push(
+            Diagnostic::error(
+                "out-of-range",
+                fields.key_place("speed"),
+                format!("{what} has a least speed above its most"),
+            )
+            .help("write it for example as `{least: 60 %, most: 100 %}`"),
         );
         return None;
     }
     let style = match fields.get("style") {
         None => HoldStyle::Common,
-        Some(node) => match scalar_text(node).as_deref() {
+        Some(node) => match scalar_text(node) {
             Some("common") => HoldStyle::Common,
             Some("trim") => HoldStyle::Trim,
             _ => {
