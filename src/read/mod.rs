@@ -15,6 +15,7 @@ mod names;
 mod needs;
 mod nodes;
 mod over_time;
+mod references;
 mod schedules;
 mod site;
 mod spec;

@@ -1,8 +1,9 @@
 //! `shift`, `faults`, `tariff` and what flows in and out of tanks and points: everything over time but the plans.
 
 use super::context::{Bound, Context, Fields};
-use super::schedules::{NamedSchedule, schedules, time};
-use super::staging::{Names, plans};
+use super::references::Names;
+use super::schedules::{schedules, time};
+use super::staging::plans;
 use super::tanks;
 use super::yaml::{Form, Marked};
 use super::{Change, Document, Load, System, changes};
@@ -94,15 +95,17 @@ fn over_time(cx: &mut Context, root: &Marked, network: &Network, load: Load) -> 
         return None;
     }
     // What is left was not seen where it stands.
-    let mut all = shift.check(network);
+    if let Err(why) = shift.check(network) {
+        cx.push(Diagnostic::whole("shift", why.to_string()));
+    }
     for (plan, place) in &plans {
         if let Err(why) = plan.check(network, &shift) {
             let message = format!("plan `{}`: {why}", plan.name);
-            cx.error("staging", *place, message);
+            cx.push(
+                Diagnostic::error("staging", *place, message)
+                    .help("each pump belongs to one group, with as many pumps as steps"),
+            );
         }
-    }
-    if let Err(why) = std::mem::replace(&mut all, Ok(())) {
-        cx.push(Diagnostic::whole("shift", why.to_string()));
     }
     Some(OverTime {
         shift,
@@ -254,7 +257,7 @@ pub(super) fn daily(cx: &mut Context, fields: &Fields, what: &str) -> Option<Dai
     let (from, to) = (from?.0, to?.0);
     if from > DAY || to > DAY || from == to {
         let message = format!("{what} is no part of a day");
-        cx.error("out-of-range", fields.place, message);
+        cx.push(Diagnostic::error("out-of-range", fields.place, message).help("`from` and `to` are two different times of one day, such as \"17:00\" and \"21:00\""));
         return None;
     }
     Some(Daily { from, to })
@@ -383,7 +386,10 @@ fn fault(cx: &mut Context, names: &Names, node: &Marked, starts: f64) -> Option<
                     "line `{}` has no check valve to stick",
                     names.network.line(*bare).name
                 );
-                cx.error("no-check-valve", node.place, message);
+                cx.push(
+                    Diagnostic::error("no-check-valve", node.place, message)
+                        .help("name a line with a `check_valve` among its parts"),
+                );
                 return None;
             }
             lines
@@ -398,23 +404,4 @@ fn fault(cx: &mut Context, names: &Names, node: &Marked, starts: f64) -> Option<
             .map(|kind| Fault { at, lasts, kind })
             .collect(),
     )
-}
-
-impl Names<'_> {
-    /// The position of the schedule that a value names.
-    pub(super) fn schedule(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<usize> {
-        let name = cx.text(node, what)?;
-        let found = self
-            .schedules
-            .iter()
-            .position(|schedule| schedule.name == name);
-        if found.is_none() {
-            let names = self
-                .schedules
-                .iter()
-                .map(|schedule: &NamedSchedule| schedule.name.as_str());
-            super::staging::unknown(cx, "schedule", node, &name, names);
-        }
-        found
-    }
 }

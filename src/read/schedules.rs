@@ -51,7 +51,7 @@ fn one(cx: &mut Context, name: &str, node: &Marked, load: Load) -> Option<(Sched
     };
     let between = match fields.get("between") {
         None => Between::Steps,
-        Some(node) => match scalar_text(node).as_deref() {
+        Some(node) => match scalar_text(node) {
             Some("steps") => Between::Steps,
             Some("straight") => Between::Straight,
             _ => {
@@ -68,10 +68,13 @@ fn one(cx: &mut Context, name: &str, node: &Marked, load: Load) -> Option<(Sched
         (Some(node), None) => (points(cx, &what, node)?, false),
         (None, Some(node)) => from_file(cx, &what, node, load)?,
         (Some(_), Some(node)) => {
-            cx.error(
-                "both-keys",
-                node.place,
-                format!("give `points` or `file` of {what}, not both"),
+            cx.push(
+                Diagnostic::error(
+                    "both-keys",
+                    node.place,
+                    format!("give `points` or `file` of {what}, not both"),
+                )
+                .help("keep the one that counts"),
             );
             return None;
         }
@@ -83,10 +86,13 @@ fn one(cx: &mut Context, name: &str, node: &Marked, load: Load) -> Option<(Sched
     match Schedule::new(points, between, repeat) {
         Ok(schedule) => Some((schedule, is_flow)),
         Err(why) => {
-            cx.error(
-                "schedule",
-                node.place,
-                format!("{what} cannot be used: {why}"),
+            cx.push(
+                Diagnostic::error(
+                    "schedule",
+                    node.place,
+                    format!("{what} cannot be used: {why}"),
+                )
+                .help("points stand in order of time, all within one repetition"),
             );
             None
         }
@@ -150,7 +156,7 @@ fn time_text(text: &str) -> Option<f64> {
 /// A time of day or a time span, s; true if it was written as a time of day.
 pub(super) fn time(cx: &mut Context, node: &Marked, what: &str) -> Option<(f64, bool)> {
     let text = scalar_text(node);
-    if let Some(time) = text.as_deref().and_then(time_text) {
+    if let Some(time) = text.and_then(time_text) {
         return Some((time, text.is_some_and(|text| text.contains(':'))));
     }
     let message = format!("{what} must be a time, found {}", found(node));

@@ -2,21 +2,15 @@
 
 use super::context::{Bound, Context, Fields, found, scalar_text};
 use super::over_time::daily;
-use super::schedules::NamedSchedule;
+use super::references::Names;
 use super::yaml::Marked;
-use crate::diagnostic::{Diagnostic, Place, nearest};
-use crate::network::{LineId, Network, NodeId, NodeKind};
+use crate::diagnostic::{Diagnostic, Place};
+use crate::network::{LineId, Network, NodeKind};
 use crate::part::PumpId;
 use crate::shift::{
     Bands, Call, Exercise, Follow, Group, Hold, HoldStyle, Plan, Rotate, Step, Trip, Window,
 };
 use crate::units::Kind;
-
-/// Names that rules refer to.
-pub(super) struct Names<'n> {
-    pub network: &'n Network,
-    pub schedules: &'n [NamedSchedule],
-}
 
 const GROUP_KEYS: [&str; 17] = [
     "name",
@@ -103,7 +97,10 @@ fn group(cx: &mut Context, names: &Names, node: &Marked, plan: &str) -> Option<(
         for key in ["steps", "windows"] {
             if fields.has(key) {
                 let message = format!("`{key}` of {what} goes with `follow` only");
-                cx.error("stray-key", fields.key_place(key), message);
+                cx.push(
+                    Diagnostic::error("stray-key", fields.key_place(key), message)
+                        .help("remove it, or give `follow`"),
+                );
             }
         }
     }
@@ -163,7 +160,10 @@ fn pumps(cx: &mut Context, names: &Names, node: &Marked, what: &str) -> Option<V
         for pump in names.pumps(cx, item, what)? {
             if found.contains(&pump) {
                 let message = format!("{what} name `{}` twice", names.network.pump(pump).name);
-                cx.error("name-twice", item.place, message);
+                cx.push(
+                    Diagnostic::error("name-twice", item.place, message)
+                        .help("a bank's name stands for all its pumps; name each pump once"),
+                );
                 return None;
             }
             found.push(pump);
@@ -192,7 +192,7 @@ fn rotate(cx: &mut Context, fields: &Fields, what: &str) -> Option<Rotate> {
     let Some(node) = fields.get("rotate") else {
         return Some(Rotate::Never);
     };
-    match scalar_text(node).as_deref() {
+    match scalar_text(node) {
         Some("never") => Some(Rotate::Never),
         Some("each_start") => Some(Rotate::EachStart),
         Some("least_hours") => Some(Rotate::LeastHours),
@@ -225,7 +225,10 @@ fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Optio
                     "`{}` is no tank and has no level to follow",
                     names.network.node(tank).name
                 );
-                cx.error("no-tank", node.place, message);
+                cx.push(
+                    Diagnostic::error("no-tank", node.place, message)
+                        .help("a level is that of a tank; `pressure: NODE` follows a pressure"),
+                );
                 return None;
             }
             Some((Follow::Level(tank), Kind::Length))
@@ -238,7 +241,10 @@ fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Optio
             [line] => Some((Follow::Flow(*line), Kind::Flow)),
             _ => {
                 let message = format!("{named} is a bank; one line can be followed");
-                cx.error("wrong-form", node.place, message);
+                cx.push(
+                    Diagnostic::error("wrong-form", node.place, message)
+                        .help("name one member, such as `duty.1`, or the line they feed"),
+                );
                 None
             }
         },
@@ -279,7 +285,10 @@ fn bands(
             let own = self::steps(cx, node, &format!("`steps` of {what}"), kind)?;
             if own.len() != steps.len() {
                 let message = format!("{what} has {} steps, the group {}", own.len(), steps.len());
-                cx.error("steps", node.place, message);
+                cx.push(
+                    Diagnostic::error("steps", node.place, message)
+                        .help("a window changes the levels of every step, not their number"),
+                );
                 return None;
             }
             windows.push(Window { daily, steps: own });
@@ -308,7 +317,10 @@ fn steps(cx: &mut Context, node: &Marked, what: &str, kind: Kind) -> Option<Vec<
     let mut steps: Vec<Step> = Vec::new();
     let items = cx.list(node, what, "[{start: 2.6 m, stop: 1.0 m}]")?;
     if items.is_empty() {
-        cx.error("wrong-form", node.place, format!("{what} are none"));
+        cx.push(
+            Diagnostic::error("wrong-form", node.place, format!("{what} are none"))
+                .help("write at least one `{start: 2.6 m, stop: 1.0 m}`"),
+        );
         return None;
     }
     for item in items {
@@ -402,16 +414,19 @@ fn hold(
         None => (0.5, 1.0),
     };
     if speeds.0 > speeds.1 {
-        cx.error(
-            "out-of-range",
-            fields.key_place("speed"),
-            format!("{what} has a least speed above its most"),
+        cx.push(
+            Diagnostic::error(
+                "out-of-range",
+                fields.key_place("speed"),
+                format!("{what} has a least speed above its most"),
+            )
+            .help("write it for example as `{least: 60 %, most: 100 %}`"),
         );
         return None;
     }
     let style = match fields.get("style") {
         None => HoldStyle::Common,
-        Some(node) => match scalar_text(node).as_deref() {
+        Some(node) => match scalar_text(node) {
             Some("common") => HoldStyle::Common,
             Some("trim") => HoldStyle::Trim,
             _ => {
@@ -450,87 +465,4 @@ fn hold(
         down_at: down_at?,
         down_delay: down_delay?,
     }))
-}
-
-impl Names<'_> {
-    /// The pump, or the pumps of the bank or line, that a value names.
-    pub(super) fn pumps(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<Vec<PumpId>> {
-        let name = cx.text(node, what)?;
-        let network = self.network;
-        if let Some(pump) = network.find_pump(&name) {
-            return Some(vec![pump]);
-        }
-        let lines = self.find_lines(&name);
-        let pumps: Vec<PumpId> = lines
-            .iter()
-            .flat_map(|line| network.line(*line).pumps())
-            .collect();
-        if pumps.is_empty() {
-            let names = network.pumps().iter().map(|pump| pump.name.as_str());
-            unknown(cx, "pump", node, &name, names);
-            return None;
-        }
-        Some(pumps)
-    }
-
-    fn find_lines(&self, name: &str) -> Vec<LineId> {
-        match self.network.banks().iter().find(|bank| bank.name == name) {
-            Some(bank) => bank.lines.clone(),
-            None => self.network.find_line(name).into_iter().collect(),
-        }
-    }
-
-    /// The line, or the lines of the bank, that a value names.
-    pub(super) fn lines(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<Vec<LineId>> {
-        let name = cx.text(node, what)?;
-        let lines = self.find_lines(&name);
-        if lines.is_empty() {
-            let names = self.network.lines().iter().map(|line| line.name.as_str());
-            unknown(cx, "line", node, &name, names);
-            return None;
-        }
-        Some(lines)
-    }
-
-    /// The node that a value names.
-    fn node(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<NodeId> {
-        let name = cx.text(node, what)?;
-        let found = self.network.find_node(&name);
-        if found.is_none() {
-            let names = self.network.nodes().iter().map(|node| node.name.as_str());
-            unknown(cx, "node", node, &name, names);
-        }
-        found
-    }
-}
-
-/// Reports a name that points nowhere.
-pub(super) fn unknown<'a>(
-    cx: &mut Context,
-    what: &str,
-    node: &Marked,
-    name: &str,
-    names: impl Iterator<Item = &'a str>,
-) {
-    let mut names: Vec<&str> = names.collect();
-    names.sort_unstable();
-    let mut diagnostic = Diagnostic::error(
-        "unknown-name",
-        node.place,
-        format!("no {what} is called `{name}`"),
-    );
-    diagnostic.help = match nearest(name, names.iter().copied()) {
-        Some(near) => Some(format!("did you mean `{near}`?")),
-        None if names.is_empty() => Some(format!("the file has no {what}")),
-        None => Some(format!(
-            "there are `{}`",
-            names
-                .iter()
-                .take(8)
-                .copied()
-                .collect::<Vec<_>>()
-                .join("`, `")
-        )),
-    };
-    cx.push(diagnostic);
 }

@@ -142,7 +142,8 @@ impl Plant<'_> {
         let (a, b) = ((guess - near).max(low), (guess + near).min(high));
         let (mut fa, mut fb) = (self.off(side, t, h, a)?, self.off(side, t, h, b)?);
         let (mut a, mut b) = (a, b);
-        if !(fa * fb <= 0.0) {
+        let met = fa * fb <= 0.0;
+        if !met {
             (a, b) = (low, high);
             (fa, fb) = (self.off(side, t, h, low)?, self.off(side, t, h, high)?);
         }

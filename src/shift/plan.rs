@@ -429,7 +429,8 @@ impl Plan {
                         }
                         for (step, usual) in steps.iter().zip(&bands.steps) {
                             let sense = step.empties() == usual.empties();
-                            if !(step.start.is_finite() && step.stop.is_finite()) || !sense {
+                            let finite = step.start.is_finite() && step.stop.is_finite();
+                            if !(finite && sense) {
                                 return Err(PlanError::OutOfRange(name(), "a step"));
                             }
                             if step.start == step.stop {

@@ -3,11 +3,13 @@
 //! Within one stretch between events the modes of the tanks, who runs and which way the schedules go are fixed; check valves,
 //! outlets and ports are solved for at every evaluation, and one that changed is told as a flip.
 
+mod balance;
+
 use super::books::Books;
 use super::energy::{electrical_power, shaft_power};
 use super::hold::Holding;
 use super::plan::{Follow, Shift, Varying};
-use crate::network::{End, LineId, Network, NodeId, Settings, TankMode, Unreachable};
+use crate::network::{End, LineId, Network, NodeId, Settings};
 use crate::solve::{LineState, Solution, SolveError, Solver};
 
 /// Which of the solvers: the run's own; the one for reports, so that reporting does not touch the run; and the one for
@@ -264,90 +266,6 @@ impl<'a> Plant<'a> {
         for point in &self.points {
             let draw = if point.cut { 0.0 } else { point.draw.at(t) };
             self.settings.set_draw(point.node, draw);
-        }
-    }
-
-    /// Solves; an empty tank that cannot give what the lines ask for passes on what flows in.
-    pub(super) fn balance(&mut self, side: Side, t: f64) -> Result<(), SolveError> {
-        for tank in &mut self.tanks {
-            if tank.mode == Mode::Floor {
-                tank.passing = false;
-                self.settings.set_tank_mode(tank.node, TankMode::Held);
-            }
-        }
-        // Each round makes at least one more tank pass on.
-        loop {
-            self.resolve(side)?;
-            let answer = self.solvers[side as usize].last();
-            let mut changed = false;
-            for tank in &mut self.tanks {
-                if tank.mode == Mode::Free || tank.passing {
-                    continue;
-                }
-                let (into, out) = line_flows(answer, &tank.joins);
-                let inflow = tank.inflow.at(t);
-                let net = into + inflow - out - tank.draw.at(t);
-                match tank.mode {
-                    Mode::Brim => tank.leaving = -net,
-                    _ => {
-                        tank.leaving = net;
-                        if out > into + inflow {
-                            tank.passing = true;
-                            self.settings.set_tank_mode(tank.node, TankMode::Passing);
-                            self.settings.set_draw(tank.node, -inflow);
-                            changed = true;
-                        }
-                    }
-                }
-            }
-            if !changed {
-                return Ok(());
-            }
-        }
-    }
-
-    /// Solves; a draw or inflow at a point that no flow can meet is left out, and so booked as unmet or spilled.
-    fn resolve(&mut self, side: Side) -> Result<(), SolveError> {
-        // Where the last answer leads astray the way from nothing may do.
-        let mut cold = false;
-        loop {
-            if side == Side::Run {
-                self.solves += 1;
-            }
-            let solver = &mut self.solvers[side as usize];
-            let answer = if cold {
-                solver.solve(&self.settings)
-            } else {
-                solver.resolve(&self.settings)
-            };
-            match answer {
-                Ok(_) => return Ok(()),
-                Err(SolveError::Unreachable(Unreachable { node, draw })) => {
-                    let uncut = |point: &&mut PointState| point.node == node && !point.cut;
-                    let Some(point) = self.points.iter_mut().find(uncut) else {
-                        return Err(SolveError::Unreachable(Unreachable { node, draw }));
-                    };
-                    point.cut = true;
-                    self.settings.set_draw(node, 0.0);
-                }
-                Err(_) if !cold => cold = true,
-                Err(error) => {
-                    // No balance within reason: what is drawn most is not to be had.
-                    let settings = &self.settings;
-                    let size = |point: &PointState| settings.draw(point.node).abs();
-                    let largest = self
-                        .points
-                        .iter_mut()
-                        .filter(|point| !point.cut && size(point) > 0.0)
-                        .max_by(|a, b| size(a).total_cmp(&size(b)));
-                    let Some(point) = largest else {
-                        return Err(error);
-                    };
-                    point.cut = true;
-                    let node = point.node;
-                    self.settings.set_draw(node, 0.0);
-                }
-            }
         }
     }
 

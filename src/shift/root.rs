@@ -30,9 +30,6 @@ pub(super) fn far_side<E>(
         // Keep a little inside, so that the far end closes in too.
         let secant = b - (b - a) * falls.clamp(0.01, 0.99);
         let slow = round % 3 == 2 && (b - a).abs() > 0.5 * width;
-        if round % 3 == 2 {
-            width = (b - a).abs();
-        }
         let x = if slow || !secant.is_finite() {
             middle
         } else {
@@ -51,6 +48,9 @@ pub(super) fn far_side<E>(
                 fb *= 0.5;
             }
             last_moved = -1;
+        }
+        if round % 3 == 2 {
+            width = (b - a).abs();
         }
     }
     Ok(b)

@@ -7,6 +7,9 @@ const SLACK: f64 = 1e-6;
 
 const DAY: f64 = 86_400.0;
 
+/// A time (s) and the figure from there on.
+type Point = (f64, f64);
+
 /// What lies between two points.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Between {
@@ -142,7 +145,7 @@ impl Schedule {
     }
 
     /// The point at or before `t` and the one after it, at their times.
-    fn place(&self, t: f64) -> (Option<(f64, f64)>, Option<(f64, f64)>) {
+    fn place(&self, t: f64) -> (Option<Point>, Option<Point>) {
         let points = &self.points;
         let base = match self.repeat {
             Some(period) => period * ((t - points[0].0 + SLACK) / period).floor(),

@@ -74,14 +74,14 @@ impl Tally {
         alarms: &[bool],
         below_trip: &[(usize, bool)],
     ) {
-        for i in 0..plant.tanks.len() {
+        for (i, tank) in plant.tanks.iter().enumerate() {
             if alarms[i] {
                 self.above_alarm[i] += length;
             }
-            if plant.tanks[i].mode == Mode::Floor {
+            if tank.mode == Mode::Floor {
                 self.empty[i] += length;
             }
-            if below_trip.iter().any(|&(tank, below)| tank == i && below) {
+            if below_trip.iter().any(|&(at, below)| at == i && below) {
                 self.below_trip[i] += length;
             }
         }

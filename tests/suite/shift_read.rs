@@ -281,6 +281,10 @@ fn what_is_wrong_is_told_where_it_stands() {
         };
         assert!(problems.contains(says), "{wrong}: {problems}");
         assert!(problems.contains("station.yaml:"), "{problems}");
+        assert!(
+            problems.contains("= help:") || problems.contains(" must be "),
+            "no way out: {problems}"
+        );
     }
 }
 

@@ -322,8 +322,8 @@ fn delays_hold_a_step_back() {
     let (record, outcome) = record(&meadow, &meadow::day(&meadow, false, 1.0), &plan);
     let reached = |t: f64| {
         let rows = record.times().iter().zip(record.column(0));
-        rows.filter(|(time, _)| **time <= t)
-            .last()
+        rows.rev()
+            .find(|(time, _)| **time <= t)
             .map(|(_, level)| *level)
     };
     for start in times(&record, meadow.pumps[0], What::Start) {

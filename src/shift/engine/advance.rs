@@ -1,0 +1,255 @@
+//! From one instant to the next: steps under error control that end where a line opens or shuts.
+
+use std::ops::ControlFlow;
+
+use super::{Engine, LOCATED};
+use crate::network::LineId;
+use crate::shift::crossing::Way;
+use crate::shift::error::ShiftError;
+use crate::shift::hold::Place;
+use crate::shift::plant::{Mode, STILL, Side};
+use crate::shift::record::Sink;
+use crate::shift::staging::{Figure, FigureWatch, SLACK, Watch};
+
+impl Engine<'_> {
+    /// Steps until something happens or is due.
+    pub(super) fn advance(&mut self, sink: &mut impl Sink) -> Result<(), ShiftError> {
+        const MOST_STEPS: u32 = 2_000_000;
+        let stop = self.next_time();
+        self.collect_watches();
+        for taken in 0..MOST_STEPS {
+            // Two tanks that have come level through a wide pipe pull at each other harder the closer they are: no explicit step
+            // rests there. After a thousand steps without an event, levels to a millionth are good enough.
+            self.slack = 10_f64.powi((taken / 1000).min(3) as i32);
+            let remaining = stop - self.t;
+            if remaining <= 0.0 {
+                self.t = stop;
+                return Ok(());
+            }
+            let flip = self.try_steps(remaining)?;
+            let event = self.first_event()?;
+            let theta = event.unwrap_or(1.0);
+            let whole = self.step.h >= remaining;
+            let end = match event {
+                None if whole => stop,
+                _ => self.t + theta * self.step.h,
+            };
+            self.pass(theta, end, sink)?;
+            self.t = end;
+            if event.is_some() {
+                return Ok(());
+            }
+            self.step.shift();
+            if let Some(line) = flip {
+                let quiet = &mut self.quiet[line.index()];
+                let soon = end - quiet.last < 2.0 * quiet.span;
+                quiet.span = if soon {
+                    (2.0 * quiet.span).min(3600.0)
+                } else {
+                    1.0
+                };
+                quiet.last = end;
+                return Ok(());
+            }
+            if self.t >= stop {
+                return Ok(());
+            }
+        }
+        Err(ShiftError::Stuck { time: self.t })
+    }
+
+    /// The next time at which a step has to end.
+    fn next_time(&self) -> f64 {
+        let clock = self.shift.starts + self.t;
+        let tariff = self.shift.tariff.as_ref();
+        let rate = tariff.map_or(f64::INFINITY, |tariff| {
+            tariff.next_edge(clock) - self.shift.starts
+        });
+        let looked_at_again = self
+            .quiet
+            .iter()
+            .map(|quiet| quiet.last + quiet.span)
+            .filter(|time| *time > self.t + SLACK)
+            .fold(f64::INFINITY, f64::min);
+        self.plant
+            .next_corner(self.t)
+            .min(self.control.wake)
+            .min(rate)
+            .min(looked_at_again)
+            .min(self.shift.lasts)
+    }
+
+    fn collect_watches(&mut self) {
+        self.watches.clear();
+        self.figure_watches.clear();
+        self.control.watches(
+            self.t,
+            &self.plant,
+            &mut self.watches,
+            &mut self.figure_watches,
+        );
+        for (i, tank) in self.plant.tanks.iter().enumerate() {
+            let mut watch = |threshold, way| {
+                self.watches.push(Watch {
+                    tank: i,
+                    threshold,
+                    way,
+                });
+            };
+            match tank.mode {
+                Mode::Free => {
+                    watch(tank.floor, Way::Down);
+                    watch(tank.capacity, Way::Up);
+                }
+                Mode::Floor | Mode::Brim => self.figure_watches.push(FigureWatch {
+                    figure: Figure::Leaving(i),
+                    threshold: 2.0 * STILL,
+                    way: Way::Up,
+                }),
+            }
+        }
+        for i in 0..self.plant.tanks.len() {
+            if let Some(alarm) = self.shift.tanks[i].alarm {
+                let (threshold, slack) = self.alarm_volume(i, alarm);
+                self.watches.push(if self.alarms[i] {
+                    Watch {
+                        tank: i,
+                        threshold: threshold - slack,
+                        way: Way::Down,
+                    }
+                } else {
+                    Watch {
+                        tank: i,
+                        threshold,
+                        way: Way::Up,
+                    }
+                });
+            }
+        }
+        for ((_, below), (tank, threshold)) in
+            self.below_trip.iter().zip(self.control.trip_levels())
+        {
+            let slack = 1e-9 * self.plant.tanks[tank].capacity;
+            let (threshold, way) = if *below {
+                (threshold + slack, Way::Up)
+            } else {
+                (threshold, Way::Down)
+            };
+            self.watches.push(Watch {
+                tank,
+                threshold,
+                way,
+            });
+        }
+        for hold in &self.plant.holds {
+            let Some(tank) = hold.tank else { continue };
+            let (low, set, high) = self.plant.hold_band(hold, tank);
+            let mut watch = |threshold, way| {
+                self.watches.push(Watch {
+                    tank,
+                    threshold,
+                    way,
+                });
+            };
+            match hold.place {
+                Place::Above => watch(set, Way::Down),
+                Place::Below => watch(set, Way::Up),
+                Place::There => {
+                    watch(low, Way::Down);
+                    watch(high, Way::Up);
+                }
+            }
+        }
+    }
+
+    /// Takes a step that the error control accepts and inside which no line opens or shuts; it ends just before one does, or
+    /// just after, and then tells which.
+    fn try_steps(&mut self, remaining: f64) -> Result<Option<LineId>, ShiftError> {
+        let mut h = if self.length >= remaining {
+            remaining
+        } else if 2.0 * self.length > remaining {
+            0.5 * remaining
+        } else {
+            self.length
+        };
+        // Steps known to end before, and after, a flip.
+        let (mut before, mut after) = (0.0, f64::INFINITY);
+        loop {
+            let passing = h <= 2.0 * LOCATED;
+            let flip = self.stages(h, !passing)?;
+            if let (Some(_), false) = (flip, passing) {
+                self.effort.rejected += 1;
+                after = h;
+                if before >= after {
+                    // Right at the flip the last digits decide: what stood once need not stand again.
+                    before = 0.0;
+                }
+                h = if after - before <= LOCATED && before > 0.0 {
+                    before
+                } else {
+                    0.5 * (before + after)
+                };
+                continue;
+            }
+            let tolerance = self.slack * self.tolerance;
+            let tanks = &self.plant.tanks;
+            let error = self.step.error(&self.sums, |i, size| {
+                1e-4 * tolerance * tanks[i].capacity + tolerance * size
+            });
+            let stands = error <= 1.0;
+            if !stands && h > 1e-9 {
+                self.effort.rejected += 1;
+                let shrink = (0.9 * error.powf(-0.2)).clamp(0.1, 0.9);
+                h *= if shrink.is_nan() { 0.1 } else { shrink };
+                // The error asks for less than the flip does: a later step will come to that.
+                (before, after) = (0.0, f64::INFINITY);
+                self.length = h;
+                continue;
+            }
+            if after.is_finite() && after - h > LOCATED && flip.is_none() {
+                before = h;
+                h = 0.5 * (before + after);
+                continue;
+            }
+            self.effort.steps += 1;
+            // Growth by the last two errors (K. Gustafsson, ACM Trans. Math. Softw. 17, 1991).
+            let error = error.max(1e-8);
+            let growth = 0.9 * error.powf(-0.7 / 5.0) * self.last_error.powf(0.4 / 5.0);
+            let next = h * growth.clamp(0.2, 5.0);
+            // A step cut short by an event says little about how long one may be.
+            let cut_short = h >= remaining || after.is_finite();
+            self.length = if cut_short {
+                self.length.max(next)
+            } else {
+                next
+            };
+            self.last_error = error;
+            return Ok(flip.filter(|_| passing));
+        }
+    }
+
+    /// The stages of a step; stops at the first flip if asked to.
+    fn stages(&mut self, h: f64, stop_at_flip: bool) -> Result<Option<LineId>, ShiftError> {
+        let Self {
+            plant,
+            step,
+            sums,
+            t,
+            ..
+        } = self;
+        let time = *t;
+        let mut flip = None;
+        let _ = step.take(time, h, sums, |t, y, rates| {
+            plant
+                .evaluate(Side::Run, t, y, rates)
+                .map_err(|error| ShiftError::Solve { time, error })?;
+            flip = flip.or(plant.flip);
+            Ok::<_, ShiftError>(if flip.is_some() && stop_at_flip {
+                ControlFlow::Break(())
+            } else {
+                ControlFlow::Continue(())
+            })
+        })?;
+        Ok(flip)
+    }
+}
