@@ -52,7 +52,7 @@ fn line(
         let node = fields.get(key)?;
         cx.quantity(
             node,
-            &format!("`{key}` of {what}"),
+            format_args!("`{key}` of {what}"),
             Kind::Length,
             Bound::NotNegative,
         )
@@ -82,11 +82,11 @@ fn line(
 
 fn end(cx: &mut Context, fields: &Fields, key: &str, what: &str) -> Option<Placed<String>> {
     let node = cx.required(fields, key, what, "NODE")?;
-    cx.reference(node, &format!("`{key}` of {what}"), Referent::Node)
+    cx.reference(node, format_args!("`{key}` of {what}"), Referent::Node)
 }
 
 fn count(cx: &mut Context, node: &Marked, what: &str) -> Option<u32> {
-    let value = cx.number(node, &format!("`count` of {what}"), Bound::Any)?;
+    let value = cx.number(node, format_args!("`count` of {what}"), Bound::Any)?;
     if value.fract() == 0.0 && (1.0..=LARGEST_BANK).contains(&value) {
         return Some(value as u32);
     }
@@ -115,7 +115,7 @@ fn parts(cx: &mut Context, site: &SiteSpec, what: &str, fields: &Fields) -> Opti
         (Some(list), []) => {
             let items = cx.list(
                 list,
-                &format!("`parts` of {what}"),
+                format_args!("`parts` of {what}"),
                 "- pipe: {length: 3 m, bore: 200 mm}",
             )?;
             if items.is_empty() {
@@ -194,7 +194,7 @@ fn part(
             let keys = ["k", "kv", "cv", "bore", "open", "opening", "characteristic"];
             let fields = cx.map(node, &what, &keys)?;
             let open = match fields.get("open") {
-                Some(node) => cx.boolean(node, &format!("`open` of {what}")),
+                Some(node) => cx.boolean(node, format_args!("`open` of {what}")),
                 None => Some(true),
             };
             let loss = valve_loss(cx, site, &fields, &what);
@@ -267,7 +267,7 @@ fn bore(cx: &mut Context, fields: &Fields, what: &str) -> Option<Option<f64>> {
         Some(node) => cx
             .quantity(
                 node,
-                &format!("`bore` of {what}"),
+                format_args!("`bore` of {what}"),
                 Kind::Bore,
                 Bound::Positive,
             )
@@ -292,7 +292,7 @@ fn pipe(cx: &mut Context, what: &str, node: &Marked) -> Option<PartKindSpec> {
     let length = length.and_then(|node| {
         cx.quantity(
             node,
-            &format!("`length` of {what}"),
+            format_args!("`length` of {what}"),
             Kind::Length,
             Bound::Positive,
         )
@@ -301,7 +301,7 @@ fn pipe(cx: &mut Context, what: &str, node: &Marked) -> Option<PartKindSpec> {
     let given_bore = given_bore.and_then(|node| {
         cx.quantity(
             node,
-            &format!("`bore` of {what}"),
+            format_args!("`bore` of {what}"),
             Kind::Bore,
             Bound::Positive,
         )
@@ -380,7 +380,7 @@ fn loss_coefficient(cx: &mut Context, fields: &Fields, what: &str) -> Option<f64
     let mut sum = Some(0.0);
     let mut add = |k: Option<f64>| sum = sum.zip(k).map(|(sum, k)| sum + k);
     if let Some(node) = fields.get("k") {
-        add(cx.number(node, &format!("`k` of {what}"), Bound::NotNegative));
+        add(cx.number(node, format_args!("`k` of {what}"), Bound::NotNegative));
     }
     if let Some(node) = fields.get("fittings") {
         match cx.any_map(
@@ -392,7 +392,7 @@ fn loss_coefficient(cx: &mut Context, fields: &Fields, what: &str) -> Option<f64
                 for (key, value) in list.entries() {
                     let count = cx.number(
                         value,
-                        &format!("the number of `{}`", key.name),
+                        format_args!("the number of `{}`", key.name),
                         Bound::NotNegative,
                     );
                     match fittings::fitting(&key.name) {
@@ -454,7 +454,7 @@ fn opening(cx: &mut Context, fields: &Fields, what: &str) -> Option<(Characteris
     let opening = match fields.get("opening") {
         Some(node) => cx.quantity(
             node,
-            &format!("`opening` of {what}"),
+            format_args!("`opening` of {what}"),
             Kind::Percent,
             Bound::Share,
         )?,
@@ -497,7 +497,7 @@ fn equipment(
     let at = at.and_then(|node| {
         cx.quantity(
             node,
-            &format!("`at` of {what}"),
+            format_args!("`at` of {what}"),
             Kind::Flow,
             Bound::Positive,
         )
@@ -524,18 +524,19 @@ fn pump(cx: &mut Context, site: &SiteSpec, what: &str, node: &Marked) -> Option<
     ];
     let fields = cx.map(node, what, &keys)?;
     let model = cx.required(&fields, "model", what, "P200");
-    let model = model
-        .and_then(|node| cx.reference(node, &format!("`model` of {what}"), Referent::PumpModel));
+    let model = model.and_then(|node| {
+        cx.reference(node, format_args!("`model` of {what}"), Referent::PumpModel)
+    });
     let elevation = fields.get("elevation").map(|node| {
         cx.quantity(
             node,
-            &format!("`elevation` of {what}"),
+            format_args!("`elevation` of {what}"),
             Kind::Length,
             Bound::Any,
         )
     });
     let speed = fields.get("speed").map(|node| {
-        let value = cx.speed(node, &format!("`speed` of {what}"))?;
+        let value = cx.speed(node, format_args!("`speed` of {what}"))?;
         Some(Placed {
             value,
             place: node.place,
@@ -551,18 +552,18 @@ fn pump(cx: &mut Context, site: &SiteSpec, what: &str, node: &Marked) -> Option<
     let wear = match fields.get("wear") {
         Some(node) => cx.quantity(
             node,
-            &format!("`wear` of {what}"),
+            format_args!("`wear` of {what}"),
             Kind::Percent,
             Bound::ShareBelowOne,
         ),
         None => Some(0.0),
     };
     let running = match fields.get("running") {
-        Some(node) => cx.boolean(node, &format!("`running` of {what}")),
+        Some(node) => cx.boolean(node, format_args!("`running` of {what}")),
         None => Some(true),
     };
     let name = fields.get("name").map(|node| {
-        let value = cx.text(node, &format!("`name` of {what}"))?;
+        let value = cx.text(node, format_args!("`name` of {what}"))?;
         super::names::check(
             cx,
             &Key {

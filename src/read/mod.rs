@@ -138,9 +138,13 @@ impl Document {
     /// All problems of the file and the changes.
     pub fn system(&self, changes: &[Change], load: Load) -> Result<System, Diagnostics> {
         let mut cx = Context::new();
-        let mut root = self.root.clone();
-        let members = changes::apply(&mut cx, &mut root, changes);
-        let lowered = read(&mut cx, &root, &members, load);
+        let lowered = if changes.is_empty() {
+            read(&mut cx, &self.root, &MemberChanges::default(), load)
+        } else {
+            let mut root = self.root.clone();
+            let members = changes::apply(&mut cx, &mut root, changes);
+            read(&mut cx, &root, &members, load)
+        };
         let Context {
             units,
             mut diagnostics,

@@ -63,7 +63,7 @@ fn model(
     let impeller = fields.get("impeller").map(|node| {
         cx.quantity(
             node,
-            &format!("`impeller` of {what}"),
+            format_args!("`impeller` of {what}"),
             Kind::Bore,
             Bound::Positive,
         )
@@ -290,7 +290,7 @@ fn polynomial(
     let limit = limit.and_then(|node| {
         cx.quantity(
             node,
-            &format!("`flow_limit` of {what}"),
+            format_args!("`flow_limit` of {what}"),
             Kind::Flow,
             Bound::Positive,
         )

@@ -94,7 +94,7 @@ fn rate(cx: &mut Context, fields: &Fields, key: &str, what: &str) -> Option<f64>
 fn length(cx: &mut Context, node: &Marked, what: &str, key: &str) -> Option<f64> {
     cx.quantity(
         node,
-        &format!("`{key}` of {what}"),
+        format_args!("`{key}` of {what}"),
         Kind::Length,
         Bound::Any,
     )
@@ -104,7 +104,7 @@ fn pressure(cx: &mut Context, fields: &Fields, what: &str) -> Option<f64> {
     match fields.get("pressure") {
         Some(node) => cx.quantity(
             node,
-            &format!("`pressure` of {what}"),
+            format_args!("`pressure` of {what}"),
             Kind::Pressure,
             Bound::Any,
         ),
@@ -152,7 +152,7 @@ fn tank(cx: &mut Context, what: &str, node: &Marked) -> Option<NodeKindSpec> {
     let fields = cx.map(node, what, &TANK_KEYS)?;
     let mut needed = |key: &str, example: &str, kind, bound| {
         let node = cx.required(&fields, key, what, example)?;
-        cx.quantity(node, &format!("`{key}` of {what}"), kind, bound)
+        cx.quantity(node, format_args!("`{key}` of {what}"), kind, bound)
     };
     let floor = needed("floor", "0 m", Kind::Length, Bound::Any);
     let depth = needed("depth", "4 m", Kind::Length, Bound::Positive);
@@ -161,7 +161,7 @@ fn tank(cx: &mut Context, what: &str, node: &Marked) -> Option<NodeKindSpec> {
         (Some(node), None) => {
             cx.quantity(
                 node,
-                &format!("`area` of {what}"),
+                format_args!("`area` of {what}"),
                 Kind::Area,
                 Bound::Positive,
             );
@@ -169,7 +169,7 @@ fn tank(cx: &mut Context, what: &str, node: &Marked) -> Option<NodeKindSpec> {
         (None, Some(node)) => {
             cx.quantity(
                 node,
-                &format!("`diameter` of {what}"),
+                format_args!("`diameter` of {what}"),
                 Kind::Length,
                 Bound::Positive,
             );
