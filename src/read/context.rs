@@ -165,6 +165,10 @@ impl Context {
 
     /// Reports it; hands back the key that is meant, as far as that can be told.
     fn unknown_key<'k>(&mut self, key: &Key, what: &str, keys: &[&'k str]) -> Option<&'k str> {
+        if self.diagnostics.is_full() {
+            self.error("unknown-key", key.place, "");
+            return None;
+        }
         let near = nearest(&key.name, keys.iter().copied());
         let message = format!("{what} has no key `{}`", shortened(&key.name));
         let help = match near {
@@ -431,5 +435,14 @@ pub(super) fn form_name(form: &Form) -> &'static str {
         },
         Form::List(_) => "a list",
         Form::Map(_) => "a map",
+    }
+}
+
+/// Given and read, given and not readable, or not given.
+pub(super) fn transposed<T>(value: Option<Option<T>>) -> Option<Option<T>> {
+    match value {
+        None => Some(None),
+        Some(None) => None,
+        Some(Some(value)) => Some(Some(value)),
     }
 }

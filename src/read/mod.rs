@@ -8,12 +8,15 @@
 
 mod changes;
 mod context;
+mod edit;
 mod lines;
 mod lower;
 mod models;
 mod names;
 mod needs;
 mod nodes;
+mod parts;
+mod references;
 mod site;
 mod spec;
 mod table;
