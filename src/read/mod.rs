@@ -122,7 +122,8 @@ impl Document {
     pub fn parse(bytes: &[u8]) -> Result<Self, Rejected> {
         match yaml::parse(bytes) {
             Ok((text, root)) => Ok(Self { text, root }),
-            Err((text, diagnostic)) => {
+            Err(refused) => {
+                let (text, diagnostic) = *refused;
                 let mut diagnostics = Diagnostics::default();
                 diagnostics.push(diagnostic);
                 Err(Rejected { text, diagnostics })

@@ -102,8 +102,8 @@ const MOST_VALUES: usize = 4_000_000;
 ///
 /// # Errors
 /// The first thing that makes it unreadable.
-pub fn parse(bytes: &[u8]) -> Result<(String, Marked), (String, Diagnostic)> {
-    let fail = |text: &str, diagnostic| Err((text.to_owned(), diagnostic));
+pub fn parse(bytes: &[u8]) -> Result<(String, Marked), Box<(String, Diagnostic)>> {
+    let fail = |text: &str, diagnostic| Err(Box::new((text.to_owned(), diagnostic)));
     if bytes.len() > LARGEST {
         let message = format!(
             "the file has {} bytes; at most {LARGEST} are read",

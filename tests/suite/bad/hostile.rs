@@ -289,9 +289,7 @@ fn strange_texts_are_read_or_refused() {
         ),
         (
             "50,000 unknown kinds",
-            SMALL
-                .replace("nodes: {", "nodes: {")
-                .replace("lines:", &format!("more:\n{nodes}lines:")),
+            SMALL.replace("lines:", &format!("more:\n{nodes}lines:")),
         ),
         ("50,000 bad nodes", format!("nodes:\n{nodes}lines: {{}}\n")),
         ("20,000 dangling lines", format!("{SMALL}{dangling}")),
