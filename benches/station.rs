@@ -1,7 +1,7 @@
 //! The station that is timed here and by the NumPy/SciPy peer: four pumps in parallel, 12 lines, 6 unknown heads.
 //!
 //! Invented data. Source, suction main, suction header `s`; four pump lines with check valves to `d1`..`d4`; four discharge
-//! pipes to the header `x`; two rising mains side by side to the sink; a balancing pipe from `x` back to `s`.
+//! pipes to the header `x`; two rising mains side by side to the sink; a recirculation line with an orifice from `x` back to `s`.
 
 use dutybank::fluid::Fluid;
 use dutybank::network::{Network, NetworkBuilder, NodeKind, PumpSetting};
@@ -74,6 +74,7 @@ pub fn station() -> Network {
     }
     net.line("main.1", x, sink, vec![pipe(900.0, 0.35)]);
     net.line("main.2", x, sink, vec![pipe(900.0, 0.3)]);
-    net.line("balance", x, s, vec![pipe(20.0, 0.05)]);
+    let orifice = Part::Loss(QuadraticLoss::minor(150.0, 0.1, G));
+    net.line("recirculation", x, s, vec![pipe(20.0, 0.1), orifice]);
     net.build().unwrap()
 }

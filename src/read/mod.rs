@@ -15,15 +15,20 @@ mod models;
 mod names;
 mod needs;
 mod nodes;
+mod over_time;
 mod parts;
 mod references;
+mod schedules;
 mod site;
 mod spec;
+mod staging;
 mod table;
+mod tanks;
 mod yaml;
 
 pub use changes::Change;
 pub use needs::Case;
+pub use over_time::OverTime;
 pub use table::Load;
 pub use yaml::LARGEST;
 

@@ -2,6 +2,7 @@
 
 use super::context::{Bound, Context, Fields, scalar_text};
 use super::spec::{NodeKindSpec, NodeSpec};
+use super::tanks::TANK_KEYS;
 use super::yaml::{Form, Key, Marked};
 use crate::diagnostic::Diagnostic;
 use crate::units::Kind;
@@ -77,18 +78,31 @@ fn point(cx: &mut Context, what: &str, node: &Marked) -> Option<NodeKindSpec> {
     })
 }
 
-/// A flow: a rate, or a rate with a schedule, of which the rate counts when nothing moves in time.
+/// A flow: a rate, a rate with a schedule (of which the rate counts when nothing moves in time), or several of these.
 fn rate(cx: &mut Context, fields: &Fields, key: &str, what: &str) -> Option<f64> {
     let Some(node) = fields.get(key) else {
         return Some(0.0);
     };
     let what = format!("`{key}` of {what}");
-    if let Form::Map(_) = node.value {
-        let fields = cx.map(node, &what, &["rate", "times"])?;
-        let rate = cx.required(&fields, "rate", &what, "60 m3/h")?;
-        return cx.quantity(rate, &what, Kind::Flow, Bound::Any);
+    match &node.value {
+        Form::List(items) => items.iter().map(|item| one_rate(cx, item, &what)).sum(),
+        _ => one_rate(cx, node, &what),
     }
-    cx.quantity(node, &what, Kind::Flow, Bound::Any)
+}
+
+fn one_rate(cx: &mut Context, node: &Marked, what: &str) -> Option<f64> {
+    let Form::Map(_) = node.value else {
+        return cx.quantity(node, what, Kind::Flow, Bound::Any);
+    };
+    let fields = cx.map(node, what, &["rate", "times"])?;
+    match fields.get("rate") {
+        Some(rate) => cx.quantity(rate, what, Kind::Flow, Bound::Any),
+        None if fields.has("times") => Some(0.0),
+        None => {
+            cx.required(&fields, "rate", what, "60 m3/h");
+            None
+        }
+    }
 }
 
 fn length(cx: &mut Context, node: &Marked, what: &str, key: &str) -> Option<f64> {
@@ -143,67 +157,15 @@ fn outlet(cx: &mut Context, what: &str, node: &Marked) -> Option<NodeKindSpec> {
     })
 }
 
-/// Keys that matter over time only are checked when the over-time sections are read.
-pub(super) const TANK_KEYS: [&str; 7] = [
-    "floor", "depth", "area", "diameter", "level", "inflow", "pressure",
-];
-
 fn tank(cx: &mut Context, what: &str, node: &Marked) -> Option<NodeKindSpec> {
     let fields = cx.map(node, what, &TANK_KEYS)?;
-    let mut needed = |key: &str, example: &str, kind, bound| {
-        let node = cx.required(&fields, key, what, example)?;
-        cx.quantity(node, format_args!("`{key}` of {what}"), kind, bound)
-    };
-    let floor = needed("floor", "0 m", Kind::Length, Bound::Any);
-    let depth = needed("depth", "4 m", Kind::Length, Bound::Positive);
-    let level = needed("level", "2.5 m", Kind::Length, Bound::NotNegative);
-    match (fields.get("area"), fields.get("diameter")) {
-        (Some(node), None) => {
-            cx.quantity(
-                node,
-                format_args!("`area` of {what}"),
-                Kind::Area,
-                Bound::Positive,
-            );
-        }
-        (None, Some(node)) => {
-            cx.quantity(
-                node,
-                format_args!("`diameter` of {what}"),
-                Kind::Length,
-                Bound::Positive,
-            );
-        }
-        (Some(_), Some(node)) => {
-            let message = format!("give `area` or `diameter` of {what}, not both");
-            let help = "`diameter` is for a round tank; it makes the area";
-            cx.push(Diagnostic::error("both-keys", node.place, message).help(help));
-        }
-        (None, None) if fields.is_misspelt("area") || fields.is_misspelt("diameter") => {}
-        (None, None) => {
-            let message = format!("{what} needs `area` or `diameter`");
-            let help = "add for example `area: 40 m2`, or `diameter: 6 m` for a round one";
-            cx.push(Diagnostic::error("missing-key", fields.place, message).help(help));
-        }
-    }
+    let spec = super::tanks::tank(cx, what, &fields);
     rate(cx, &fields, "inflow", what);
-    let pressure = pressure(cx, &fields, what);
-    let (floor, depth, level) = (floor?, depth?, level?);
-    if level > depth {
-        let node = fields.get("level")?;
-        let message = format!(
-            "`level` of {what} is {}, above its depth of {}",
-            cx.units.format(Kind::Length, level),
-            cx.units.format(Kind::Length, depth)
-        );
-        cx.push(
-            Diagnostic::error("out-of-range", node.place, message)
-                .help("a level is measured above the floor"),
-        );
-    }
+    rate(cx, &fields, "draw", what);
+    let spec = spec?;
     Some(NodeKindSpec::Tank {
-        floor,
-        level,
-        pressure: pressure?,
+        floor: spec.floor,
+        level: spec.level,
+        pressure: spec.pressure,
     })
 }

@@ -14,6 +14,7 @@ use super::score::Score;
 use super::staging::{Control, Figure, FigureWatch, SLACK, Watch};
 use super::tally::Tally;
 use crate::network::{LineId, Network, NodeId};
+use crate::solve::operation;
 use std::ops::ControlFlow;
 
 /// Relative tolerance of the volumes in a step, where the shift asks for none.
@@ -251,9 +252,10 @@ impl<'a> Engine<'a> {
             if self.toggles[i] >= 2 {
                 continue;
             }
-            let dry = volume <= 0.0 && net < -STILL;
+            let dry = volume <= tank.floor && net < -STILL;
             // Where the outflow dies away as the last of it goes, the floor is touched, never passed.
-            let dried_up = volume <= 1e-9 * tank.capacity && net.abs() <= STILL;
+            let above = volume - tank.floor;
+            let dried_up = above.abs() <= 1e-9 * tank.capacity && net.abs() <= STILL;
             let what = match tank.mode {
                 Mode::Free if dry || dried_up => {
                     tank.mode = Mode::Floor;
@@ -277,7 +279,7 @@ impl<'a> Engine<'a> {
                 _ => continue,
             };
             match what {
-                What::Empty => self.sums[i] = volume.max(0.0),
+                What::Empty => self.sums[i] = volume.max(tank.floor),
                 What::Spills => self.sums[i] = tank.capacity,
                 _ => {}
             }
@@ -486,7 +488,7 @@ impl<'a> Engine<'a> {
             };
             match tank.mode {
                 Mode::Free => {
-                    watch(0.0, Way::Down);
+                    watch(tank.floor, Way::Down);
                     watch(tank.capacity, Way::Up);
                 }
                 Mode::Floor | Mode::Brim => self.figure_watches.push(FigureWatch {
@@ -682,7 +684,12 @@ impl<'a> Engine<'a> {
             }
             if let Some(far) = bracket {
                 let tolerance = (LOCATED / self.step.h).max(1e-15);
-                let near = (0.0, -far.1.max(f64::MIN_POSITIVE));
+                let start = self.figure_inside(0.0, watch)?;
+                if start >= 0.0 {
+                    // It was there already; what acts on it has acted.
+                    continue;
+                }
+                let near = (0.0, start);
                 let theta = far_side(near, far, tolerance, |theta| {
                     self.figure_inside(theta, watch)
                 })?;
@@ -892,6 +899,8 @@ fn fill_row(row: &mut Vec<f64>, plant: &Plant, side: Side, volumes: &[f64], rate
         if network.pump(pump).name != network.line(line).name {
             row.push(plant.answer(side).flow(line));
         }
+        let operation = operation::pump(network, &plant.settings, plant.answer(side), pump);
+        row.push(operation.npsh_available.unwrap_or(f64::NAN));
         row.push(rates[books.shaft_energy(i)]);
         row.push(rates[books.energy(i)]);
     }

@@ -96,7 +96,7 @@ impl What {
             Self::Recovers => "is back",
             Self::Trip => "tripped",
             Self::Reset => "trip reset",
-            Self::Empty => "is empty",
+            Self::Empty => "gives no more",
             Self::Refills => "fills again",
             Self::Spills => "spills",
             Self::StopsSpilling => "no longer spills",

@@ -52,6 +52,8 @@ pub(super) struct TankState {
     pub node: NodeId,
     pub mode: Mode,
     pub capacity: f64,
+    /// Volume at which nothing can leave any more: below all ports, if nobody else draws from it.
+    pub floor: f64,
     pub start_volume: f64,
     /// Lines that end here, with +1 where forward flow comes in.
     joins: Vec<(LineId, f64)>,
@@ -109,6 +111,11 @@ impl<'a> Plant<'a> {
                 node: tank.node,
                 mode: Mode::Free,
                 capacity: tank.capacity(),
+                floor: if tank.draws.is_empty() {
+                    tank.shape.volume(lowest_port(network, tank.node))
+                } else {
+                    0.0
+                },
                 start_volume: tank.shape.volume(tank.level),
                 joins: joins(tank.node),
                 inflow: StraightFlow::default(),
@@ -299,31 +306,47 @@ impl<'a> Plant<'a> {
         }
     }
 
-    /// Solves; a draw or inflow at a point that no flow can meet is left out, and so booked.
+    /// Solves; a draw or inflow at a point that no flow can meet is left out, and so booked as unmet or spilled.
     fn resolve(&mut self, side: Side) -> Result<(), SolveError> {
+        // Where the last answer leads astray the way from nothing may do.
+        let mut cold = false;
         loop {
             if side == Side::Run {
                 self.solves += 1;
             }
-            match self.solvers[side as usize].resolve(&self.settings) {
+            let solver = &mut self.solvers[side as usize];
+            let answer = if cold {
+                solver.solve(&self.settings)
+            } else {
+                solver.resolve(&self.settings)
+            };
+            match answer {
                 Ok(_) => return Ok(()),
                 Err(SolveError::Unreachable(Unreachable { node, draw })) => {
-                    let point = self
+                    let uncut = |point: &&mut PointState| point.node == node && !point.cut;
+                    let Some(point) = self.points.iter_mut().find(uncut) else {
+                        return Err(SolveError::Unreachable(Unreachable { node, draw }));
+                    };
+                    point.cut = true;
+                    self.settings.set_draw(node, 0.0);
+                }
+                Err(_) if !cold => cold = true,
+                Err(error) => {
+                    // No balance within reason: what is drawn most is not to be had.
+                    let settings = &self.settings;
+                    let size = |point: &PointState| settings.draw(point.node).abs();
+                    let largest = self
                         .points
                         .iter_mut()
-                        .find(|point| point.node == node && !point.cut);
-                    match point {
-                        Some(point) => {
-                            point.cut = true;
-                            self.settings.set_draw(node, 0.0);
-                        }
-                        None => {
-                            let at = Unreachable { node, draw };
-                            return Err(SolveError::Unreachable(at));
-                        }
-                    }
+                        .filter(|point| !point.cut && size(point) > 0.0)
+                        .max_by(|a, b| size(a).total_cmp(&size(b)));
+                    let Some(point) = largest else {
+                        return Err(error);
+                    };
+                    point.cut = true;
+                    let node = point.node;
+                    self.settings.set_draw(node, 0.0);
                 }
-                Err(error) => return Err(error),
             }
         }
     }
@@ -454,6 +477,16 @@ impl<'a> Plant<'a> {
         }
         rates[books.total_energy()] = total;
     }
+}
+
+/// The lowest end of a line at a tank, m above its floor.
+fn lowest_port(network: &Network, node: NodeId) -> f64 {
+    let lines = network.lines().iter();
+    let ends = lines.flat_map(|line| [(line.from, line.ports[0]), (line.to, line.ports[1])]);
+    let heights = ends
+        .filter(|end| end.0 == node)
+        .map(|end| end.1.unwrap_or(0.0));
+    heights.min_by(f64::total_cmp).unwrap_or(0.0)
 }
 
 /// Sums of what lines bring to a tank and take from it, m3/s.

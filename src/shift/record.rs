@@ -48,7 +48,7 @@ impl<F: FnMut(Row<'_>) -> ControlFlow<()>> Sink for F {
 }
 
 /// The columns of a run: for each tank level, volume, inflow, outflow and spill; for each point its pressure; for each line its
-/// flow; for each pump whether it runs, its speed, flow (where its name is not its line's), shaft and electrical power.
+/// flow; for each pump whether it runs, its speed, flow (where its name is not its line's), NPSH available, shaft and electrical power.
 pub fn columns(network: &Network, shift: &Shift) -> Vec<Column> {
     let mut columns = Vec::new();
     let mut add = |name: &str, figures: &[(&'static str, Option<Kind>)]| {
@@ -85,6 +85,7 @@ pub fn columns(network: &Network, shift: &Shift) -> Vec<Column> {
             add(name, &[("flow", Some(Kind::Flow))]);
         }
         let power = Some(Kind::Power);
+        add(name, &[("npsh_available", Some(Kind::Length))]);
         add(name, &[("shaft_power", power), ("power", power)]);
     }
     columns

@@ -700,7 +700,9 @@ impl<'a> Control<'a> {
         let spare = plant
             .spare_speed(t, h)
             .map_err(|error| ShiftError::Solve { time: t, error })?;
-        let fewer = spare.filter(|spare| state.demand > 1 && *spare <= rule.down_at);
+        // At the lower limit the group overshoots: one fewer is right at whatever speed it takes.
+        let over = speed <= rule.speeds.0;
+        let fewer = spare.filter(|spare| state.demand > 1 && (over || *spare <= rule.down_at));
         state.down_since = fewer.map(|_| state.down_since.unwrap_or(t));
         let mut next = None;
         if let Some(since) = state.up_since {
@@ -986,6 +988,12 @@ impl<'a> Control<'a> {
                 None => (rule.down_at, Way::Down),
                 Some(_) => (rule.down_at + NUDGE, Way::Up),
             };
+            let over = plant.holds[h].speeds[Side::Run as usize] <= rule.speeds.0;
+            figures.push(FigureWatch {
+                figure: Figure::Speed(h),
+                threshold: rule.speeds.0 + if over { NUDGE } else { 0.0 },
+                way: if over { Way::Up } else { Way::Down },
+            });
             figures.push(FigureWatch {
                 figure: Figure::Spare(h),
                 threshold,

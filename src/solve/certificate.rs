@@ -2,8 +2,9 @@
 
 use super::solver::SolveError;
 use super::system::{Role, State, System};
-use super::tolerance::{CERTIFIED_HEAD, certified_flow};
+use super::tolerance::{CERTIFIED_HEAD, certified_flow, rounding};
 use crate::network::{LineId, NodeId};
+use crate::part::HeadLoss;
 
 /// How good an answer is, and what it took.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
@@ -39,7 +40,7 @@ pub(super) fn certify(
         if role == Role::Idle {
             continue;
         }
-        let loss = system.laws.loss_at(line, q).head;
+        let HeadLoss { head: loss, slope } = system.laws.loss_at(line, q);
         let (above, below) = (state.heads[from as usize], state.heads[to as usize]);
         let off = loss - system.drop(state, line);
         let off = if state.shut[line] {
@@ -49,7 +50,8 @@ pub(super) fn certify(
         };
         let size = loss.abs().max(above.abs()).max(below.abs());
         let wrong_way = system.sense[line] * q < 0.0;
-        if !(off <= CERTIFIED_HEAD.absolute + CERTIFIED_HEAD.relative * size) || wrong_way {
+        let allowed = CERTIFIED_HEAD.absolute + CERTIFIED_HEAD.relative * size + rounding(q, slope);
+        if !(off <= allowed) || wrong_way {
             return Err(SolveError::LineUnbalanced {
                 line: LineId(line as u32),
                 by: off,

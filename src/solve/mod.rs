@@ -31,6 +31,7 @@ mod newton;
 pub mod operation;
 mod solution;
 mod solver;
+mod supernodal;
 mod system;
 mod tolerance;
 

@@ -23,7 +23,7 @@
 //! primal-dual active set strategy as a semismooth Newton method", SIAM J. Optim. 13, 2002.
 
 use super::system::{State, System};
-use super::tolerance::{HEAD, OPENING, SLOPE_FLOOR, flow_tolerance};
+use super::tolerance::{HEAD, OPENING, SLOPE_FLOOR, flow_tolerance, rounding};
 
 /// How the iterations ended.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -156,7 +156,8 @@ impl Newton {
             let y = 1.0 / loss.slope.max(SLOPE_FLOOR);
             (self.residual[k], self.conductance[k]) = (r, y);
             let size = state.heads[live.from as usize].abs() + drop.abs();
-            worst_head = worst_head.max(r.abs() / (HEAD.absolute + HEAD.relative * size));
+            let scale = HEAD.absolute + HEAD.relative * size + rounding(q, loss.slope);
+            worst_head = worst_head.max(r.abs() / scale);
             largest_flow = largest_flow.max(q.abs());
             sum += r;
             let (a, b) = (live.from_unknown as usize, live.to_unknown as usize);

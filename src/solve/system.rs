@@ -337,9 +337,13 @@ impl<'n> System<'n> {
 
     /// A start from the last answer; lines that were not live then get their ordinary flow.
     pub fn warm_start(&self, state: &mut State) {
-        let new = |live: &&Live| !self.was_live[live.index()];
-        for live in self.live.iter().filter(new) {
-            self.open_line(state, live.index());
+        for live in &self.live {
+            let line = live.index();
+            // What was shut as a one-way line is not once water can pass both ways: nothing would open it again.
+            let both_ways = self.sense[line] == 0.0 && state.shut[line];
+            if !self.was_live[line] || both_ways {
+                self.open_line(state, line);
+            }
         }
     }
 

@@ -23,6 +23,12 @@ pub(super) const CERTIFIED_HEAD: HeadTolerance = HeadTolerance {
     relative: 1e-12,
 };
 
+/// What the last digits of a flow make of the head along a law of that slope, m: no flow balances it better. Counts only for
+/// laws far steeper than any real one (a pump whose flow does not depend on head).
+pub(super) fn rounding(q: f64, slope: f64) -> f64 {
+    4.0 * f64::EPSILON * (q * slope).abs()
+}
+
 /// Smallest slope (m per m3/s) that the iterations reckon with. The laws themselves stay as they are.
 pub(super) const SLOPE_FLOOR: f64 = 1e-7;
 
