@@ -38,7 +38,7 @@ const EXCLUSIVE: [&[&str]; 4] = [
     &["roughness", "material", "c_factor", "friction_factor"],
     &["k", "kv", "cv"],
     &["elevation", "barometer"],
-    &["area", "diameter"],
+    &["area", "diameter", "lying", "volumes"],
 ];
 
 pub(super) fn get<'a>(node: &'a Marked, key: &str) -> Option<&'a Marked> {

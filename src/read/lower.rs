@@ -402,6 +402,16 @@ impl Lowering<'_> {
                 &pump.model.value,
             )?,
         };
+        if let Some(Placed { place, .. }) = pump.impeller.as_ref().filter(|_| trim > 1.0) {
+            let message = format!(
+                "the impeller of pump `{base}` is larger than the full one of `{}`",
+                pump.model.value
+            );
+            let help =
+                "its figures are then beyond those of the model's curve; check the diameters";
+            let caution = Diagnostic::caution("large-impeller", *place, message);
+            self.cx.push(caution.help(help));
+        }
         let from = from?;
         let elevation = pump.elevation.unwrap_or_else(|| self.net.elevation(from));
         if pump.elevation.is_none() && member.is_none_or(|member| member == 1) {

@@ -196,12 +196,12 @@ impl Document {
         }
     }
 
-    /// All problems of the file: as it stands, and with the changes of each case.
+    /// All problems of the file: as it stands, and with the changes of each case; over time too if it has a `shift`.
     ///
     /// # Errors
     /// As said.
     pub fn check(&self, load: Load) -> Result<System, Diagnostics> {
-        let (system, mut all) = match self.system(&[], load) {
+        let (system, mut all) = match self.system_over_time(&[], load) {
             Ok(system) => (Some(system), Diagnostics::default()),
             Err(diagnostics) => (None, diagnostics),
         };
@@ -218,7 +218,7 @@ impl Document {
             if all.is_full() {
                 break;
             }
-            if let Err(diagnostics) = self.system(&case.changes, load) {
+            if let Err(diagnostics) = self.system_over_time(&case.changes, load) {
                 all.add_errors(&diagnostics);
             }
         }
@@ -227,6 +227,18 @@ impl Document {
             Some(system) if !all.has_errors() => Ok(system),
             _ => Err(all),
         }
+    }
+
+    fn system_over_time(&self, changes: &[Change], load: Load) -> Result<System, Diagnostics> {
+        let system = self.system(changes, load)?;
+        let has_shift = match &self.root.value {
+            Form::Map(entries) => entries.iter().any(|(key, _)| key.name == "shift"),
+            _ => false,
+        };
+        if has_shift {
+            self.over_time(&system, changes, load)?;
+        }
+        Ok(system)
     }
 }
 

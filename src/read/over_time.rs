@@ -39,10 +39,14 @@ impl Document {
         load: Load,
     ) -> Result<OverTime, Diagnostics> {
         let mut cx = Context::new();
-        let mut root = self.root.clone();
-        changes::apply(&mut cx, &mut root, changes);
         cx.units = system.units.clone();
-        let read = over_time(&mut cx, &root, &system.network, load);
+        let read = if changes.is_empty() {
+            over_time(&mut cx, &self.root, &system.network, load)
+        } else {
+            let mut root = self.root.clone();
+            changes::apply(&mut cx, &mut root, changes);
+            over_time(&mut cx, &root, &system.network, load)
+        };
         let mut diagnostics = cx.diagnostics;
         diagnostics.sort();
         match read {
@@ -57,9 +61,14 @@ fn over_time(cx: &mut Context, root: &Marked, network: &Network, load: Load) -> 
     let named = fields
         .get("schedules")
         .map_or_else(Vec::new, |node| schedules(cx, node, load));
+    let given = match fields.get("schedules").map(|node| &node.value) {
+        Some(Form::Map(entries)) => entries.iter().map(|(key, _)| key.name.clone()).collect(),
+        _ => Vec::new(),
+    };
     let names = Names {
         network,
         schedules: &named,
+        unread: &given,
     };
     let mut shift = Shift::default();
     match cx.required(
@@ -254,7 +263,8 @@ pub(super) fn daily(cx: &mut Context, fields: &Fields, what: &str) -> Option<Dai
     let (from, to) = (from?.0, to?.0);
     if from > DAY || to > DAY || from == to {
         let message = format!("{what} is no part of a day");
-        cx.error("out-of-range", fields.place, message);
+        let help = "`from` and `to` are two different times from \"00:00\" to \"24:00\"";
+        cx.push(Diagnostic::error("out-of-range", fields.place, message).help(help));
         return None;
     }
     Some(Daily { from, to })
@@ -413,7 +423,9 @@ impl Names<'_> {
                 .schedules
                 .iter()
                 .map(|schedule: &NamedSchedule| schedule.name.as_str());
-            super::staging::unknown(cx, "schedule", node, &name, names);
+            if !self.unread.contains(&name) {
+                super::staging::unknown(cx, "schedule", node, &name, names);
+            }
         }
         found
     }

@@ -11,7 +11,7 @@ use crate::diagnostic::{Diagnostic, Place, nearest};
 use crate::network::LineId;
 
 /// Most names that a wrong one is compared with.
-const MOST_COMPARED: usize = 20_000;
+pub(super) const MOST_COMPARED: usize = 20_000;
 
 /// Every name that a path can begin with.
 pub(super) struct TakenNames {
@@ -171,7 +171,7 @@ impl TakenNames {
 }
 
 /// What there is, for a message: all names, or the first few.
-fn listed(what: &str, names: &[&str]) -> String {
+pub(super) fn listed(what: &str, names: &[&str]) -> String {
     const SHOWN: usize = 8;
     let shown: Vec<String> = names
         .iter()

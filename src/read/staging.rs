@@ -2,8 +2,9 @@
 
 use super::context::{Bound, Context, Fields, found, scalar_text};
 use super::over_time::daily;
+use super::references::{MOST_COMPARED, listed};
 use super::schedules::NamedSchedule;
-use super::yaml::Marked;
+use super::yaml::{Marked, shortened};
 use crate::diagnostic::{Diagnostic, Place, nearest};
 use crate::network::{LineId, Network, NodeId, NodeKind};
 use crate::part::PumpId;
@@ -16,6 +17,8 @@ use crate::units::Kind;
 pub(super) struct Names<'n> {
     pub network: &'n Network,
     pub schedules: &'n [NamedSchedule],
+    /// Schedules that are in the file and could not be read: nobody who names them is to blame.
+    pub unread: &'n [String],
 }
 
 const GROUP_KEYS: [&str; 17] = [
@@ -163,7 +166,8 @@ fn pumps(cx: &mut Context, names: &Names, node: &Marked, what: &str) -> Option<V
         for pump in names.pumps(cx, item, what)? {
             if found.contains(&pump) {
                 let message = format!("{what} name `{}` twice", names.network.pump(pump).name);
-                cx.error("name-twice", item.place, message);
+                let help = "a bank's name stands for all its pumps; name each once";
+                cx.push(Diagnostic::error("name-twice", item.place, message).help(help));
                 return None;
             }
             found.push(pump);
@@ -225,7 +229,8 @@ fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Optio
                     "`{}` is no tank and has no level to follow",
                     names.network.node(tank).name
                 );
-                cx.error("no-tank", node.place, message);
+                let help = "follow a tank, or a `pressure` or `flow` elsewhere";
+                cx.push(Diagnostic::error("no-tank", node.place, message).help(help));
                 return None;
             }
             Some((Follow::Level(tank), Kind::Length))
@@ -512,25 +517,15 @@ pub(super) fn unknown<'a>(
     name: &str,
     names: impl Iterator<Item = &'a str>,
 ) {
-    let mut names: Vec<&str> = names.collect();
-    names.sort_unstable();
-    let mut diagnostic = Diagnostic::error(
-        "unknown-name",
-        node.place,
-        format!("no {what} is called `{name}`"),
-    );
-    diagnostic.help = match nearest(name, names.iter().copied()) {
-        Some(near) => Some(format!("did you mean `{near}`?")),
-        None if names.is_empty() => Some(format!("the file has no {what}")),
-        None => Some(format!(
-            "there are `{}`",
-            names
-                .iter()
-                .take(8)
-                .copied()
-                .collect::<Vec<_>>()
-                .join("`, `")
-        )),
-    };
+    let message = format!("no {what} is called `{}`", shortened(name));
+    let mut diagnostic = Diagnostic::error("unknown-name", node.place, message);
+    if !cx.diagnostics.is_full() {
+        let mut names: Vec<&str> = names.take(MOST_COMPARED).collect();
+        names.sort_unstable();
+        diagnostic = diagnostic.help(match nearest(name, names.iter().copied()) {
+            Some(near) => format!("did you mean `{near}`?"),
+            None => listed(what, &names),
+        });
+    }
     cx.push(diagnostic);
 }

@@ -142,8 +142,9 @@ fn shape(cx: &mut Context, what: &str, fields: &Fields) -> Option<Shape> {
     let &[key] = given.as_slice() else {
         if let Some(second) = given.get(1) {
             let message = format!("give `{}` of {what}, not both", given.join("` or `"));
-            cx.error("both-keys", fields.key_place(second), message);
-        } else {
+            let help = "one of them says what shape it has";
+            cx.push(Diagnostic::error("both-keys", fields.key_place(second), message).help(help));
+        } else if !SHAPES.iter().any(|key| fields.is_misspelt(key)) {
             let message = format!("{what} needs `area` or `diameter`");
             let help = "add for example `area: 40 m2`, `diameter: 6 m` for a round one, `lying: {diameter: 2 m, length: 6 m}` for a \
                         cylinder on its side, or `volumes: {level: [..], volume: [..]}`";
