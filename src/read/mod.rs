@@ -9,6 +9,7 @@
 mod changes;
 mod context;
 mod edit;
+mod known;
 mod lines;
 mod lower;
 mod models;

@@ -1,8 +1,9 @@
 //! `shift`, `faults`, `tariff` and what flows in and out of tanks and points: everything over time but the plans.
 
 use super::context::{Bound, Context, Fields};
-use super::schedules::{NamedSchedule, schedules, time};
-use super::staging::{Names, plans};
+use super::known::Known;
+use super::schedules::{schedules, time};
+use super::staging::plans;
 use super::tanks;
 use super::yaml::{Form, Marked};
 use super::{Change, Document, Load, System, changes};
@@ -65,7 +66,7 @@ fn over_time(cx: &mut Context, root: &Marked, network: &Network, load: Load) -> 
         Some(Form::Map(entries)) => entries.iter().map(|(key, _)| key.name.clone()).collect(),
         _ => Vec::new(),
     };
-    let names = Names {
+    let names = Known {
         network,
         schedules: &named,
         unread: &given,
@@ -142,7 +143,7 @@ fn hours(cx: &mut Context, node: &Marked, shift: &mut Shift) -> Option<()> {
 /// A tank with its flows, or what is drawn at a point by a schedule.
 fn flows_of_node(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     name: &str,
     node: &Marked,
     shift: &mut Shift,
@@ -208,7 +209,7 @@ fn pumps_from(network: &Network, node: NodeId) -> Vec<crate::part::PumpId> {
 /// A flow, `{rate, times}`, or a list of these.
 fn flows(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     fields: &Fields,
     key: &str,
     what: &str,
@@ -226,7 +227,7 @@ fn flows(
     }
 }
 
-fn flow(cx: &mut Context, names: &Names, node: &Marked, what: &str) -> Option<Varying> {
+fn flow(cx: &mut Context, names: &Known, node: &Marked, what: &str) -> Option<Varying> {
     let Form::Map(_) = node.value else {
         let rate = cx.quantity(node, what, Kind::Flow, Bound::Any)?;
         return Some(Varying::steady(rate));
@@ -311,7 +312,7 @@ const FAULT_KEYS: [&str; 7] = [
     "fouls",
 ];
 
-fn faults(cx: &mut Context, names: &Names, node: &Marked, shift: &mut Shift) -> Option<()> {
+fn faults(cx: &mut Context, names: &Known, node: &Marked, shift: &mut Shift) -> Option<()> {
     let example = "[{at: \"10:00\", trip: PUMP, lasts: 2 h}]";
     for item in cx.list(node, "`faults`", example)? {
         if let Some(fault) = fault(cx, names, item, shift.starts) {
@@ -322,7 +323,7 @@ fn faults(cx: &mut Context, names: &Names, node: &Marked, shift: &mut Shift) -> 
 }
 
 /// One entry; a bank's name gives one fault for each member.
-fn fault(cx: &mut Context, names: &Names, node: &Marked, starts: f64) -> Option<Vec<Fault>> {
+fn fault(cx: &mut Context, names: &Known, node: &Marked, starts: f64) -> Option<Vec<Fault>> {
     let what = "a fault";
     let fields = cx.map(node, what, &FAULT_KEYS)?;
     let at = cx.required(&fields, "at", what, "\"10:00\"")?;
@@ -408,25 +409,4 @@ fn fault(cx: &mut Context, names: &Names, node: &Marked, starts: f64) -> Option<
             .map(|kind| Fault { at, lasts, kind })
             .collect(),
     )
-}
-
-impl Names<'_> {
-    /// The position of the schedule that a value names.
-    pub(super) fn schedule(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<usize> {
-        let name = cx.text(node, what)?;
-        let found = self
-            .schedules
-            .iter()
-            .position(|schedule| schedule.name == name);
-        if found.is_none() {
-            let names = self
-                .schedules
-                .iter()
-                .map(|schedule: &NamedSchedule| schedule.name.as_str());
-            if !self.unread.contains(&name) {
-                super::staging::unknown(cx, "schedule", node, &name, names);
-            }
-        }
-        found
-    }
 }

@@ -51,7 +51,7 @@ fn one(cx: &mut Context, name: &str, node: &Marked, load: Load) -> Option<(Sched
     };
     let between = match fields.get("between") {
         None => Between::Steps,
-        Some(node) => match scalar_text(node).as_deref() {
+        Some(node) => match scalar_text(node) {
             Some("steps") => Between::Steps,
             Some("straight") => Between::Straight,
             _ => {
@@ -146,7 +146,7 @@ fn time_text(text: &str) -> Option<f64> {
 /// A time of day or a time span, s; true if it was written as a time of day.
 pub(super) fn time(cx: &mut Context, node: &Marked, what: &str) -> Option<(f64, bool)> {
     let text = scalar_text(node);
-    if let Some(time) = text.as_deref().and_then(time_text) {
+    if let Some(time) = text.and_then(time_text) {
         return Some((time, text.is_some_and(|text| text.contains(':'))));
     }
     let message = format!("{what} must be a time, found {}", found(node));

@@ -1,25 +1,16 @@
 //! `staging`: plans, each a list of groups with their rules.
 
 use super::context::{Bound, Context, Fields, found, scalar_text};
+use super::known::Known;
 use super::over_time::daily;
-use super::references::{MOST_COMPARED, listed};
-use super::schedules::NamedSchedule;
-use super::yaml::{Marked, shortened};
-use crate::diagnostic::{Diagnostic, Place, nearest};
-use crate::network::{LineId, Network, NodeId, NodeKind};
+use super::yaml::Marked;
+use crate::diagnostic::{Diagnostic, Place};
+use crate::network::{LineId, Network, NodeKind};
 use crate::part::PumpId;
 use crate::shift::{
     Bands, Call, Exercise, Follow, Group, Hold, HoldStyle, Plan, Rotate, Step, Trip, Window,
 };
 use crate::units::Kind;
-
-/// Names that rules refer to.
-pub(super) struct Names<'n> {
-    pub network: &'n Network,
-    pub schedules: &'n [NamedSchedule],
-    /// Schedules that are in the file and could not be read: nobody who names them is to blame.
-    pub unread: &'n [String],
-}
 
 const GROUP_KEYS: [&str; 17] = [
     "name",
@@ -44,7 +35,7 @@ const GROUP_KEYS: [&str; 17] = [
 /// All plans with their places; `trips` stand in all of them.
 pub(super) fn plans(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     node: &Marked,
     trips: &[Trip],
 ) -> Vec<(Plan, Place)> {
@@ -77,7 +68,7 @@ pub(super) fn plans(
 }
 
 /// One group, and how long after a power failure it may start.
-fn group(cx: &mut Context, names: &Names, node: &Marked, plan: &str) -> Option<(Group, f64)> {
+fn group(cx: &mut Context, names: &Known, node: &Marked, plan: &str) -> Option<(Group, f64)> {
     let what = format!("a group of {plan}");
     let fields = cx.map(node, &what, &GROUP_KEYS)?;
     let pumps_node = cx.required(&fields, "pumps", &what, "[duty.1, duty.2]")?;
@@ -160,7 +151,7 @@ fn group_name(network: &Network, pumps: &[PumpId]) -> String {
     }
 }
 
-fn pumps(cx: &mut Context, names: &Names, node: &Marked, what: &str) -> Option<Vec<PumpId>> {
+fn pumps(cx: &mut Context, names: &Known, node: &Marked, what: &str) -> Option<Vec<PumpId>> {
     let mut found: Vec<PumpId> = Vec::new();
     for item in cx.list(node, what, "[duty.1, duty.2]")? {
         for pump in names.pumps(cx, item, what)? {
@@ -196,7 +187,7 @@ fn rotate(cx: &mut Context, fields: &Fields, what: &str) -> Option<Rotate> {
     let Some(node) = fields.get("rotate") else {
         return Some(Rotate::Never);
     };
-    match scalar_text(node).as_deref() {
+    match scalar_text(node) {
         Some("never") => Some(Rotate::Never),
         Some("each_start") => Some(Rotate::EachStart),
         Some("least_hours") => Some(Rotate::LeastHours),
@@ -210,7 +201,7 @@ fn rotate(cx: &mut Context, fields: &Fields, what: &str) -> Option<Rotate> {
 }
 
 /// `{level: TANK}`, `{pressure: NODE}` or `{flow: LINE}` among the keys of a map, and the kind of its figures.
-fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Option<(Follow, Kind)> {
+fn follow(cx: &mut Context, names: &Known, fields: &Fields, what: &str) -> Option<(Follow, Kind)> {
     let keys = ["level", "pressure", "flow"];
     let given: Vec<&str> = keys.into_iter().filter(|key| fields.has(key)).collect();
     let &[key] = given.as_slice() else {
@@ -252,7 +243,7 @@ fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Optio
 
 fn bands(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     fields: &Fields,
     what: &str,
     pumps: &[PumpId],
@@ -364,7 +355,7 @@ const HOLD_KEYS: [&str; 10] = [
 
 fn hold(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     node: &Marked,
     what: &str,
     pumps: &[PumpId],
@@ -416,7 +407,7 @@ fn hold(
     }
     let style = match fields.get("style") {
         None => HoldStyle::Common,
-        Some(node) => match scalar_text(node).as_deref() {
+        Some(node) => match scalar_text(node) {
             Some("common") => HoldStyle::Common,
             Some("trim") => HoldStyle::Trim,
             _ => {
@@ -455,77 +446,4 @@ fn hold(
         down_at: down_at?,
         down_delay: down_delay?,
     }))
-}
-
-impl Names<'_> {
-    /// The pump, or the pumps of the bank or line, that a value names.
-    pub(super) fn pumps(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<Vec<PumpId>> {
-        let name = cx.text(node, what)?;
-        let network = self.network;
-        if let Some(pump) = network.find_pump(&name) {
-            return Some(vec![pump]);
-        }
-        let lines = self.find_lines(&name);
-        let pumps: Vec<PumpId> = lines
-            .iter()
-            .flat_map(|line| network.line(*line).pumps())
-            .collect();
-        if pumps.is_empty() {
-            let names = network.pumps().iter().map(|pump| pump.name.as_str());
-            unknown(cx, "pump", node, &name, names);
-            return None;
-        }
-        Some(pumps)
-    }
-
-    fn find_lines(&self, name: &str) -> Vec<LineId> {
-        match self.network.banks().iter().find(|bank| bank.name == name) {
-            Some(bank) => bank.lines.clone(),
-            None => self.network.find_line(name).into_iter().collect(),
-        }
-    }
-
-    /// The line, or the lines of the bank, that a value names.
-    pub(super) fn lines(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<Vec<LineId>> {
-        let name = cx.text(node, what)?;
-        let lines = self.find_lines(&name);
-        if lines.is_empty() {
-            let names = self.network.lines().iter().map(|line| line.name.as_str());
-            unknown(cx, "line", node, &name, names);
-            return None;
-        }
-        Some(lines)
-    }
-
-    /// The node that a value names.
-    fn node(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<NodeId> {
-        let name = cx.text(node, what)?;
-        let found = self.network.find_node(&name);
-        if found.is_none() {
-            let names = self.network.nodes().iter().map(|node| node.name.as_str());
-            unknown(cx, "node", node, &name, names);
-        }
-        found
-    }
-}
-
-/// Reports a name that points nowhere.
-pub(super) fn unknown<'a>(
-    cx: &mut Context,
-    what: &str,
-    node: &Marked,
-    name: &str,
-    names: impl Iterator<Item = &'a str>,
-) {
-    let message = format!("no {what} is called `{}`", shortened(name));
-    let mut diagnostic = Diagnostic::error("unknown-name", node.place, message);
-    if !cx.diagnostics.is_full() {
-        let mut names: Vec<&str> = names.take(MOST_COMPARED).collect();
-        names.sort_unstable();
-        diagnostic = diagnostic.help(match nearest(name, names.iter().copied()) {
-            Some(near) => format!("did you mean `{near}`?"),
-            None => listed(what, &names),
-        });
-    }
-    cx.push(diagnostic);
 }
