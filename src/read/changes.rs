@@ -6,6 +6,7 @@
 use std::collections::BTreeMap;
 
 use super::context::{Context, scalar_text};
+use super::edit::{entry, find, get, part_keys, parts_mut, section_mut, set};
 use super::lines::PARTS;
 use super::names::EVERY;
 use super::yaml::{Form, Key, Marked, Scalar};
@@ -21,10 +22,6 @@ pub struct Change {
 impl Change {
     /// From text, as on a command line: `Change::new("duty.1.speed", "90 %")`.
     pub fn new(path: &str, value: &str) -> Self {
-        let meant = match serde_yaml::from_str::<serde_yaml::Value>(value) {
-            Ok(plain) if plain.is_bool() || plain.is_number() => plain,
-            _ => value.into(),
-        };
         let place = Place::default();
         Self {
             path: Key {
@@ -33,10 +30,7 @@ impl Change {
             },
             value: Marked {
                 place,
-                value: Form::Scalar(Scalar {
-                    value: meant,
-                    written: value.to_owned(),
-                }),
+                value: Form::Scalar(Scalar::resolved(value)),
             },
         }
     }
@@ -95,43 +89,6 @@ impl MemberChanges {
     }
 }
 
-/// Keys that a part may be given by a change, and those that it replaces.
-fn part_keys(kind: &str) -> &'static [&'static str] {
-    match kind {
-        "pipe" => &[
-            "length",
-            "bore",
-            "roughness",
-            "material",
-            "c_factor",
-            "friction_factor",
-            "fittings",
-            "k",
-        ],
-        "loss" => &["k", "fittings", "bore"],
-        "valve" => &["k", "kv", "cv", "bore", "open", "opening", "characteristic"],
-        "check_valve" => &["k", "kv", "cv", "bore", "opening", "characteristic"],
-        "equipment" => &["loss", "at"],
-        _ => &[
-            "model",
-            "elevation",
-            "speed",
-            "impeller",
-            "wear",
-            "running",
-            "when_stopped",
-        ],
-    }
-}
-
-/// Keys of which only one can stand; a new one takes the place of the others.
-const EXCLUSIVE: [&[&str]; 4] = [
-    &["roughness", "material", "c_factor", "friction_factor"],
-    &["k", "kv", "cv"],
-    &["elevation", "barometer"],
-    &["area", "diameter"],
-];
-
 impl PartChange {
     fn apply(&self, line: &mut Marked) {
         for (kind, part) in parts_mut(line) {
@@ -186,7 +143,10 @@ fn one(root: &mut Marked, change: &Change, members: &mut MemberChanges) -> Outco
             let Some(section) = entry(root, name, change.path.place) else {
                 return Ok(());
             };
-            if name == "fluid" && (key.name == "water" || get(section, "water").is_some()) {
+            // The water's temperature gives all; a property of another liquid makes it no water.
+            let other = ["density", "viscosity", "vapour_pressure"].contains(&key.name.as_str());
+            let was_water = get(section, "water").is_some();
+            if name == "fluid" && (key.name == "water" || other && was_water) {
                 section.value = Form::Map(Vec::new());
             }
             set(section, &key, &change.value, true);
@@ -343,6 +303,14 @@ fn named(
                 .map(|(name, _)| name.to_owned()),
         );
     }
+    for (_, line) in section_mut(root, "lines") {
+        let pumps = parts_mut(line)
+            .into_iter()
+            .filter(|(kind, _)| *kind == "pump");
+        names.extend(
+            pumps.filter_map(|(_, pump)| Some(scalar_text(get(pump, "name")?)?.to_owned())),
+        );
+    }
     let near = nearest(name, names.iter().map(String::as_str));
     let help = near.map_or(
         "names are those of nodes, lines, pumps and pump models".to_owned(),
@@ -469,100 +437,189 @@ fn line_change(
     Ok(())
 }
 
-fn get<'a>(node: &'a Marked, key: &str) -> Option<&'a Marked> {
-    match &node.value {
-        Form::Map(entries) => entries
-            .iter()
-            .find(|(k, _)| k.name == key)
-            .map(|(_, value)| value),
-        _ => None,
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::network::Network;
+    use crate::read::{Document, System};
+
+    const TEXT: &str = "
+fluid: {water: 20 C}
+nodes:
+  pond: {reservoir: 3 m}
+  well: {tank: {floor: 0 m, depth: 4 m, area: 9 m2, level: 2 m}}
+  header: {point: 1 m}
+  outfall: {outlet: 12 m}
+lines:
+  duty:
+    from: pond
+    to: header
+    count: 2
+    parts:
+      - pipe: {length: 3 m, bore: 200 mm, roughness: 0.1 mm, k: 1}
+      - pump: {model: P200, elevation: 0.5 m}
+      - valve: {k: 2}
+      - check_valve: {k: 1}
+  lift:
+    from: well
+    to: header
+    parts:
+      - pump: {model: P200, elevation: 0.5 m, name: lead}
+      - pump: {model: P200, elevation: 0.5 m, name: booster}
+  main: {from: header, to: outfall, pipe: {length: 100 m, bore: 250 mm, roughness: 0.1 mm}}
+  old: {from: header, to: outfall, pipe: {length: 100 m, bore: 250 mm, c_factor: 110}}
+pump_models:
+  P200: {speed: 1480 rpm, impeller: 320 mm, curve: {flow: [0, 120, 240], head: [42, 38, 22]}}
+";
+
+    fn changed(changes: &[(&str, &str)]) -> Result<System, String> {
+        let document = Document::parse(TEXT.as_bytes()).unwrap();
+        let changes: Vec<Change> = changes.iter().map(|(p, v)| Change::new(p, v)).collect();
+        let none = |_: &str| Err(std::io::Error::other("no files here"));
+        document
+            .system(&changes, &none)
+            .map_err(|problems| problems.render(TEXT, "station.yaml", false))
     }
-}
 
-/// The entry of that name, made if it is not there; none if the node is no map.
-fn entry<'a>(node: &'a mut Marked, name: &str, place: Place) -> Option<&'a mut Marked> {
-    let Form::Map(entries) = &mut node.value else {
-        return None;
-    };
-    let at = entries
-        .iter()
-        .position(|(key, _)| key.name == name)
-        .unwrap_or_else(|| {
-            let key = Key {
-                name: name.to_owned(),
-                place,
-            };
-            entries.push((
-                key,
-                Marked {
-                    place,
-                    value: Form::Map(Vec::new()),
-                },
-            ));
-            entries.len() - 1
-        });
-    entries.get_mut(at).map(|(_, value)| value)
-}
-
-fn set(node: &mut Marked, key: &Key, value: &Marked, exclusive: bool) {
-    let Form::Map(entries) = &mut node.value else {
-        return;
-    };
-    if exclusive
-        && let Some(others) = EXCLUSIVE
-            .iter()
-            .find(|group| group.contains(&key.name.as_str()))
-    {
-        entries.retain(|(k, _)| k.name == key.name || !others.contains(&k.name.as_str()));
+    fn with(path: &str, value: &str) -> System {
+        changed(&[(path, value)]).unwrap_or_else(|problems| panic!("{path}: {problems}"))
     }
-    match entries.iter_mut().find(|(k, _)| k.name == key.name) {
-        Some((_, old)) => *old = value.clone(),
-        None => entries.push((key.clone(), value.clone())),
+
+    fn refused(path: &str, value: &str) -> String {
+        changed(&[(path, value)]).map_or_else(|problems| problems, |_| panic!("{path} was read"))
     }
-}
 
-fn section_mut<'a>(root: &'a mut Marked, section: &str) -> Vec<(&'a str, &'a mut Marked)> {
-    let Form::Map(entries) = &mut root.value else {
-        return Vec::new();
-    };
-    let found = entries.iter_mut().find(|(key, _)| key.name == section);
-    match found.map(|(_, node)| &mut node.value) {
-        Some(Form::Map(entries)) => entries
-            .iter_mut()
-            .map(|(key, node)| (key.name.as_str(), node))
-            .collect(),
-        _ => Vec::new(),
+    fn speeds(system: &System) -> Vec<f64> {
+        let pumps = ["duty.1", "duty.2", "lead", "booster"];
+        let speed = |name| pump(&system.network, name).speed;
+        pumps.map(speed).to_vec()
     }
-}
 
-fn find<'a>(root: &'a mut Marked, section: &str, name: &str) -> Option<&'a mut Marked> {
-    section_mut(root, section)
-        .into_iter()
-        .find(|(found, _)| *found == name)
-        .map(|(_, node)| node)
-}
+    fn pump(network: &Network, name: &str) -> crate::network::PumpSetting {
+        *network.settings().pump(network.find_pump(name).unwrap())
+    }
 
-/// The parts of a line with their kinds, listed or direct.
-fn parts_mut(line: &mut Marked) -> Vec<(&'static str, &mut Marked)> {
-    let Form::Map(entries) = &mut line.value else {
-        return Vec::new();
-    };
-    let mut parts = Vec::new();
-    for (key, value) in entries {
-        if let Some(kind) = PARTS.iter().find(|kind| **kind == key.name) {
-            parts.push((*kind, value));
-        } else if let ("parts", Form::List(items)) = (key.name.as_str(), &mut value.value) {
-            for item in items {
-                let Form::Map(inner) = &mut item.value else {
-                    continue;
-                };
-                for (key, value) in inner {
-                    if let Some(kind) = PARTS.iter().find(|kind| **kind == key.name) {
-                        parts.push((*kind, value));
-                    }
-                }
-            }
+    fn level(system: &System, name: &str) -> f64 {
+        let network = &system.network;
+        network.settings().level(network.find_node(name).unwrap())
+    }
+
+    #[test]
+    fn a_node_is_changed_by_its_name() {
+        assert_eq!(level(&with("well.level", "1.5 m"), "well"), 1.5);
+        assert_eq!(level(&with("well.level", "0.5"), "well"), 0.5);
+        // a reservoir's level is its surface
+        assert_eq!(level(&with("pond.level", "2 m"), "pond"), 2.0);
+        assert_eq!(level(&with("pond.surface", "2 m"), "pond"), 2.0);
+        let drawn = with("header.draw", "36 m3/h").network;
+        let header = drawn.find_node("header").unwrap();
+        assert!((drawn.settings().draw(header) - 0.01).abs() < 1e-15);
+    }
+
+    #[test]
+    fn a_bank_a_member_and_a_named_pump_are_told_apart() {
+        assert_eq!(speeds(&with("duty.speed", "90 %")), [0.9, 0.9, 1.0, 1.0]);
+        assert_eq!(speeds(&with("duty.2.speed", "90 %")), [1.0, 0.9, 1.0, 1.0]);
+        assert_eq!(
+            speeds(&with("duty.pump.speed", "740")),
+            [0.5, 0.5, 1.0, 1.0]
+        );
+        assert_eq!(
+            speeds(&with("duty.2.pump.speed", "740 rpm")),
+            [1.0, 0.5, 1.0, 1.0]
+        );
+        assert_eq!(speeds(&with("booster.speed", "80 %")), [1.0, 1.0, 1.0, 0.8]);
+        assert_eq!(speeds(&with("lift.speed", "80 %")), [1.0, 1.0, 0.8, 0.8]);
+        assert_eq!(speeds(&with("all.speed", "80 %")), [0.8; 4]);
+        assert_eq!(speeds(&with("all.pump.speed", "80 %")), [0.8; 4]);
+        let both = changed(&[("duty.speed", "90 %"), ("duty.1.speed", "75 %")]).unwrap();
+        assert_eq!(speeds(&both), [0.75, 0.9, 1.0, 1.0]);
+    }
+
+    #[test]
+    fn values_are_read_as_in_the_file() {
+        assert!(!pump(&with("lead.running", "false").network, "lead").running);
+        assert_eq!(pump(&with("duty.wear", "5 %").network, "duty.1").wear, 0.05);
+        assert_eq!(pump(&with("duty.wear", "5").network, "duty.1").wear, 0.05);
+        assert_eq!(
+            pump(&with("duty.impeller", "240").network, "duty.2").trim,
+            0.75
+        );
+        assert_eq!(with("duty.count", "3").network.banks()[0].lines.len(), 3);
+        assert_eq!(with("P200.speed", "740 rpm").network.lines().len(), 5);
+        let change = Change::new("duty.1.speed", "90 %");
+        assert_eq!(
+            (change.path(), change.value().as_str()),
+            ("duty.1.speed", "90 %")
+        );
+    }
+
+    #[test]
+    fn the_liquid_and_the_place_are_changed_by_their_sections() {
+        let warm = with("fluid.water", "60 C").network;
+        assert!(warm.fluid().density < 984.0);
+        let other = changed(&[
+            ("fluid.density", "870 kg/m3"),
+            ("fluid.viscosity", "12 cSt"),
+        ]);
+        assert_eq!(other.unwrap().network.fluid().density, 870.0);
+        assert_eq!(
+            with("site.barometer", "0.9 bar").network.barometer(),
+            90_000.0
+        );
+        assert!(with("site.elevation", "1000 m").network.barometer() < 90_000.0);
+    }
+
+    #[test]
+    fn one_way_of_giving_friction_takes_the_place_of_another_where_a_line_is_named() {
+        assert!(changed(&[("main.c_factor", "120")]).is_ok());
+        assert!(changed(&[("old.roughness", "1 mm")]).is_ok());
+        assert!(changed(&[("main.material", "ductile_iron"), ("main.k", "3")]).is_ok());
+        // for all at once, only where the way is the same: a roughness that is too rough spoils none that has a C factor
+        let problems = refused("all.roughness", "40 mm");
+        assert!(
+            problems.contains("of line `main`") && !problems.contains("of line `old`"),
+            "{problems}"
+        );
+    }
+
+    #[test]
+    fn what_leads_nowhere_is_refused_with_a_way_out() {
+        for (path, value, expected) in [
+            ("duti.speed", "1", "nothing is called `duti`"),
+            ("duti.speed", "1", "did you mean `duty`?"),
+            ("boster.speed", "1", "did you mean `booster`?"),
+            ("duty.sped", "1", "did you mean `speed`?"),
+            ("P200.sped", "1", "pump model `P200` has no key `sped`"),
+            ("well.levl", "1", "node `well` has no key `levl`"),
+            ("fluid.waters", "1", "`fluid` has no key `waters`"),
+            (
+                "duty.k",
+                "1",
+                "`duty.check_valve.k` or `duty.pipe.k` or `duty.valve.k`",
+            ),
+            ("duty.3.speed", "1", "`duty.1` to `duty.2`"),
+            ("duty.0.speed", "1", "`duty` has no member 0"),
+            ("lift.1.speed", "1", "write `lift.speed`"),
+            ("duty.loss.k", "1", "`duty` has no part `loss`"),
+            ("all.motor.speed", "1", "no part is called `motor`"),
+            ("all.equipment.at", "1", "changes nothing"),
+            ("duty", "1", "is no path to a value"),
+            ("", "1", "is no path to a value"),
+            (".", "1", "nothing is called ``"),
+            ("duty.", "1", "has nothing called ``"),
+            ("a.b.c.d.e", "1", "nothing is called `a`"),
+            ("duty.pump.speed.x", "1", "is no path to a value"),
+            ("duty.2.speed", "-5 %", "must be above zero, found `-5 %`"),
+            ("well.level", "5 m", "above its depth"),
+            ("main.length", "3 kW", "must be a length, found `3 kW`"),
+            ("main.length", "", "found an empty text"),
+            ("main.length", "{", "must be a length, found `{`"),
+        ] {
+            let problems = refused(path, value);
+            assert!(problems.contains(expected), "{path}: {problems}");
+            // a change from the command line stands at no place of the file
+            assert!(!problems.contains("station.yaml:"), "{path}: {problems}");
         }
     }
-    parts
 }

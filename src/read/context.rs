@@ -1,9 +1,9 @@
 //! Reading single values: each reader says what it wanted, what it found and what would fit.
 
-use serde_yaml::Value;
+use std::fmt::Display;
 
 use super::spec::Placed;
-use super::yaml::{Form, Key, Marked, Scalar, shortened};
+use super::yaml::{Form, Key, Marked, Plain, Scalar, shortened};
 use crate::diagnostic::{Diagnostic, Diagnostics, Place, nearest};
 use crate::units::{
     self, Kind, Quantity, QuantityError, SpeedValue, UnitSet, ViscosityValue, parse_quantity,
@@ -39,7 +39,7 @@ impl Context {
     pub fn reference(
         &mut self,
         node: &Marked,
-        what: &str,
+        what: impl Display + Copy,
         referent: Referent,
     ) -> Option<Placed<String>> {
         let name = Placed {
@@ -116,7 +116,10 @@ impl Context {
         what: &str,
         keys: &[&'a str],
     ) -> Option<Fields<'a>> {
-        let mut fields = self.any_map(node, what, &keys.join("`, `"))?;
+        let mut fields = match &node.value {
+            Form::Map(_) => self.any_map(node, what, "")?,
+            _ => self.any_map(node, what, &keys.join("`, `"))?,
+        };
         for (key, _) in fields.entries {
             if !keys.contains(&key.name.as_str()) {
                 let near = self.unknown_key(key, what, keys);
@@ -162,6 +165,10 @@ impl Context {
 
     /// Reports it; hands back the key that is meant, as far as that can be told.
     fn unknown_key<'k>(&mut self, key: &Key, what: &str, keys: &[&'k str]) -> Option<&'k str> {
+        if self.diagnostics.is_full() {
+            self.error("unknown-key", key.place, "");
+            return None;
+        }
         let near = nearest(&key.name, keys.iter().copied());
         let message = format!("{what} has no key `{}`", shortened(&key.name));
         let help = match near {
@@ -196,7 +203,7 @@ impl Context {
     }
 
     /// A name or other text; numbers serve as names too.
-    pub fn text(&mut self, node: &Marked, what: &str) -> Option<String> {
+    pub fn text(&mut self, node: &Marked, what: impl Display + Copy) -> Option<String> {
         match scalar_text(node) {
             Some(text) if !text.is_empty() => Some(text.to_owned()),
             _ => {
@@ -207,9 +214,9 @@ impl Context {
         }
     }
 
-    pub fn boolean(&mut self, node: &Marked, what: &str) -> Option<bool> {
+    pub fn boolean(&mut self, node: &Marked, what: impl Display + Copy) -> Option<bool> {
         if let Form::Scalar(scalar) = &node.value
-            && let Value::Bool(value) = scalar.value
+            && let Plain::Truth(value) = scalar.value
         {
             return Some(value);
         }
@@ -222,7 +229,7 @@ impl Context {
     pub fn list<'a>(
         &mut self,
         node: &'a Marked,
-        what: &str,
+        what: impl Display + Copy,
         example: &str,
     ) -> Option<&'a [Marked]> {
         if let Form::List(items) = &node.value {
@@ -238,19 +245,16 @@ impl Context {
     pub fn any_quantity(
         &mut self,
         node: &Marked,
-        what: &str,
+        what: impl Display + Copy,
         kind: Option<Kind>,
     ) -> Option<Quantity> {
         let scalar = match &node.value {
-            Form::Scalar(scalar) => Some(&scalar.value),
+            Form::Scalar(scalar) => Some(scalar),
             _ => None,
         };
-        let read = match scalar {
-            Some(Value::Number(number)) => number
-                .as_f64()
-                .ok_or(None)
-                .and_then(|number| Quantity::bare(number).map_err(Some)),
-            Some(Value::String(text)) => parse_quantity(text).map_err(Some),
+        let read = match scalar.map(|scalar| (scalar.value, &scalar.written)) {
+            Some((Plain::Number(number), _)) => Quantity::bare(number).map_err(Some),
+            Some((Plain::Text, text)) => parse_quantity(text).map_err(Some),
             _ => Err(None),
         };
         match read {
@@ -294,7 +298,13 @@ impl Context {
     }
 
     /// A quantity of one kind, in SI.
-    pub fn quantity(&mut self, node: &Marked, what: &str, kind: Kind, bound: Bound) -> Option<f64> {
+    pub fn quantity(
+        &mut self,
+        node: &Marked,
+        what: impl Display + Copy,
+        kind: Kind,
+        bound: Bound,
+    ) -> Option<f64> {
         let quantity = self.any_quantity(node, what, Some(kind))?;
         match quantity.to_si(kind, &self.units) {
             Ok(value) => self.bounded(node, what, value, bound),
@@ -305,7 +315,13 @@ impl Context {
         }
     }
 
-    pub fn wrong_kind(&mut self, node: &Marked, what: &str, why: String, kind: Kind) {
+    pub fn wrong_kind(
+        &mut self,
+        node: &Marked,
+        what: impl Display + Copy,
+        why: String,
+        kind: Kind,
+    ) {
         let message = format!(
             "{what} must be {}, found {}",
             kind.with_article(),
@@ -315,7 +331,12 @@ impl Context {
     }
 
     /// A plain number, such as a loss coefficient.
-    pub fn number(&mut self, node: &Marked, what: &str, bound: Bound) -> Option<f64> {
+    pub fn number(
+        &mut self,
+        node: &Marked,
+        what: impl Display + Copy,
+        bound: Bound,
+    ) -> Option<f64> {
         let quantity = self.any_quantity(node, what, None)?;
         if let Some(unit) = quantity.unit() {
             let message = format!("{what} must be a plain number, found {}", found(node));
@@ -327,7 +348,7 @@ impl Context {
     }
 
     /// A pump's speed.
-    pub fn speed(&mut self, node: &Marked, what: &str) -> Option<SpeedValue> {
+    pub fn speed(&mut self, node: &Marked, what: impl Display + Copy) -> Option<SpeedValue> {
         let quantity = self.any_quantity(node, what, Some(Kind::Speed))?;
         match quantity.to_speed() {
             Ok(speed) => {
@@ -342,7 +363,11 @@ impl Context {
         }
     }
 
-    pub fn viscosity(&mut self, node: &Marked, what: &str) -> Option<ViscosityValue> {
+    pub fn viscosity(
+        &mut self,
+        node: &Marked,
+        what: impl Display + Copy,
+    ) -> Option<ViscosityValue> {
         let quantity = self.any_quantity(node, what, Some(Kind::Viscosity))?;
         match quantity.to_viscosity(&self.units) {
             Ok(value) => {
@@ -356,7 +381,13 @@ impl Context {
         }
     }
 
-    pub fn bounded(&mut self, node: &Marked, what: &str, value: f64, bound: Bound) -> Option<f64> {
+    pub fn bounded(
+        &mut self,
+        node: &Marked,
+        what: impl Display + Copy,
+        value: f64,
+        bound: Bound,
+    ) -> Option<f64> {
         let (fits, wanted) = match bound {
             Bound::Any => (value.is_finite(), "finite"),
             Bound::NotNegative => (value >= 0.0, "zero or more"),
@@ -377,7 +408,8 @@ impl Context {
 pub(super) fn scalar_text(node: &Marked) -> Option<&str> {
     match &node.value {
         Form::Scalar(Scalar {
-            value: Value::Null, ..
+            value: Plain::Nothing,
+            ..
         }) => None,
         Form::Scalar(scalar) => Some(&scalar.written),
         _ => None,
@@ -396,12 +428,21 @@ pub(super) fn found(node: &Marked) -> String {
 pub(super) fn form_name(form: &Form) -> &'static str {
     match form {
         Form::Scalar(scalar) => match scalar.value {
-            Value::Null => "nothing",
-            Value::Bool(_) => "true or false",
-            Value::Number(_) => "a number",
-            _ => "text",
+            Plain::Nothing => "nothing",
+            Plain::Truth(_) => "true or false",
+            Plain::Number(_) => "a number",
+            Plain::Text => "text",
         },
         Form::List(_) => "a list",
         Form::Map(_) => "a map",
+    }
+}
+
+/// Given and read, given and not readable, or not given.
+pub(super) fn transposed<T>(value: Option<Option<T>>) -> Option<Option<T>> {
+    match value {
+        None => Some(None),
+        Some(None) => None,
+        Some(Some(value)) => Some(Some(value)),
     }
 }

@@ -1,14 +1,14 @@
 //! From the typed file to the network: names resolved, banks written out, bores found.
 
-use std::collections::{HashMap, HashSet};
+use std::collections::HashMap;
 
 use super::context::{Context, Referent};
+use super::references::TakenNames;
 use super::spec::{
     FrictionSpec, LineSpec, LossSpec, Names, NeedSpec, NodeKindSpec, PartKindSpec, PartSpec,
     Placed, PumpSpec, Spec, TargetSpec,
 };
-use super::yaml::shortened;
-use crate::diagnostic::{Diagnostic, Place, nearest};
+use crate::diagnostic::{Diagnostic, Place};
 use crate::network::{
     End, LineId, Need, Network, NetworkBuilder, NodeId, NodeKind, PumpSetting, Target, ValveSetting,
 };
@@ -27,21 +27,16 @@ struct Lowering<'c> {
     /// Lines by name; a bank's name leads to all members.
     lines: HashMap<String, Vec<LineId>>,
     models: HashMap<String, usize>,
-    /// Every name that a path can begin with, and where it was given.
-    taken: HashMap<String, (&'static str, Place)>,
-    /// Lines so far, banks written out.
-    count: usize,
+    names: TakenNames,
 }
 
 /// Most lines of a network, banks written out.
 const MOST_LINES: usize = 1_000_000;
 
-/// Most names that a wrong one is compared with.
-const MOST_COMPARED: usize = 20_000;
-
 /// The network and the needs; none if there are errors.
 pub(super) fn lower(cx: &mut Context, spec: Spec) -> Option<(Network, Vec<Need>)> {
     let site = spec.site;
+    let names = TakenNames::of(cx, &spec.names);
     let net = NetworkBuilder::new(site.fluid, site.gravity, site.barometer);
     let mut lowering = Lowering {
         cx,
@@ -50,19 +45,23 @@ pub(super) fn lower(cx: &mut Context, spec: Spec) -> Option<(Network, Vec<Need>)
         nodes: HashMap::new(),
         lines: HashMap::new(),
         models: HashMap::new(),
-        taken: HashMap::new(),
-        count: 0,
+        names,
     };
-    lowering.take_names();
     lowering.nodes();
     lowering.models();
-    lowering.check_references(&[Referent::Node, Referent::PumpModel]);
+    lowering.names.check(
+        lowering.cx,
+        &[Referent::Node, Referent::PumpModel],
+        &lowering.lines,
+    );
     let lines = std::mem::take(&mut lowering.spec.lines);
-    for line in &lines {
-        lowering.line(line);
+    if not_too_many(lowering.cx, &lines) {
+        lines.iter().for_each(|line| lowering.line(line));
     }
-    lowering.check_references(&[Referent::Line]);
-    lowering.unused_nodes(&lines);
+    lowering
+        .names
+        .check(lowering.cx, &[Referent::Line], &lowering.lines);
+    lowering.names.find_unused_nodes(lowering.cx, &lines);
     let needs = std::mem::take(&mut lowering.spec.needs);
     let needs: Vec<Need> = needs
         .iter()
@@ -81,39 +80,6 @@ pub(super) fn lower(cx: &mut Context, spec: Spec) -> Option<(Network, Vec<Need>)
 }
 
 impl Lowering<'_> {
-    /// Takes the names of nodes, lines and pump models, in the order of the text.
-    fn take_names(&mut self) {
-        let Names {
-            nodes,
-            lines,
-            models,
-            ..
-        } = self.spec.names.clone();
-        let mut names = Vec::new();
-        for (what, list) in [("node", nodes), ("line", lines), ("pump model", models)] {
-            names.extend(list.into_iter().flatten().map(|name| (what, name)));
-        }
-        names.sort_by_key(|(_, name)| (name.place.line, name.place.column));
-        for (what, name) in names {
-            self.take(&name.value, name.place, what);
-        }
-    }
-
-    /// Takes a name; reports one that is taken.
-    fn take(&mut self, name: &str, place: Place, what: &'static str) {
-        let Some((other, first)) = self.taken.get(name) else {
-            self.taken.insert(name.to_owned(), (what, place));
-            return;
-        };
-        let message = format!("the name `{name}` of this {what} is taken");
-        let help = format!(
-            "a {other} in line {} of the file has it; nodes, lines, pumps and pump models share their names",
-            first.line
-        );
-        let problem = Diagnostic::error("name-twice", place, message);
-        self.cx.push(problem.help(help));
-    }
-
     fn nodes(&mut self) {
         let mut fixed = false;
         for node in std::mem::take(&mut self.spec.nodes) {
@@ -168,66 +134,6 @@ impl Lowering<'_> {
         }
     }
 
-    /// Reports names that lead nowhere; silent about what is there and could not be read.
-    fn check_references(&mut self, wanted: &[Referent]) {
-        let set = |given: &Option<Vec<Placed<String>>>| {
-            let names = given.as_ref()?.iter().map(|name| name.value.clone());
-            Some(names.collect::<HashSet<String>>())
-        };
-        let names = &self.spec.names;
-        let (nodes, lines, models) = (set(&names.nodes), set(&names.lines), set(&names.models));
-        for (referent, name) in self.cx.references.clone() {
-            let given = match referent {
-                Referent::Node => &nodes,
-                Referent::Line => &lines,
-                Referent::PumpModel => &models,
-            };
-            let Some(given) = given.as_ref().filter(|_| wanted.contains(&referent)) else {
-                continue;
-            };
-            let member_of_unread = || {
-                let bank = name.value.rsplit_once('.').map(|(bank, _)| bank);
-                bank.is_some_and(|bank| given.contains(bank) && !self.lines.contains_key(bank))
-            };
-            let is_line = referent == Referent::Line
-                && (self.lines.contains_key(&name.value) || member_of_unread());
-            if !is_line && !given.contains(&name.value) {
-                self.unknown(referent, &name, given);
-            }
-        }
-    }
-
-    fn unknown(&mut self, referent: Referent, name: &Placed<String>, given: &HashSet<String>) {
-        let (what, section) = match referent {
-            Referent::Node => ("node", "nodes"),
-            Referent::Line => ("line", "lines"),
-            Referent::PumpModel => ("pump model", "pump_models"),
-        };
-        let message = format!("no {what} is called `{}`", shortened(&name.value));
-        let mut diagnostic = Diagnostic::error("unknown-name", name.place, message);
-        if given.len() > MOST_COMPARED {
-            diagnostic = diagnostic.help(format!("the file has {} {what}s", given.len()));
-        } else if !self.cx.diagnostics.is_full() {
-            let mut known: Vec<&str> = given.iter().map(String::as_str).collect();
-            if referent == Referent::Line {
-                known.extend(self.lines.keys().map(String::as_str));
-            }
-            known.sort_unstable();
-            known.dedup();
-            let listed = listed(what, &known);
-            let near = nearest(&name.value, known.iter().copied());
-            diagnostic = diagnostic.help(match (self.taken.get(&name.value), near) {
-                (Some((other, _)), _) => format!("that is a {other}; {listed}"),
-                (None, Some(near)) => format!("did you mean `{near}`?"),
-                (None, None) if known.is_empty() => {
-                    format!("the file has none: give it under `{section}`")
-                }
-                (None, None) => listed,
-            });
-        }
-        self.cx.push(diagnostic);
-    }
-
     fn line(&mut self, line: &LineSpec) {
         let (from, to) = (
             self.nodes.get(&line.from.value).copied(),
@@ -245,17 +151,6 @@ impl Lowering<'_> {
         }
         let named = self.pumps_have_names(line);
         let to = to.filter(|_| named && !is_loop);
-        if self.count + line.count.unwrap_or(1) as usize > MOST_LINES {
-            let message = format!(
-                "with line `{}` there are more than {MOST_LINES} lines",
-                line.name
-            );
-            let help = "every member of a bank is a line";
-            let problem = Diagnostic::error("out-of-range", line.place, message);
-            self.cx.push(problem.help(help));
-            return;
-        }
-        self.count += line.count.unwrap_or(1) as usize;
         let mut ids = Vec::new();
         for member in 1..=line.count.unwrap_or(1) {
             let suffix = line.count.map(|_| member);
@@ -470,7 +365,7 @@ impl Lowering<'_> {
         let name = numbered(base, member);
         let name_place = pump.name.as_ref().map_or(line.place, |name| name.place);
         if pump.name.is_some() && member.is_none_or(|member| member == 1) {
-            self.take(base, name_place, "pump");
+            self.names.take(self.cx, base, name_place, "pump");
         }
         let when_stopped = match &pump.when_stopped {
             Some(loss) => Some(self.loss(loss, parts, at)?),
@@ -507,6 +402,16 @@ impl Lowering<'_> {
                 &pump.model.value,
             )?,
         };
+        if let Some(Placed { place, .. }) = pump.impeller.as_ref().filter(|_| trim > 1.0) {
+            let message = format!(
+                "the impeller of pump `{base}` is larger than the full one of `{}`",
+                pump.model.value
+            );
+            let help =
+                "its figures are then beyond those of the model's curve; check the diameters";
+            let caution = Diagnostic::caution("large-impeller", *place, message);
+            self.cx.push(caution.help(help));
+        }
         let from = from?;
         let elevation = pump.elevation.unwrap_or_else(|| self.net.elevation(from));
         if pump.elevation.is_none() && member.is_none_or(|member| member == 1) {
@@ -554,34 +459,6 @@ impl Lowering<'_> {
         Some(value / full)
     }
 
-    /// Nodes that no line touches.
-    fn unused_nodes(&mut self, lines: &[LineSpec]) {
-        // Lines that could not be read may touch any of them.
-        if self.cx.diagnostics.has_errors() {
-            return;
-        }
-        let used: std::collections::HashSet<&str> = lines
-            .iter()
-            .flat_map(|line| [line.from.value.as_str(), line.to.value.as_str()])
-            .collect();
-        let mut unused: Vec<(&String, &NodeId)> = self
-            .nodes
-            .iter()
-            .filter(|(name, _)| !used.contains(name.as_str()))
-            .collect();
-        unused.sort_by_key(|(_, id)| id.index());
-        for (name, _) in unused {
-            let place = self
-                .taken
-                .get(name)
-                .map_or(Place::default(), |taken| taken.1);
-            let message = format!("no line touches node `{name}`");
-            let help = "join it to others by a line, or remove it";
-            let caution = Diagnostic::caution("unused-node", place, message);
-            self.cx.push(caution.help(help));
-        }
-    }
-
     fn need(&self, need: &NeedSpec) -> Option<Need> {
         let target = match &need.target {
             TargetSpec::FlowInto(name) => Target::FlowInto(*self.nodes.get(&name.value)?),
@@ -597,21 +474,24 @@ impl Lowering<'_> {
     }
 }
 
-fn numbered(name: &str, member: Option<u32>) -> String {
-    member.map_or_else(|| name.to_owned(), |member| format!("{name}.{member}"))
+/// Whether the lines, banks written out, are few enough to be built at all.
+fn not_too_many(cx: &mut Context, lines: &[LineSpec]) -> bool {
+    let mut count = 0;
+    for line in lines {
+        count += line.count.unwrap_or(1) as usize;
+        if count > MOST_LINES {
+            let message = format!(
+                "with line `{}` there are more than {MOST_LINES} lines",
+                line.name
+            );
+            let help = "every member of a bank is a line";
+            cx.push(Diagnostic::error("out-of-range", line.place, message).help(help));
+            return false;
+        }
+    }
+    true
 }
 
-/// What there is, for a message: all names, or the first few.
-fn listed(what: &str, names: &[&str]) -> String {
-    const SHOWN: usize = 8;
-    let shown: Vec<String> = names
-        .iter()
-        .take(SHOWN)
-        .map(|name| format!("`{}`", shortened(name)))
-        .collect();
-    match (names.len(), names.len().saturating_sub(SHOWN)) {
-        (1, _) => format!("the only {what} is {}", shown.join("")),
-        (_, 0) => format!("{what}s are {}", shown.join(", ")),
-        (_, more) => format!("{what}s are {} and {more} more", shown.join(", ")),
-    }
+fn numbered(name: &str, member: Option<u32>) -> String {
+    member.map_or_else(|| name.to_owned(), |member| format!("{name}.{member}"))
 }

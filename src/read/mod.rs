@@ -8,6 +8,8 @@
 
 mod changes;
 mod context;
+mod edit;
+mod known;
 mod lines;
 mod lower;
 mod models;
@@ -15,6 +17,7 @@ mod names;
 mod needs;
 mod nodes;
 mod over_time;
+mod parts;
 mod references;
 mod schedules;
 mod site;
@@ -125,7 +128,8 @@ impl Document {
     pub fn parse(bytes: &[u8]) -> Result<Self, Rejected> {
         match yaml::parse(bytes) {
             Ok((text, root)) => Ok(Self { text, root }),
-            Err((text, diagnostic)) => {
+            Err(refused) => {
+                let (text, diagnostic) = *refused;
                 let mut diagnostics = Diagnostics::default();
                 diagnostics.push(diagnostic);
                 Err(Rejected { text, diagnostics })
@@ -144,9 +148,13 @@ impl Document {
     /// All problems of the file and the changes.
     pub fn system(&self, changes: &[Change], load: Load) -> Result<System, Diagnostics> {
         let mut cx = Context::new();
-        let mut root = self.root.clone();
-        let members = changes::apply(&mut cx, &mut root, changes);
-        let lowered = read(&mut cx, &root, &members, load);
+        let lowered = if changes.is_empty() {
+            read(&mut cx, &self.root, &MemberChanges::default(), load)
+        } else {
+            let mut root = self.root.clone();
+            let members = changes::apply(&mut cx, &mut root, changes);
+            read(&mut cx, &root, &members, load)
+        };
         let Context {
             units,
             mut diagnostics,
@@ -189,12 +197,12 @@ impl Document {
         }
     }
 
-    /// All problems of the file: as it stands, and with the changes of each case.
+    /// All problems of the file: as it stands, and with the changes of each case; over time too if it has a `shift`.
     ///
     /// # Errors
     /// As said.
     pub fn check(&self, load: Load) -> Result<System, Diagnostics> {
-        let (system, mut all) = match self.system(&[], load) {
+        let (system, mut all) = match self.system_over_time(&[], load) {
             Ok(system) => (Some(system), Diagnostics::default()),
             Err(diagnostics) => (None, diagnostics),
         };
@@ -211,7 +219,7 @@ impl Document {
             if all.is_full() {
                 break;
             }
-            if let Err(diagnostics) = self.system(&case.changes, load) {
+            if let Err(diagnostics) = self.system_over_time(&case.changes, load) {
                 all.add_errors(&diagnostics);
             }
         }
@@ -220,6 +228,18 @@ impl Document {
             Some(system) if !all.has_errors() => Ok(system),
             _ => Err(all),
         }
+    }
+
+    fn system_over_time(&self, changes: &[Change], load: Load) -> Result<System, Diagnostics> {
+        let system = self.system(changes, load)?;
+        let has_shift = match &self.root.value {
+            Form::Map(entries) => entries.iter().any(|(key, _)| key.name == "shift"),
+            _ => false,
+        };
+        if has_shift {
+            self.over_time(&system, changes, load)?;
+        }
+        Ok(system)
     }
 }
 

@@ -63,7 +63,7 @@ fn model(
     let impeller = fields.get("impeller").map(|node| {
         cx.quantity(
             node,
-            &format!("`impeller` of {what}"),
+            format_args!("`impeller` of {what}"),
             Kind::Bore,
             Bound::Positive,
         )
@@ -127,6 +127,11 @@ fn motor(cx: &mut Context, node: &Marked, what: &str) -> Option<Motor> {
         Some(node) => {
             let label = format!("`efficiency` of {what}");
             let value = cx.quantity(node, &label, Kind::Percent, Bound::Share)?;
+            if value > 0.0 && value <= 0.01 {
+                let message = format!("{label} is {}", cx.units.format(Kind::Percent, value));
+                let help = "a bare number is in per cent: write 93 for 93 %";
+                cx.push(Diagnostic::caution("efficiency-fraction", node.place, message).help(help));
+            }
             if value == 0.0 {
                 cx.error(
                     "out-of-range",
@@ -290,7 +295,7 @@ fn polynomial(
     let limit = limit.and_then(|node| {
         cx.quantity(
             node,
-            &format!("`flow_limit` of {what}"),
+            format_args!("`flow_limit` of {what}"),
             Kind::Flow,
             Bound::Positive,
         )

@@ -53,7 +53,7 @@ fn need(cx: &mut Context, key: &Key, node: &Marked) -> Option<NeedSpec> {
         "flow_in" => (Kind::Flow, Referent::Line),
         _ => (Kind::Pressure, Referent::Node),
     };
-    let name = cx.reference(at, &format!("`{target}` of {what}"), referent);
+    let name = cx.reference(at, format_args!("`{target}` of {what}"), referent);
     let at_least = limit(cx, &fields, "at_least", &what, kind);
     let at_most = limit(cx, &fields, "at_most", &what, kind);
     let (name, at_least, at_most) = (name?, at_least?, at_most?);
@@ -104,7 +104,7 @@ fn limit(
     match fields.get(key) {
         None => Some(None),
         Some(node) => cx
-            .quantity(node, &format!("`{key}` of {what}"), kind, Bound::Any)
+            .quantity(node, format_args!("`{key}` of {what}"), kind, Bound::Any)
             .map(Some),
     }
 }

@@ -108,7 +108,7 @@ fn one_rate(cx: &mut Context, node: &Marked, what: &str) -> Option<f64> {
 fn length(cx: &mut Context, node: &Marked, what: &str, key: &str) -> Option<f64> {
     cx.quantity(
         node,
-        &format!("`{key}` of {what}"),
+        format_args!("`{key}` of {what}"),
         Kind::Length,
         Bound::Any,
     )
@@ -118,7 +118,7 @@ fn pressure(cx: &mut Context, fields: &Fields, what: &str) -> Option<f64> {
     match fields.get("pressure") {
         Some(node) => cx.quantity(
             node,
-            &format!("`pressure` of {what}"),
+            format_args!("`pressure` of {what}"),
             Kind::Pressure,
             Bound::Any,
         ),

@@ -1,7 +1,7 @@
 //! `shift`, `faults`, `tariff` and what flows in and out of tanks and points: everything over time but the plans.
 
 use super::context::{Bound, Context, Fields};
-use super::references::Names;
+use super::known::Known;
 use super::schedules::{schedules, time};
 use super::staging::plans;
 use super::tanks;
@@ -40,10 +40,14 @@ impl Document {
         load: Load,
     ) -> Result<OverTime, Diagnostics> {
         let mut cx = Context::new();
-        let mut root = self.root.clone();
-        changes::apply(&mut cx, &mut root, changes);
         cx.units = system.units.clone();
-        let read = over_time(&mut cx, &root, &system.network, load);
+        let read = if changes.is_empty() {
+            over_time(&mut cx, &self.root, &system.network, load)
+        } else {
+            let mut root = self.root.clone();
+            changes::apply(&mut cx, &mut root, changes);
+            over_time(&mut cx, &root, &system.network, load)
+        };
         let mut diagnostics = cx.diagnostics;
         diagnostics.sort();
         match read {
@@ -58,9 +62,14 @@ fn over_time(cx: &mut Context, root: &Marked, network: &Network, load: Load) -> 
     let named = fields
         .get("schedules")
         .map_or_else(Vec::new, |node| schedules(cx, node, load));
-    let names = Names {
+    let given = match fields.get("schedules").map(|node| &node.value) {
+        Some(Form::Map(entries)) => entries.iter().map(|(key, _)| key.name.clone()).collect(),
+        _ => Vec::new(),
+    };
+    let names = Known {
         network,
         schedules: &named,
+        unread: &given,
     };
     let mut shift = Shift::default();
     match cx.required(
@@ -95,17 +104,15 @@ fn over_time(cx: &mut Context, root: &Marked, network: &Network, load: Load) -> 
         return None;
     }
     // What is left was not seen where it stands.
-    if let Err(why) = shift.check(network) {
-        cx.push(Diagnostic::whole("shift", why.to_string()));
-    }
+    let mut all = shift.check(network);
     for (plan, place) in &plans {
         if let Err(why) = plan.check(network, &shift) {
             let message = format!("plan `{}`: {why}", plan.name);
-            cx.push(
-                Diagnostic::error("staging", *place, message)
-                    .help("each pump belongs to one group, with as many pumps as steps"),
-            );
+            cx.error("staging", *place, message);
         }
+    }
+    if let Err(why) = std::mem::replace(&mut all, Ok(())) {
+        cx.push(Diagnostic::whole("shift", why.to_string()));
     }
     Some(OverTime {
         shift,
@@ -136,7 +143,7 @@ fn hours(cx: &mut Context, node: &Marked, shift: &mut Shift) -> Option<()> {
 /// A tank with its flows, or what is drawn at a point by a schedule.
 fn flows_of_node(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     name: &str,
     node: &Marked,
     shift: &mut Shift,
@@ -202,7 +209,7 @@ fn pumps_from(network: &Network, node: NodeId) -> Vec<crate::part::PumpId> {
 /// A flow, `{rate, times}`, or a list of these.
 fn flows(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     fields: &Fields,
     key: &str,
     what: &str,
@@ -220,7 +227,7 @@ fn flows(
     }
 }
 
-fn flow(cx: &mut Context, names: &Names, node: &Marked, what: &str) -> Option<Varying> {
+fn flow(cx: &mut Context, names: &Known, node: &Marked, what: &str) -> Option<Varying> {
     let Form::Map(_) = node.value else {
         let rate = cx.quantity(node, what, Kind::Flow, Bound::Any)?;
         return Some(Varying::steady(rate));
@@ -257,7 +264,8 @@ pub(super) fn daily(cx: &mut Context, fields: &Fields, what: &str) -> Option<Dai
     let (from, to) = (from?.0, to?.0);
     if from > DAY || to > DAY || from == to {
         let message = format!("{what} is no part of a day");
-        cx.push(Diagnostic::error("out-of-range", fields.place, message).help("`from` and `to` are two different times of one day, such as \"17:00\" and \"21:00\""));
+        let help = "`from` and `to` are two different times from \"00:00\" to \"24:00\"";
+        cx.push(Diagnostic::error("out-of-range", fields.place, message).help(help));
         return None;
     }
     Some(Daily { from, to })
@@ -304,7 +312,7 @@ const FAULT_KEYS: [&str; 7] = [
     "fouls",
 ];
 
-fn faults(cx: &mut Context, names: &Names, node: &Marked, shift: &mut Shift) -> Option<()> {
+fn faults(cx: &mut Context, names: &Known, node: &Marked, shift: &mut Shift) -> Option<()> {
     let example = "[{at: \"10:00\", trip: PUMP, lasts: 2 h}]";
     for item in cx.list(node, "`faults`", example)? {
         if let Some(fault) = fault(cx, names, item, shift.starts) {
@@ -315,7 +323,7 @@ fn faults(cx: &mut Context, names: &Names, node: &Marked, shift: &mut Shift) -> 
 }
 
 /// One entry; a bank's name gives one fault for each member.
-fn fault(cx: &mut Context, names: &Names, node: &Marked, starts: f64) -> Option<Vec<Fault>> {
+fn fault(cx: &mut Context, names: &Known, node: &Marked, starts: f64) -> Option<Vec<Fault>> {
     let what = "a fault";
     let fields = cx.map(node, what, &FAULT_KEYS)?;
     let at = cx.required(&fields, "at", what, "\"10:00\"")?;
@@ -386,10 +394,7 @@ fn fault(cx: &mut Context, names: &Names, node: &Marked, starts: f64) -> Option<
                     "line `{}` has no check valve to stick",
                     names.network.line(*bare).name
                 );
-                cx.push(
-                    Diagnostic::error("no-check-valve", node.place, message)
-                        .help("name a line with a `check_valve` among its parts"),
-                );
+                cx.error("no-check-valve", node.place, message);
                 return None;
             }
             lines

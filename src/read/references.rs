@@ -1,114 +1,190 @@
-//! Names in the sections over time, and what they stand for in the network.
+//! Names given and names referred to: each given once, and none that leads nowhere.
+//!
+//! What could not be read for another reason still has its name: those who use it are not to blame.
 
-use super::context::Context;
-use super::schedules::NamedSchedule;
-use super::yaml::Marked;
-use crate::diagnostic::{Diagnostic, nearest};
-use crate::network::{LineId, Network, NodeId};
-use crate::part::PumpId;
+use std::collections::{HashMap, HashSet};
 
-/// Names that rules refer to.
-pub(super) struct Names<'n> {
-    pub network: &'n Network,
-    pub schedules: &'n [NamedSchedule],
+use super::context::{Context, Referent};
+use super::spec::{LineSpec, Names, Placed};
+use super::yaml::shortened;
+use crate::diagnostic::{Diagnostic, Place, nearest};
+use crate::network::LineId;
+
+/// Most names that a wrong one is compared with.
+pub(super) const MOST_COMPARED: usize = 20_000;
+
+/// Every name that a path can begin with.
+pub(super) struct TakenNames {
+    /// What bears it and where that stands.
+    taken: HashMap<String, (&'static str, Place)>,
+    /// Names of several things.
+    doubled: HashSet<String>,
+    /// Sections that could not be read, so that nothing is known of their names.
+    unread: Vec<Referent>,
 }
 
-impl Names<'_> {
-    /// The position of the schedule that a value names.
-    pub(super) fn schedule(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<usize> {
-        let name = cx.text(node, what)?;
-        let found = self
-            .schedules
-            .iter()
-            .position(|schedule| schedule.name == name);
-        if found.is_none() {
-            let names = self
-                .schedules
-                .iter()
-                .map(|schedule: &NamedSchedule| schedule.name.as_str());
-            unknown(cx, "schedule", node, &name, names);
+impl Referent {
+    fn what(self) -> &'static str {
+        match self {
+            Self::Node => "node",
+            Self::Line => "line",
+            Self::PumpModel => "pump model",
         }
-        found
+    }
+}
+
+impl TakenNames {
+    /// Takes the names of nodes, lines and pump models, in the order of the text; reports those given twice.
+    pub fn of(cx: &mut Context, names: &Names) -> Self {
+        let mut taken = Self {
+            taken: HashMap::new(),
+            doubled: HashSet::new(),
+            unread: Vec::new(),
+        };
+        let mut all = Vec::new();
+        for (referent, list) in [
+            (Referent::Node, &names.nodes),
+            (Referent::Line, &names.lines),
+            (Referent::PumpModel, &names.models),
+        ] {
+            match list {
+                Some(list) => all.extend(list.iter().map(|name| (referent, name))),
+                None => taken.unread.push(referent),
+            }
+        }
+        all.sort_by_key(|(_, name)| (name.place.line, name.place.column));
+        for (referent, name) in all {
+            taken.take(cx, &name.value, name.place, referent.what());
+        }
+        taken
     }
 
-    /// The pump, or the pumps of the bank or line, that a value names.
-    pub(super) fn pumps(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<Vec<PumpId>> {
-        let name = cx.text(node, what)?;
-        let network = self.network;
-        if let Some(pump) = network.find_pump(&name) {
-            return Some(vec![pump]);
+    /// Takes a name; reports one that is taken.
+    pub fn take(&mut self, cx: &mut Context, name: &str, place: Place, what: &'static str) {
+        let Some((other, first)) = self.taken.get(name) else {
+            self.taken.insert(name.to_owned(), (what, place));
+            return;
+        };
+        let message = format!("the name `{name}` of this {what} is taken");
+        let help = format!(
+            "a {other} in line {} of the file has it; nodes, lines, pumps and pump models share their names",
+            first.line
+        );
+        cx.push(Diagnostic::error("name-twice", place, message).help(help));
+        self.doubled.insert(name.to_owned());
+    }
+
+    /// Reports names of the wanted kinds that lead nowhere. `lines` are the lines that could be built, members and banks.
+    pub fn check(
+        &self,
+        cx: &mut Context,
+        wanted: &[Referent],
+        lines: &HashMap<String, Vec<LineId>>,
+    ) {
+        let references = std::mem::take(&mut cx.references);
+        for (referent, name) in &references {
+            if !wanted.contains(referent) || self.unread.contains(referent) {
+                continue;
+            }
+            let is_given = |name: &str| {
+                let taken = self.taken.get(name);
+                taken.is_some_and(|(what, _)| *what == referent.what())
+                    || self.doubled.contains(name)
+            };
+            let member_of_unbuilt = || {
+                let bank = name.value.rsplit_once('.').map(|(bank, _)| bank);
+                bank.is_some_and(|bank| is_given(bank) && !lines.contains_key(bank))
+            };
+            let is_line = *referent == Referent::Line
+                && (lines.contains_key(&name.value) || member_of_unbuilt());
+            if !is_line && !is_given(&name.value) {
+                self.unknown(cx, *referent, name, lines);
+            }
         }
-        let lines = self.find_lines(&name);
-        let pumps: Vec<PumpId> = lines
+        cx.references = references;
+    }
+
+    fn unknown(
+        &self,
+        cx: &mut Context,
+        referent: Referent,
+        name: &Placed<String>,
+        lines: &HashMap<String, Vec<LineId>>,
+    ) {
+        let what = referent.what();
+        let message = format!("no {what} is called `{}`", shortened(&name.value));
+        let mut diagnostic = Diagnostic::error("unknown-name", name.place, message);
+        if !cx.diagnostics.is_full() {
+            diagnostic = diagnostic.help(self.way_out(referent, name, lines));
+        }
+        cx.push(diagnostic);
+    }
+
+    /// The nearest name, or the names there are.
+    fn way_out(
+        &self,
+        referent: Referent,
+        name: &Placed<String>,
+        lines: &HashMap<String, Vec<LineId>>,
+    ) -> String {
+        let what = referent.what();
+        let given = self.taken.iter();
+        let given = given.filter(|(_, (kind, _))| *kind == what);
+        let mut known: Vec<&str> = given.map(|(name, _)| name.as_str()).collect();
+        if referent == Referent::Line {
+            known.extend(lines.keys().map(String::as_str));
+        }
+        if known.len() > MOST_COMPARED {
+            return format!("the file has {} {what}s", known.len());
+        }
+        known.sort_unstable();
+        known.dedup();
+        let near = nearest(&name.value, known.iter().copied());
+        match (self.taken.get(&name.value), near) {
+            (Some((other, _)), _) => format!("that is a {other}; {}", listed(what, &known)),
+            (None, Some(near)) => format!("did you mean `{near}`?"),
+            (None, None) => listed(what, &known),
+        }
+    }
+
+    /// Nodes that no line touches.
+    pub fn find_unused_nodes(&self, cx: &mut Context, lines: &[LineSpec]) {
+        // Lines that could not be read may touch any of them.
+        if cx.diagnostics.has_errors() {
+            return;
+        }
+        let ends = lines.iter().flat_map(|line| [&line.from, &line.to]);
+        let used: HashSet<&str> = ends.map(|end| end.value.as_str()).collect();
+        let mut unused: Vec<(&String, Place)> = self
+            .taken
             .iter()
-            .flat_map(|line| network.line(*line).pumps())
+            .filter(|(name, (what, _))| *what == "node" && !used.contains(name.as_str()))
+            .map(|(name, (_, place))| (name, *place))
             .collect();
-        if pumps.is_empty() {
-            let names = network.pumps().iter().map(|pump| pump.name.as_str());
-            unknown(cx, "pump", node, &name, names);
-            return None;
+        unused.sort_by_key(|(_, place)| (place.line, place.column));
+        for (name, place) in unused {
+            let message = format!("no line touches node `{name}`");
+            let help = "join it to others by a line, or remove it";
+            cx.push(Diagnostic::caution("unused-node", place, message).help(help));
         }
-        Some(pumps)
-    }
-
-    fn find_lines(&self, name: &str) -> Vec<LineId> {
-        match self.network.banks().iter().find(|bank| bank.name == name) {
-            Some(bank) => bank.lines.clone(),
-            None => self.network.find_line(name).into_iter().collect(),
-        }
-    }
-
-    /// The line, or the lines of the bank, that a value names.
-    pub(super) fn lines(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<Vec<LineId>> {
-        let name = cx.text(node, what)?;
-        let lines = self.find_lines(&name);
-        if lines.is_empty() {
-            let names = self.network.lines().iter().map(|line| line.name.as_str());
-            unknown(cx, "line", node, &name, names);
-            return None;
-        }
-        Some(lines)
-    }
-
-    /// The node that a value names.
-    pub(super) fn node(&self, cx: &mut Context, node: &Marked, what: &str) -> Option<NodeId> {
-        let name = cx.text(node, what)?;
-        let found = self.network.find_node(&name);
-        if found.is_none() {
-            let names = self.network.nodes().iter().map(|node| node.name.as_str());
-            unknown(cx, "node", node, &name, names);
-        }
-        found
     }
 }
 
-/// Reports a name that points nowhere.
-fn unknown<'a>(
-    cx: &mut Context,
-    what: &str,
-    node: &Marked,
-    name: &str,
-    names: impl Iterator<Item = &'a str>,
-) {
-    let mut names: Vec<&str> = names.collect();
-    names.sort_unstable();
-    let mut diagnostic = Diagnostic::error(
-        "unknown-name",
-        node.place,
-        format!("no {what} is called `{name}`"),
-    );
-    diagnostic.help = match nearest(name, names.iter().copied()) {
-        Some(near) => Some(format!("did you mean `{near}`?")),
-        None if names.is_empty() => Some(format!("the file has no {what}")),
-        None => Some(format!(
-            "there are `{}`",
-            names
-                .iter()
-                .take(8)
-                .copied()
-                .collect::<Vec<_>>()
-                .join("`, `")
-        )),
-    };
-    cx.push(diagnostic);
+/// What there is, for a message: all names, or the first few.
+pub(super) fn listed(what: &str, names: &[&str]) -> String {
+    const SHOWN: usize = 8;
+    let shown: Vec<String> = names
+        .iter()
+        .take(SHOWN)
+        .map(|name| format!("`{}`", shortened(name)))
+        .collect();
+    match (names.len(), names.len().saturating_sub(SHOWN)) {
+        (0, _) => format!(
+            "the file has no {what}; give one under `{}s`",
+            what.replace(' ', "_")
+        ),
+        (1, _) => format!("the only {what} is {}", shown.join("")),
+        (_, 0) => format!("{what}s are {}", shown.join(", ")),
+        (_, more) => format!("{what}s are {} and {more} more", shown.join(", ")),
+    }
 }

@@ -68,14 +68,9 @@ fn one(cx: &mut Context, name: &str, node: &Marked, load: Load) -> Option<(Sched
         (Some(node), None) => (points(cx, &what, node)?, false),
         (None, Some(node)) => from_file(cx, &what, node, load)?,
         (Some(_), Some(node)) => {
-            cx.push(
-                Diagnostic::error(
-                    "both-keys",
-                    node.place,
-                    format!("give `points` or `file` of {what}, not both"),
-                )
-                .help("keep the one that counts"),
-            );
+            let message = format!("give `points` or `file` of {what}, not both");
+            let help = "keep one of the two";
+            cx.push(Diagnostic::error("both-keys", node.place, message).help(help));
             return None;
         }
         (None, None) => {
@@ -86,14 +81,9 @@ fn one(cx: &mut Context, name: &str, node: &Marked, load: Load) -> Option<(Sched
     match Schedule::new(points, between, repeat) {
         Ok(schedule) => Some((schedule, is_flow)),
         Err(why) => {
-            cx.push(
-                Diagnostic::error(
-                    "schedule",
-                    node.place,
-                    format!("{what} cannot be used: {why}"),
-                )
-                .help("points stand in order of time, all within one repetition"),
-            );
+            let message = format!("{what} cannot be used: {why}");
+            let help = "its points stand in the order of time, each time once, and inside `repeat`";
+            cx.push(Diagnostic::error("schedule", node.place, message).help(help));
             None
         }
     }

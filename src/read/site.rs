@@ -26,7 +26,7 @@ pub(super) fn units(cx: &mut Context, node: &Marked) {
                 if key.name == "base" || !keys.contains(&key.name.as_str()) {
                     continue;
                 }
-                let Some(unit) = cx.text(value, &format!("the unit of `{}`", key.name)) else {
+                let Some(unit) = cx.text(value, format_args!("the unit of `{}`", key.name)) else {
                     continue;
                 };
                 if let Some(Err(why)) = set.as_mut().map(|set| set.set(&key.name, &unit)) {

@@ -1,8 +1,8 @@
 //! `staging`: plans, each a list of groups with their rules.
 
 use super::context::{Bound, Context, Fields, found, scalar_text};
+use super::known::Known;
 use super::over_time::daily;
-use super::references::Names;
 use super::yaml::Marked;
 use crate::diagnostic::{Diagnostic, Place};
 use crate::network::{LineId, Network, NodeKind};
@@ -35,7 +35,7 @@ const GROUP_KEYS: [&str; 17] = [
 /// All plans with their places; `trips` stand in all of them.
 pub(super) fn plans(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     node: &Marked,
     trips: &[Trip],
 ) -> Vec<(Plan, Place)> {
@@ -68,7 +68,7 @@ pub(super) fn plans(
 }
 
 /// One group, and how long after a power failure it may start.
-fn group(cx: &mut Context, names: &Names, node: &Marked, plan: &str) -> Option<(Group, f64)> {
+fn group(cx: &mut Context, names: &Known, node: &Marked, plan: &str) -> Option<(Group, f64)> {
     let what = format!("a group of {plan}");
     let fields = cx.map(node, &what, &GROUP_KEYS)?;
     let pumps_node = cx.required(&fields, "pumps", &what, "[duty.1, duty.2]")?;
@@ -97,10 +97,7 @@ fn group(cx: &mut Context, names: &Names, node: &Marked, plan: &str) -> Option<(
         for key in ["steps", "windows"] {
             if fields.has(key) {
                 let message = format!("`{key}` of {what} goes with `follow` only");
-                cx.push(
-                    Diagnostic::error("stray-key", fields.key_place(key), message)
-                        .help("remove it, or give `follow`"),
-                );
+                cx.error("stray-key", fields.key_place(key), message);
             }
         }
     }
@@ -154,16 +151,14 @@ fn group_name(network: &Network, pumps: &[PumpId]) -> String {
     }
 }
 
-fn pumps(cx: &mut Context, names: &Names, node: &Marked, what: &str) -> Option<Vec<PumpId>> {
+fn pumps(cx: &mut Context, names: &Known, node: &Marked, what: &str) -> Option<Vec<PumpId>> {
     let mut found: Vec<PumpId> = Vec::new();
     for item in cx.list(node, what, "[duty.1, duty.2]")? {
         for pump in names.pumps(cx, item, what)? {
             if found.contains(&pump) {
                 let message = format!("{what} name `{}` twice", names.network.pump(pump).name);
-                cx.push(
-                    Diagnostic::error("name-twice", item.place, message)
-                        .help("a bank's name stands for all its pumps; name each pump once"),
-                );
+                let help = "a bank's name stands for all its pumps; name each once";
+                cx.push(Diagnostic::error("name-twice", item.place, message).help(help));
                 return None;
             }
             found.push(pump);
@@ -206,7 +201,7 @@ fn rotate(cx: &mut Context, fields: &Fields, what: &str) -> Option<Rotate> {
 }
 
 /// `{level: TANK}`, `{pressure: NODE}` or `{flow: LINE}` among the keys of a map, and the kind of its figures.
-fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Option<(Follow, Kind)> {
+fn follow(cx: &mut Context, names: &Known, fields: &Fields, what: &str) -> Option<(Follow, Kind)> {
     let keys = ["level", "pressure", "flow"];
     let given: Vec<&str> = keys.into_iter().filter(|key| fields.has(key)).collect();
     let &[key] = given.as_slice() else {
@@ -225,10 +220,8 @@ fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Optio
                     "`{}` is no tank and has no level to follow",
                     names.network.node(tank).name
                 );
-                cx.push(
-                    Diagnostic::error("no-tank", node.place, message)
-                        .help("a level is that of a tank; `pressure: NODE` follows a pressure"),
-                );
+                let help = "follow a tank, or a `pressure` or `flow` elsewhere";
+                cx.push(Diagnostic::error("no-tank", node.place, message).help(help));
                 return None;
             }
             Some((Follow::Level(tank), Kind::Length))
@@ -241,10 +234,7 @@ fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Optio
             [line] => Some((Follow::Flow(*line), Kind::Flow)),
             _ => {
                 let message = format!("{named} is a bank; one line can be followed");
-                cx.push(
-                    Diagnostic::error("wrong-form", node.place, message)
-                        .help("name one member, such as `duty.1`, or the line they feed"),
-                );
+                cx.error("wrong-form", node.place, message);
                 None
             }
         },
@@ -253,7 +243,7 @@ fn follow(cx: &mut Context, names: &Names, fields: &Fields, what: &str) -> Optio
 
 fn bands(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     fields: &Fields,
     what: &str,
     pumps: &[PumpId],
@@ -285,10 +275,7 @@ fn bands(
             let own = self::steps(cx, node, &format!("`steps` of {what}"), kind)?;
             if own.len() != steps.len() {
                 let message = format!("{what} has {} steps, the group {}", own.len(), steps.len());
-                cx.push(
-                    Diagnostic::error("steps", node.place, message)
-                        .help("a window changes the levels of every step, not their number"),
-                );
+                cx.error("steps", node.place, message);
                 return None;
             }
             windows.push(Window { daily, steps: own });
@@ -317,10 +304,7 @@ fn steps(cx: &mut Context, node: &Marked, what: &str, kind: Kind) -> Option<Vec<
     let mut steps: Vec<Step> = Vec::new();
     let items = cx.list(node, what, "[{start: 2.6 m, stop: 1.0 m}]")?;
     if items.is_empty() {
-        cx.push(
-            Diagnostic::error("wrong-form", node.place, format!("{what} are none"))
-                .help("write at least one `{start: 2.6 m, stop: 1.0 m}`"),
-        );
+        cx.error("wrong-form", node.place, format!("{what} are none"));
         return None;
     }
     for item in items {
@@ -371,7 +355,7 @@ const HOLD_KEYS: [&str; 10] = [
 
 fn hold(
     cx: &mut Context,
-    names: &Names,
+    names: &Known,
     node: &Marked,
     what: &str,
     pumps: &[PumpId],
@@ -414,13 +398,10 @@ fn hold(
         None => (0.5, 1.0),
     };
     if speeds.0 > speeds.1 {
-        cx.push(
-            Diagnostic::error(
-                "out-of-range",
-                fields.key_place("speed"),
-                format!("{what} has a least speed above its most"),
-            )
-            .help("write it for example as `{least: 60 %, most: 100 %}`"),
+        cx.error(
+            "out-of-range",
+            fields.key_place("speed"),
+            format!("{what} has a least speed above its most"),
         );
         return None;
     }

@@ -94,10 +94,7 @@ pub(super) fn tank(cx: &mut Context, what: &str, fields: &Fields) -> Option<Tank
         (Some(trip), Some(reset)) if reset > trip => Some((trip, reset)),
         (Some(_), Some(_)) => {
             let message = format!("`reset` of {what} must lie above its `trip`");
-            cx.push(
-                Diagnostic::error("out-of-range", fields.key_place("reset"), message)
-                    .help("a trip lets go higher than it trips, or it would chatter"),
-            );
+            cx.error("out-of-range", fields.key_place("reset"), message);
             return None;
         }
         (Some(_), None) => {
@@ -136,7 +133,7 @@ fn above(
     );
     cx.push(
         Diagnostic::error("out-of-range", place, message)
-            .help("a level is measured above the floor"),
+            .help("levels are measured above the floor"),
     );
 }
 
@@ -145,11 +142,9 @@ fn shape(cx: &mut Context, what: &str, fields: &Fields) -> Option<Shape> {
     let &[key] = given.as_slice() else {
         if let Some(second) = given.get(1) {
             let message = format!("give `{}` of {what}, not both", given.join("` or `"));
-            cx.push(
-                Diagnostic::error("both-keys", fields.get(second)?.place, message)
-                    .help(shape_help(second)),
-            );
-        } else {
+            let help = "one of them says what shape it has";
+            cx.push(Diagnostic::error("both-keys", fields.key_place(second), message).help(help));
+        } else if !SHAPES.iter().any(|key| fields.is_misspelt(key)) {
             let message = format!("{what} needs `area` or `diameter`");
             let help = "add for example `area: 40 m2`, `diameter: 6 m` for a round one, `lying: {diameter: 2 m, length: 6 m}` for a \
                         cylinder on its side, or `volumes: {level: [..], volume: [..]}`";
@@ -190,15 +185,6 @@ fn shape(cx: &mut Context, what: &str, fields: &Fields) -> Option<Shape> {
     }
 }
 
-/// What the second of two shapes is for.
-fn shape_help(key: &str) -> &'static str {
-    match key {
-        "diameter" => "`diameter` is for a round tank; it makes the area",
-        "lying" => "`lying` is for a cylinder on its side",
-        _ => "`volumes` gives the volume at each level, whatever the shape",
-    }
-}
-
 fn table(cx: &mut Context, node: &Marked, name: &str) -> Option<Shape> {
     let fields = cx.map(node, name, &["level", "volume"])?;
     let mut column = |key: &str, kind| {
@@ -221,7 +207,7 @@ fn table(cx: &mut Context, node: &Marked, name: &str) -> Option<Shape> {
     match shape.check() {
         Ok(()) => Some(shape),
         Err(why) => {
-            cx.push(Diagnostic::error("table", node.place, format!("{name} cannot be used: {why}")).help("volumes stand over levels above the floor: `{level: [0, 1, 2], volume: [0, 3, 10]}`"));
+            cx.error("table", node.place, format!("{name} cannot be used: {why}"));
             None
         }
     }

@@ -4,10 +4,11 @@
 //! (keys given twice, depth, aliases that multiply) and notes the places; the second resolves the scalars. The two trees have
 //! the same shape and are put together.
 
-use std::collections::HashMap;
+use std::collections::{HashMap, HashSet};
+use std::fmt;
 
 use saphyr_parser::{Event, Parser, Span};
-use serde_yaml::Value;
+use serde::de::{DeserializeSeed, Deserializer, Error, IgnoredAny, MapAccess, SeqAccess, Visitor};
 
 use crate::diagnostic::{Diagnostic, Place};
 
@@ -34,18 +35,46 @@ pub enum Form {
 /// A scalar as it is meant and as it is written.
 #[derive(Clone, Debug)]
 pub struct Scalar {
-    /// Resolved: nothing, true or false, a number or text.
-    pub value: Value,
+    /// What it is meant to be.
+    pub value: Plain,
     /// As written, without quotes: `1e3` and `1000` are one number but two names.
     pub written: String,
+}
+
+/// What a scalar is meant to be.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Plain {
+    /// Nothing.
+    Nothing,
+    /// `true` or `false`.
+    Truth(bool),
+    /// A number; it may be infinite or none.
+    Number(f64),
+    /// Text: what is written.
+    Text,
 }
 
 impl Scalar {
     /// Text.
     pub fn text(text: &str) -> Self {
         Self {
-            value: text.into(),
+            value: Plain::Text,
             written: text.to_owned(),
+        }
+    }
+
+    /// As YAML takes it, if that is a truth or a number; else text.
+    pub fn resolved(text: &str) -> Self {
+        let value = match serde_yaml::from_str::<serde_yaml::Value>(text) {
+            Ok(serde_yaml::Value::Bool(truth)) => Plain::Truth(truth),
+            Ok(serde_yaml::Value::Number(number)) => {
+                number.as_f64().map_or(Plain::Text, Plain::Number)
+            }
+            _ => Plain::Text,
+        };
+        Self {
+            value,
+            ..Self::text(text)
         }
     }
 }
@@ -73,8 +102,8 @@ const MOST_VALUES: usize = 4_000_000;
 ///
 /// # Errors
 /// The first thing that makes it unreadable.
-pub fn parse(bytes: &[u8]) -> Result<(String, Marked), (String, Diagnostic)> {
-    let fail = |text: &str, diagnostic| Err((text.to_owned(), diagnostic));
+pub fn parse(bytes: &[u8]) -> Result<(String, Marked), Box<(String, Diagnostic)>> {
+    let fail = |text: &str, diagnostic| Err(Box::new((text.to_owned(), diagnostic)));
     if bytes.len() > LARGEST {
         let message = format!(
             "the file has {} bytes; at most {LARGEST} are read",
@@ -99,26 +128,17 @@ pub fn parse(bytes: &[u8]) -> Result<(String, Marked), (String, Diagnostic)> {
         Ok(marks) => marks,
         Err(diagnostic) => return fail(text, diagnostic),
     };
-    let value: Value = match serde_yaml::from_str(text) {
-        Ok(value) => value,
+    match marks.deserialize(serde_yaml::Deserializer::from_str(text)) {
+        Ok(tree) => Ok((text.to_owned(), tree)),
         Err(error) => {
             let place = error
                 .location()
                 .map_or(Place::default(), |at| spot(at.line(), at.column()));
             let message = format!("not readable as YAML: {error}");
-            return fail(text, Diagnostic::error("yaml", place, message).help(HINT));
+            fail(text, Diagnostic::error("yaml", place, message).help(HINT))
         }
-    };
-    match join(marks, value) {
-        Some(tree) => Ok((text.to_owned(), tree)),
-        None => fail(
-            text,
-            Diagnostic::whole("yaml", "this YAML is too unusual to be read safely")
-                .help("write maps as `key: value` with plain keys, each given once"),
-        ),
     }
 }
-
 fn spot(line: usize, column: usize) -> Place {
     let (line, column) = (line as u32, column as u32);
     Place {
@@ -157,7 +177,8 @@ struct Open {
     marks: Marks,
     anchor: usize,
     is_map: bool,
-    seen: HashMap<String, Place>,
+    /// The keys so far, once they are many.
+    seen: HashSet<String>,
 }
 
 impl Marks {
@@ -169,6 +190,26 @@ impl Marks {
             written,
             size: 1,
         }
+    }
+}
+
+impl Open {
+    /// Where this key was given before. A small map is searched, a large one remembers its keys apart.
+    fn first(&mut self, key: &str) -> Option<Place> {
+        const SMALL: usize = 16;
+        let keys = &self.marks.keys;
+        if keys.len() < SMALL {
+            let at = keys.iter().position(|known| known == key)?;
+            return Some(self.marks.children[2 * at].place);
+        }
+        if self.seen.is_empty() {
+            self.seen.extend(keys.iter().cloned());
+        }
+        if self.seen.insert(key.to_owned()) {
+            return None;
+        }
+        let at = keys.iter().position(|known| known == key)?;
+        Some(self.marks.children[2 * at].place)
     }
 }
 
@@ -242,7 +283,7 @@ impl Guard {
             marks: Marks::of(place, None),
             anchor,
             is_map,
-            seen: HashMap::new(),
+            seen: HashSet::new(),
         });
         Ok(())
     }
@@ -263,7 +304,7 @@ impl Guard {
     }
 
     /// A finished value.
-    fn add(&mut self, marks: Marks, anchor: usize) -> Result<(), Diagnostic> {
+    fn add(&mut self, mut marks: Marks, anchor: usize) -> Result<(), Diagnostic> {
         self.values += marks.size;
         if self.values > MOST_VALUES {
             let message = format!("more than {MOST_VALUES} values, aliases written out");
@@ -278,13 +319,13 @@ impl Guard {
             return Ok(());
         };
         if parent.is_map && parent.marks.children.len() % 2 == 0 {
-            let Some(key) = &marks.written else {
+            let Some(key) = marks.written.take() else {
                 let help = "a list or a map cannot be a key";
                 let problem = Diagnostic::error("key", marks.place, "a key must be plain text");
                 return Err(problem.help(help));
             };
-            if let Some(first) = parent.seen.insert(key.clone(), marks.place) {
-                let message = format!("the key `{}` is given twice", shortened(key));
+            if let Some(first) = parent.first(&key) {
+                let message = format!("the key `{}` is given twice", shortened(&key));
                 let help = match first.line == marks.place.line {
                     true => "remove one of the two".to_owned(),
                     false => format!(
@@ -294,7 +335,7 @@ impl Guard {
                 };
                 return Err(Diagnostic::error("key-twice", marks.place, message).help(help));
             }
-            parent.marks.keys.push(key.clone());
+            parent.marks.keys.push(key);
         }
         parent.marks.size += marks.size;
         parent.marks.children.push(marks);
@@ -331,41 +372,102 @@ fn refuse_tag(tagged: bool, place: Place) -> Result<(), Diagnostic> {
     Ok(())
 }
 
-/// Puts places and values together; none if the two parsers saw different shapes.
-fn join(marks: Marks, value: Value) -> Option<Marked> {
-    let place = marks.place;
-    let value = match value {
-        Value::Sequence(values)
-            if marks.keys.is_empty() && marks.children.len() == values.len() =>
-        {
-            let joined = marks
-                .children
-                .into_iter()
-                .zip(values)
-                .map(|(marks, value)| join(marks, value));
-            Form::List(joined.collect::<Option<_>>()?)
+/// Puts places and values together: the shape is that of the marks, the second parser fills in what the scalars mean.
+impl<'de> DeserializeSeed<'de> for Marks {
+    type Value = Marked;
+
+    fn deserialize<D: Deserializer<'de>>(self, deserializer: D) -> Result<Marked, D::Error> {
+        deserializer.deserialize_any(self)
+    }
+}
+
+impl Marks {
+    fn scalar<E: Error>(self, value: Plain) -> Result<Marked, E> {
+        let written = self.written.ok_or_else(|| E::custom(UNUSUAL))?;
+        Ok(Marked {
+            place: self.place,
+            value: Form::Scalar(Scalar { value, written }),
+        })
+    }
+}
+
+/// The two parsers saw different shapes.
+const UNUSUAL: &str = "the text is too unusual";
+
+impl<'de> Visitor<'de> for Marks {
+    type Value = Marked;
+
+    fn expecting(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        f.write_str("a map, a list or a value")
+    }
+
+    fn visit_unit<E: Error>(self) -> Result<Marked, E> {
+        self.scalar(Plain::Nothing)
+    }
+
+    fn visit_bool<E: Error>(self, truth: bool) -> Result<Marked, E> {
+        self.scalar(Plain::Truth(truth))
+    }
+
+    fn visit_f64<E: Error>(self, number: f64) -> Result<Marked, E> {
+        self.scalar(Plain::Number(number))
+    }
+
+    fn visit_i64<E: Error>(self, number: i64) -> Result<Marked, E> {
+        self.scalar(Plain::Number(number as f64))
+    }
+
+    fn visit_u64<E: Error>(self, number: u64) -> Result<Marked, E> {
+        self.scalar(Plain::Number(number as f64))
+    }
+
+    fn visit_i128<E: Error>(self, number: i128) -> Result<Marked, E> {
+        self.scalar(Plain::Number(number as f64))
+    }
+
+    fn visit_u128<E: Error>(self, number: u128) -> Result<Marked, E> {
+        self.scalar(Plain::Number(number as f64))
+    }
+
+    fn visit_str<E: Error>(self, _: &str) -> Result<Marked, E> {
+        self.scalar(Plain::Text)
+    }
+
+    fn visit_seq<A: SeqAccess<'de>>(self, mut list: A) -> Result<Marked, A::Error> {
+        let mut items = Vec::with_capacity(self.children.len());
+        for marks in self.children {
+            let item = list.next_element_seed(marks)?;
+            items.push(item.ok_or_else(|| A::Error::custom(UNUSUAL))?);
         }
-        Value::Mapping(map) if marks.keys.len() == map.len() => {
-            let mut children = marks.children.into_iter();
-            let mut entries = Vec::with_capacity(map.len());
-            for (name, (_, value)) in marks.keys.into_iter().zip(map) {
-                let key = Key {
-                    name,
-                    place: children.next()?.place,
-                };
-                entries.push((key, join(children.next()?, value)?));
-            }
-            Form::Map(entries)
+        if list.next_element::<IgnoredAny>()?.is_some() {
+            return Err(A::Error::custom(UNUSUAL));
         }
-        scalar @ (Value::Null | Value::Bool(_) | Value::Number(_) | Value::String(_))
-            if marks.children.is_empty() =>
-        {
-            Form::Scalar(Scalar {
-                value: scalar,
-                written: marks.written?,
-            })
+        Ok(Marked {
+            place: self.place,
+            value: Form::List(items),
+        })
+    }
+
+    fn visit_map<A: MapAccess<'de>>(self, mut map: A) -> Result<Marked, A::Error> {
+        let mut entries = Vec::with_capacity(self.keys.len());
+        let mut children = self.children.into_iter();
+        for name in self.keys {
+            let (Some(key), Some(value), Some(_)) = (
+                children.next(),
+                children.next(),
+                map.next_key::<IgnoredAny>()?,
+            ) else {
+                return Err(A::Error::custom(UNUSUAL));
+            };
+            let place = key.place;
+            entries.push((Key { name, place }, map.next_value_seed(value)?));
         }
-        _ => return None,
-    };
-    Some(Marked { place, value })
+        if map.next_key::<IgnoredAny>()?.is_some() {
+            return Err(A::Error::custom(UNUSUAL));
+        }
+        Ok(Marked {
+            place: self.place,
+            value: Form::Map(entries),
+        })
+    }
 }

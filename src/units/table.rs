@@ -257,6 +257,11 @@ pub fn spellings(kind: Kind) -> impl Iterator<Item = &'static str> {
 /// Near means the same letters in another case, else one or two edits in a spelling more than twice as long as that. An edit is
 /// one letter put in, left out, changed, or two neighbours swapped.
 pub fn nearest(text: &str, kind: Option<Kind>) -> Option<&'static str> {
+    // The comparison costs the product of both lengths.
+    const LONGEST: usize = 32;
+    if text.len() > LONGEST {
+        return None;
+    }
     let text = simplified(text).to_ascii_lowercase();
     UNITS
         .iter()

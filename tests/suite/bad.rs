@@ -2,6 +2,8 @@
 //!
 //! `UPDATE_EXPECTED=1 cargo test --test suite bad` rewrites the messages; read the difference before you keep it.
 
+mod hostile;
+
 use std::path::{Path, PathBuf};
 
 use dutybank::diagnostic::{Diagnostics, Severity};
