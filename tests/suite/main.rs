@@ -11,3 +11,4 @@ mod shift_meadow;
 mod shift_read;
 mod shift_staging;
 mod shift_tanks;
+mod tidy;
