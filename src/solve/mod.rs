@@ -25,6 +25,7 @@
 
 mod certain;
 mod certificate;
+mod islands;
 mod laws;
 mod linear;
 mod newton;
