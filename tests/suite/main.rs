@@ -1,7 +1,10 @@
 //! All integration tests in one crate.
 
 mod bad;
+mod banks;
+mod description;
 mod meadow;
+mod properties;
 mod properties_of_liquids;
 mod published;
 mod published_over_time;
