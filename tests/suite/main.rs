@@ -3,12 +3,15 @@
 mod bad;
 mod banks;
 mod description;
+mod effort;
+mod laws;
 mod meadow;
 mod properties;
 mod properties_of_liquids;
 mod published;
 mod published_over_time;
 mod random;
+mod reference;
 mod shift_closed_forms;
 mod shift_meadow;
 mod shift_read;
