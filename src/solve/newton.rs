@@ -189,9 +189,7 @@ impl Newton {
             self.imbalance[b] += q;
             self.step[a] += y * r;
             self.step[b] -= y * r;
-            factor.add_diagonal(live.from_unknown, y);
-            factor.add_diagonal(live.to_unknown, y);
-            factor.add(live.slot, -y);
+            factor.join(live.from_unknown, live.to_unknown, live.slot, y);
         }
         // `max` passes a NaN over, a sum does not
         if !sum.is_finite() {
