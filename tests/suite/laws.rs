@@ -12,9 +12,21 @@ use proptest::test_runner::TestCaseResult;
 
 const GRAVITY: f64 = 9.80665;
 
+/// A law under test.
+trait Tested: HeadLaw {
+    /// How large the figures are that its loss is made of, m: its rounding is a few last digits of that.
+    fn size(&self, q: f64) -> f64 {
+        self.loss(q).head.abs()
+    }
+}
+
+impl Tested for Friction {}
+impl Tested for QuadraticLoss {}
+impl Tested for PumpLaw<'_> {}
+
 /// The battery on flows about `scale` (m3/s). `corners` are flows at which the slope may turn sharply; the numeric slope
 /// is not taken across them.
-fn battery(law: &impl HeadLaw, scale: f64, odd: bool, corners: &[f64]) -> TestCaseResult {
+fn battery(law: &impl Tested, scale: f64, odd: bool, corners: &[f64]) -> TestCaseResult {
     let mut flows: Vec<f64> = Vec::new();
     for i in 0..60 {
         // eight decades to either side, and evenly across
@@ -40,7 +52,7 @@ fn battery(law: &impl HeadLaw, scale: f64, odd: bool, corners: &[f64]) -> TestCa
             loss.slope
         );
         if let Some((at, head)) = before {
-            let rounding = 4.0 * f64::EPSILON * head.abs().max(loss.head.abs());
+            let rounding = 4.0 * f64::EPSILON * law.size(at).max(law.size(q));
             prop_assert!(loss.head >= head - rounding, "falls from {at} to {q}");
         }
         before = Some((q, loss.head));
@@ -56,12 +68,12 @@ fn battery(law: &impl HeadLaw, scale: f64, odd: bool, corners: &[f64]) -> TestCa
 }
 
 /// Next to `q` the loss differs by no more than the slope makes of it, and rounding.
-fn continuous(law: &impl HeadLaw, q: f64) -> TestCaseResult {
+fn continuous(law: &impl Tested, q: f64) -> TestCaseResult {
     let here = law.loss(q);
     for near in [q.next_up(), q.next_down()] {
         let there = law.loss(near);
         let step = (near - q).abs() * here.slope.max(there.slope);
-        let rounding = 16.0 * f64::EPSILON * here.head.abs();
+        let rounding = 16.0 * f64::EPSILON * law.size(q);
         prop_assert!(
             (there.head - here.head).abs() <= 2.0 * step + rounding,
             "jumps from {} to {} at {q}",
@@ -73,7 +85,7 @@ fn continuous(law: &impl HeadLaw, q: f64) -> TestCaseResult {
 }
 
 /// The stated slope against a five-point difference of the losses.
-fn numeric_slope(law: &impl HeadLaw, q: f64, scale: f64, corners: &[f64]) -> TestCaseResult {
+fn numeric_slope(law: &impl Tested, q: f64, scale: f64, corners: &[f64]) -> TestCaseResult {
     let step = 1e-3 * q.abs().max(1e-9 * scale);
     let clear = |corner: &f64| (q - corner).abs() > 2.5 * step;
     if !corners.iter().all(clear) {
@@ -83,7 +95,8 @@ fn numeric_slope(law: &impl HeadLaw, q: f64, scale: f64, corners: &[f64]) -> Tes
     // f' = (f(-2) - 8 f(-1) + 8 f(1) - f(2)) / 12 s, error s4 f(5)/30
     let numeric = (head(-2.0) - 8.0 * head(-1.0) + 8.0 * head(1.0) - head(2.0)) / (12.0 * step);
     let stated = law.loss(q).slope;
-    let rounding = 8.0 * f64::EPSILON * head(2.0).abs().max(head(-2.0).abs()) / step;
+    let ends = law.size(q + 2.0 * step).max(law.size(q - 2.0 * step));
+    let rounding = 8.0 * f64::EPSILON * ends / step;
     prop_assert!(
         (numeric - stated).abs() <= 1e-6 * stated.abs() + rounding,
         "slope {stated}, numeric {numeric} at {q}"
@@ -92,7 +105,7 @@ fn numeric_slope(law: &impl HeadLaw, q: f64, scale: f64, corners: &[f64]) -> Tes
 }
 
 /// Slopes just above and just below no flow meet: what is between them vanishes with the flow.
-fn smooth_through_zero(law: &impl HeadLaw, scale: f64) -> TestCaseResult {
+fn smooth_through_zero(law: &impl Tested, scale: f64) -> TestCaseResult {
     let apart = |q: f64| (law.loss(q).slope - law.loss(-q).slope).abs();
     let (near, nearer) = (apart(1e-12 * scale), apart(1e-15 * scale));
     let rounding = 8.0 * f64::EPSILON * law.loss(0.0).slope.abs();
@@ -300,6 +313,11 @@ proptest! {
                 sum += self.loss.loss(q);
                 sum += self.pump.loss(q);
                 sum
+            }
+        }
+        impl Tested for Sum<'_> {
+            fn size(&self, q: f64) -> f64 {
+                self.pipe.size(q) + self.loss.size(q) + self.pump.size(q)
             }
         }
         let (q, h) = points;

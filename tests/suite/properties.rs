@@ -170,13 +170,14 @@ fn every_network_is_solved_or_the_reason_is_named() {
     }
 }
 
-/// Once each of these failed its certificate. Most hold an island behind shut one-way lines from which a flow far
-/// below a head's rounding has to find its way.
+/// Once each of these failed its certificate. Most hold an island behind shut one-way lines whose flow is so small that the
+/// head for it is lost in rounding, or a set of nodes that hangs on the rest by a very small conductance; in one the set
+/// of open lines went round in a circle.
 #[test]
 fn seeds_that_were_hard_once() {
-    const WILD: [u64; 17] = [
-        6474, 25633, 26657, 32114, 33510, 43069, 48902, 51208, 55964, 74158, 76095, 87567, 88006,
-        88498, 91553, 95929, 10096,
+    const WILD: [u64; 20] = [
+        6474, 21330, 25633, 26657, 32114, 33510, 43069, 48902, 50551, 51208, 55964, 62573, 67848,
+        74158, 76095, 87567, 88006, 88498, 91553, 95929,
     ];
     const ORDINARY: [u64; 2] = [10096, 34406];
     let wild = WILD.map(|seed| (seed, Range::Wild));
@@ -184,9 +185,8 @@ fn seeds_that_were_hard_once() {
     for (seed, range) in wild.into_iter().chain(ordinary) {
         let what = format!("{range:?} {seed}");
         let network = random_network(seed, range);
-        if let Some(solution) = answer(&network, &what) {
-            assert_balanced(&network, network.settings(), &solution, &what);
-        }
+        let solution = answer(&network, &what).unwrap_or_else(|| panic!("{what}: no answer"));
+        assert_balanced(&network, network.settings(), &solution, &what);
     }
 }
 
