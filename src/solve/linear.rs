@@ -2,7 +2,8 @@
 
 use super::supernodal::Supernodal;
 
-/// The system in the heads, factorised in the way that suits its size.
+/// The system in the heads, factorised in the way that suits its size. There is one per solver, so its own size is no matter.
+#[allow(clippy::large_enum_variant)]
 pub(crate) enum Factor {
     /// Entry by entry.
     Small(Simplicial),

@@ -10,6 +10,8 @@ use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::solve::Solver;
 use proptest::prelude::*;
 
+use crate::random;
+
 const GRAVITY: f64 = 9.80665;
 
 /// Invented: a falling curve by shut-off head (m), end of curve (m3/s), share of head lost there and power of the fall.
@@ -112,7 +114,7 @@ fn close(a: f64, b: f64, relative: f64) -> bool {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig { failure_persistence: None, ..ProptestConfig::with_cases(200) })]
+    #![proptest_config(random::cases(200))]
 
     /// Seen from a header, n equal pumps are n times one pump at the head that stands there.
     #[test]

@@ -10,6 +10,8 @@ use dutybank::part::valve::{Characteristic, Valve};
 use proptest::prelude::*;
 use proptest::test_runner::TestCaseResult;
 
+use crate::random;
+
 const GRAVITY: f64 = 9.80665;
 
 /// A law under test.
@@ -22,7 +24,11 @@ trait Tested: HeadLaw {
 
 impl Tested for Friction {}
 impl Tested for QuadraticLoss {}
-impl Tested for PumpLaw<'_> {}
+impl Tested for PumpLaw<'_> {
+    fn size(&self, q: f64) -> f64 {
+        self.loss(0.0).head.abs() + self.loss(q).head.abs()
+    }
+}
 
 /// The battery on flows about `scale` (m3/s). `corners` are flows at which the slope may turn sharply; the numeric slope
 /// is not taken across them.
@@ -136,7 +142,7 @@ fn falling_points() -> impl Strategy<Value = (Vec<f64>, Vec<f64>)> {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig { failure_persistence: None, ..ProptestConfig::with_cases(300) })]
+    #![proptest_config(random::cases(300))]
 
     #[test]
     fn darcy_weisbach(

@@ -17,8 +17,7 @@ use crate::random::{self, GRAVITY, Random, Range};
 const RANGES: [Range; 2] = [Range::Ordinary, Range::Wild];
 
 fn seeds(usual: u64) -> std::ops::Range<u64> {
-    let long = std::env::var_os("DUTYBANK_LONG").is_some();
-    0..if long { 10 * usual } else { usual }
+    0..random::many(usual)
 }
 
 fn random_network(seed: u64, range: Range) -> Network {
