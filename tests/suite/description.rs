@@ -29,6 +29,8 @@ pub struct Line {
     pub parts: Vec<Piece>,
 }
 
+// A test holds few of them.
+#[allow(clippy::large_enum_variant)]
 #[derive(Clone)]
 pub enum Piece {
     Pipe(Pipe),
@@ -64,7 +66,7 @@ impl Description {
             Part::Pipe(pipe) => Piece::Pipe(pipe.clone()),
             Part::Loss(loss) => Piece::Loss(*loss),
             Part::CheckValve(loss) => Piece::Check(*loss),
-            Part::Valve(id) => Piece::Valve(network.valve(*id).clone(), *settings.valve(*id)),
+            Part::Valve(id) => Piece::Valve(*network.valve(*id), *settings.valve(*id)),
             Part::Pump(id) => Piece::Pump(
                 network.model(*id).clone(),
                 network.pump(*id).clone(),
@@ -106,7 +108,7 @@ impl Description {
                     Piece::Pipe(pipe) => Part::Pipe(pipe.clone()),
                     Piece::Loss(loss) => Part::Loss(*loss),
                     Piece::Check(loss) => Part::CheckValve(*loss),
-                    Piece::Valve(valve, setting) => Part::Valve(net.valve(valve.clone(), *setting)),
+                    Piece::Valve(valve, setting) => Part::Valve(net.valve(*valve, *setting)),
                     Piece::Pump(model, pump, setting) => {
                         let model = *models
                             .entry(model.name.clone())

@@ -24,8 +24,11 @@ fn effort(balance: &Balance) -> (u32, u32, bool) {
     )
 }
 
-/// Iterations and factorisations from a cold start, and warm after nothing has changed.
-const DEMOS: [(&str, (u32, u32), (u32, u32)); 7] = [
+/// Iterations and factorisations.
+type Steps = (u32, u32);
+
+/// Steps from a cold start, and warm after nothing has changed.
+const DEMOS: [(&str, Steps, Steps); 7] = [
     ("meadow_lift_station", (6, 5), (1, 0)),
     ("mill_pond_transfer", (6, 5), (1, 0)),
     ("orchard_sprinkler_loop", (7, 6), (1, 0)),
