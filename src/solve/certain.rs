@@ -145,21 +145,13 @@ impl Certain {
         self.step.fill(0.0);
         for (slope, free) in self.slope.iter().zip(&system.free) {
             if let Some(i) = *free {
-                factor.add_diagonal(i, regularisation);
+                factor.ground(i, regularisation);
                 self.step[i as usize] = -slope;
             }
         }
         for live in &system.live {
-            let line = live.index();
-            let y = self.conductance[line];
-            let (from, to) = system.ends[line];
-            let (a, b) = (system.free[from as usize], system.free[to as usize]);
-            for i in [a, b].into_iter().flatten() {
-                factor.add_diagonal(i, y);
-            }
-            if let (Some(_), Some(_), Some(slot)) = (a, b, system.slots[line]) {
-                factor.add(slot, -y);
-            }
+            let y = self.conductance[live.index()];
+            factor.join(live.from_unknown, live.to_unknown, live.slot, y);
         }
         let done = factor.factorise();
         if done {

@@ -51,7 +51,7 @@ pub(super) fn certify(
         let size = loss.abs().max(above.abs()).max(below.abs());
         let wrong_way = system.sense[line] * q < 0.0;
         let allowed = CERTIFIED_HEAD.absolute + CERTIFIED_HEAD.relative * size + rounding(q, slope);
-        if !(off <= allowed) || wrong_way {
+        if off.is_nan() || off > allowed || wrong_way {
             return Err(SolveError::LineUnbalanced {
                 line: LineId(line as u32),
                 by: off,
@@ -63,7 +63,7 @@ pub(super) fn certify(
     for node in system.network.node_ids() {
         if !system.fixed[node.index()] {
             let off = (imbalance[node.index()] - system.own_draws[node.index()]).abs();
-            if !(off <= limit) {
+            if off.is_nan() || off > limit {
                 return Err(SolveError::NodeUnbalanced {
                     node: NodeId(node.index() as u32),
                     by: off,

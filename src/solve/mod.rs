@@ -15,8 +15,10 @@
 //! # Method
 //! 1. Reachability ([`crate::network::Reach`]): draws that nothing can reach, parts cut off, lines that can carry nothing.
 //! 2. Leaves are settled by continuity.
-//! 3. Fast path: Newton on heads and flows together, one-way lines as an active set.
-//! 4. Where that stalls, the certain path: minimise the co-content in the heads, then finish with 3.
+//! 3. Fast path: Newton on heads and flows together, one-way lines as an active set; where shut lines cut nodes off that
+//!    water must reach, the line that opens first is opened.
+//! 4. Where that stalls, the certain path: minimise the co-content in the heads, then finish with 3, changing one-way lines
+//!    one at a time.
 //! 5. Certificate: all three balances are recomputed from the answer with the plain laws. No certificate, no answer.
 //!
 //! Drooping head curves break the uniqueness; see [`Solver::balances`].
@@ -26,6 +28,7 @@
 mod certain;
 mod certificate;
 mod floating;
+mod islands;
 mod laws;
 mod linear;
 mod newton;

@@ -22,6 +22,7 @@
 //! E. Todini, S. Pilati, "A gradient method for the analysis of pipe networks" (1987); M. Hintermüller, K. Ito, K. Kunisch, "The
 //! primal-dual active set strategy as a semismooth Newton method", SIAM J. Optim. 13, 2002.
 
+use super::islands::Islands;
 use super::system::{State, System};
 use super::tolerance::{HEAD, OPENING, SLOPE_FLOOR, flow_tolerance, rounding};
 
@@ -48,6 +49,12 @@ pub(super) struct Effort {
     pub factorisations: u32,
 }
 
+/// Worst residuals over their tolerances.
+struct Worst {
+    head: f64,
+    flow: f64,
+}
+
 /// What happens to one-way lines while iterating.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) enum OneWay {
@@ -65,6 +72,7 @@ pub(super) struct Newton {
     /// Per unknown and one for all held heads.
     imbalance: Vec<f64>,
     step: Vec<f64>,
+    islands: Islands,
 }
 
 impl Newton {
@@ -74,6 +82,7 @@ impl Newton {
             conductance: vec![0.0; system.roles.len()],
             imbalance: vec![0.0; system.unknowns() + 1],
             step: vec![0.0; system.unknowns() + 1],
+            islands: Islands::new(system),
         }
     }
 
@@ -90,11 +99,19 @@ impl Newton {
         let mut polished = false;
         let mut best = f64::INFINITY;
         let mut since_best = 0;
+        let mut stepped = false;
         for _ in 0..LIMIT {
             effort.iterations += 1;
-            let worst = self.evaluate(system, state);
-            if !worst.is_finite() {
+            let Worst { head, flow } = self.evaluate(system, state);
+            let worst = head.max(flow);
+            if !(head + flow).is_finite() {
                 return Outcome::Stalled;
+            }
+            // A step meets the node balances to rounding, whatever the laws, wherever any step can.
+            if stepped && settled && flow > 1.0 && self.open_islands(system, state) {
+                settled = false;
+                since_best = 0;
+                continue;
             }
             // One more step takes what has just come within tolerance to rounding: a tank that empties through a line asks for
             // the flow under its last nanometres, where a tolerance on heads says little.
@@ -118,12 +135,19 @@ impl Newton {
             }
             system.factor.solve(&mut self.step);
             settled = self.advance(system, state, one_way);
+            stepped = true;
         }
         Outcome::Stalled
     }
 
-    /// Residuals at `state`, and the system for the next step; returns the worst residual over its tolerance.
-    fn evaluate(&mut self, system: &mut System, state: &State) -> f64 {
+    fn open_islands(&mut self, system: &System, state: &mut State) -> bool {
+        let largest_flow = state.flows.iter().fold(0.0, |m: f64, q| m.max(q.abs()));
+        let tolerance = flow_tolerance(largest_flow);
+        self.islands.open(system, state, tolerance)
+    }
+
+    /// Residuals at `state`, and the system for the next step; returns the worst residuals over their tolerances.
+    fn evaluate(&mut self, system: &mut System, state: &State) -> Worst {
         system.laws.evaluate(&state.flows);
         let System {
             laws,
@@ -165,13 +189,14 @@ impl Newton {
             self.imbalance[b] += q;
             self.step[a] += y * r;
             self.step[b] -= y * r;
-            factor.add_diagonal(live.from_unknown, y);
-            factor.add_diagonal(live.to_unknown, y);
-            factor.add(live.slot, -y);
+            factor.join(live.from_unknown, live.to_unknown, live.slot, y);
         }
         // `max` passes a NaN over, a sum does not
         if !sum.is_finite() {
-            return f64::NAN;
+            return Worst {
+                head: f64::NAN,
+                flow: f64::NAN,
+            };
         }
         let mut worst_flow: f64 = 0.0;
         for unknown in free.iter().flatten() {
@@ -179,7 +204,10 @@ impl Newton {
             worst_flow = worst_flow.max(e.abs());
             self.step[*unknown as usize] += e;
         }
-        worst_head.max(worst_flow / flow_tolerance(largest_flow))
+        Worst {
+            head: worst_head,
+            flow: worst_flow / flow_tolerance(largest_flow),
+        }
     }
 
     /// Takes the step; true if no one-way line changed.

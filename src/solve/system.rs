@@ -370,24 +370,33 @@ impl<'n> System<'n> {
         self.sense[line] * (self.drop(state, line) - self.loss(line, 0.0).head)
     }
 
-    /// Whether every one-way line flows in its sense, or is shut with the head against it. Flows that stand still but for
-    /// rounding are set to zero on the way.
-    pub fn complementary(&self, state: &mut State) -> bool {
+    /// The first one-way line that flows against its sense, or is shut though the head along it would open it. Flows
+    /// that stand still but for rounding are set to zero on the way.
+    pub fn first_not_complementary(&self, state: &mut State) -> Option<usize> {
         let rounding = flow_tolerance(0.0);
-        let mut all = true;
         for live in &self.live {
             let line = live.index();
             if state.shut[line] {
-                all &= self.push(state, line) <= HEAD.absolute;
-            } else if self.sense[line] * state.flows[line] < 0.0 {
-                if state.flows[line].abs() > rounding {
-                    all = false;
-                } else {
-                    state.flows[line] = 0.0;
+                if self.push(state, line) > HEAD.absolute {
+                    return Some(line);
                 }
+            } else if live.sense * state.flows[line] < -rounding {
+                return Some(line);
+            } else if live.sense * state.flows[line] < 0.0 {
+                state.flows[line] = 0.0;
             }
         }
-        all
+        None
+    }
+
+    /// Shuts an open one-way line, or opens a shut one.
+    pub fn turn(&self, state: &mut State, line: usize) {
+        if state.shut[line] {
+            self.open_line(state, line);
+        } else {
+            state.shut[line] = true;
+            state.flows[line] = 0.0;
+        }
     }
 
     /// Whether a node belongs to a set that no fixed head is joined to.

@@ -63,10 +63,11 @@ class System:
             self.change(target.split("."), value)
         self.gravity = self.number(self.file.get("site", {}).get("gravity", 9.80665), "acceleration")
         self.density, self.viscosity, self.vapour_pressure = self.fluid()
-        # ISO 2533: p = 101325 (1 - 0.0065 z / 288.15)^5.25588
+        # ISO 2533: p = 101325 (1 - 0.0065 H / 288.15)^5.25588, geopotential height H = r z / (r + z), r = 6356766 m
         site = self.file.get("site", {})
         z = self.number(site.get("elevation", 0), "length")
-        standard = 101325 * (1 - 0.0065 * z / 288.15) ** (9.80665 / (287.05287 * 0.0065))
+        geopotential = 6356766 * z / (6356766 + z)
+        standard = 101325 * (1 - 0.0065 * geopotential / 288.15) ** (9.80665 / (287.05287 * 0.0065))
         self.barometer = self.number(site["barometer"], "pressure") if "barometer" in site else standard
 
     def number(self, value, kind):

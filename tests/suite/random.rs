@@ -48,6 +48,25 @@ impl Random {
     }
 }
 
+/// How many of something to look at: ten times as many as usual with `DUTYBANK_LONG=1`.
+pub fn many(usual: u64) -> u64 {
+    if std::env::var_os("DUTYBANK_LONG").is_some() {
+        10 * usual
+    } else {
+        usual
+    }
+}
+
+/// The same cases every time.
+pub fn cases(usual: u64) -> proptest::test_runner::Config {
+    proptest::test_runner::Config {
+        cases: many(usual) as u32,
+        rng_seed: proptest::test_runner::RngSeed::Fixed(1),
+        failure_persistence: None,
+        ..Default::default()
+    }
+}
+
 /// How far from ordinary practice a network may go.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Range {
