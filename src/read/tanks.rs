@@ -94,7 +94,9 @@ pub(super) fn tank(cx: &mut Context, what: &str, fields: &Fields) -> Option<Tank
         (Some(trip), Some(reset)) if reset > trip => Some((trip, reset)),
         (Some(_), Some(_)) => {
             let message = format!("`reset` of {what} must lie above its `trip`");
-            cx.error("out-of-range", fields.key_place("reset"), message);
+            let help = "the trip lets go where the level has risen again: give a higher `reset`";
+            let place = fields.key_place("reset");
+            cx.push(Diagnostic::error("out-of-range", place, message).help(help));
             return None;
         }
         (Some(_), None) => {

@@ -298,6 +298,8 @@ fn elimination_order(n: usize, couplings: &[(u32, u32)]) -> Vec<u32> {
         .iter()
         .flat_map(|&(i, j)| [(i, j), (j, i)])
         .collect();
+    // the diagonal too: the library takes it to be there
+    pairs.extend((0..n as u32).map(|i| (i, i)));
     pairs.sort_unstable();
     pairs.dedup();
     let mut first = vec![0i64; n + 1];

@@ -290,14 +290,14 @@ fn pump_cautions(
         }
         Place::OnCurve => {}
     }
-    if let (Some(power), Some(motor)) = (pump.shaft_power, model.motor) {
-        if power > motor.rated {
-            cautions.push(Caution::Overloaded {
-                pump: id,
-                power,
-                rated: motor.rated,
-            });
-        }
+    if let (Some(power), Some(motor)) = (pump.shaft_power, model.motor)
+        && power > motor.rated
+    {
+        cautions.push(Caution::Overloaded {
+            pump: id,
+            power,
+            rated: motor.rated,
+        });
     }
     if let (Some(available), Some(required)) = (pump.npsh_available, pump.npsh_required) {
         if available < required {
@@ -389,13 +389,13 @@ pub fn binding_limit(network: &Network, assessment: &Assessment) -> Option<Limit
         if let Some(load) = pump.motor_load {
             add(LimitKind::Motor(load), 1.0 - load);
         }
-        if let (Some(available), Some(required)) = (pump.npsh_available, pump.npsh_required) {
-            if required > 0.0 {
-                add(
-                    LimitKind::Npsh(available / required),
-                    available / npsh_asked(required) - 1.0,
-                );
-            }
+        if let (Some(available), Some(required)) = (pump.npsh_available, pump.npsh_required)
+            && required > 0.0
+        {
+            add(
+                LimitKind::Npsh(available / required),
+                available / npsh_asked(required) - 1.0,
+            );
         }
         if let Some(share) = pump.share_of_bep {
             let (low, high) = PREFERRED_REGION;
