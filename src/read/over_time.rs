@@ -108,7 +108,8 @@ fn over_time(cx: &mut Context, root: &Marked, network: &Network, load: Load) -> 
     for (plan, place) in &plans {
         if let Err(why) = plan.check(network, &shift) {
             let message = format!("plan `{}`: {why}", plan.name);
-            cx.error("staging", *place, message);
+            let help = "each pump belongs to one group, with as many pumps as steps";
+            cx.push(Diagnostic::error("staging", *place, message).help(help));
         }
     }
     if let Err(why) = std::mem::replace(&mut all, Ok(())) {
@@ -394,7 +395,8 @@ fn fault(cx: &mut Context, names: &Known, node: &Marked, starts: f64) -> Option<
                     "line `{}` has no check valve to stick",
                     names.network.line(*bare).name
                 );
-                cx.error("no-check-valve", node.place, message);
+                let help = "name a line with a `check_valve` among its parts";
+                cx.push(Diagnostic::error("no-check-valve", node.place, message).help(help));
                 return None;
             }
             lines

@@ -97,7 +97,9 @@ fn group(cx: &mut Context, names: &Known, node: &Marked, plan: &str) -> Option<(
         for key in ["steps", "windows"] {
             if fields.has(key) {
                 let message = format!("`{key}` of {what} goes with `follow` only");
-                cx.error("stray-key", fields.key_place(key), message);
+                let place = fields.key_place(key);
+                let help = "remove it, or give `follow`";
+                cx.push(Diagnostic::error("stray-key", place, message).help(help));
             }
         }
     }
@@ -234,7 +236,8 @@ fn follow(cx: &mut Context, names: &Known, fields: &Fields, what: &str) -> Optio
             [line] => Some((Follow::Flow(*line), Kind::Flow)),
             _ => {
                 let message = format!("{named} is a bank; one line can be followed");
-                cx.error("wrong-form", node.place, message);
+                let help = "name one member, such as `duty.1`, or the line they feed";
+                cx.push(Diagnostic::error("wrong-form", node.place, message).help(help));
                 None
             }
         },
@@ -275,7 +278,8 @@ fn bands(
             let own = self::steps(cx, node, &format!("`steps` of {what}"), kind)?;
             if own.len() != steps.len() {
                 let message = format!("{what} has {} steps, the group {}", own.len(), steps.len());
-                cx.error("steps", node.place, message);
+                let help = "a window changes the levels of every step, not their number";
+                cx.push(Diagnostic::error("steps", node.place, message).help(help));
                 return None;
             }
             windows.push(Window { daily, steps: own });
@@ -304,7 +308,8 @@ fn steps(cx: &mut Context, node: &Marked, what: &str, kind: Kind) -> Option<Vec<
     let mut steps: Vec<Step> = Vec::new();
     let items = cx.list(node, what, "[{start: 2.6 m, stop: 1.0 m}]")?;
     if items.is_empty() {
-        cx.error("wrong-form", node.place, format!("{what} are none"));
+        let help = "write at least one `{start: 2.6 m, stop: 1.0 m}`";
+        cx.push(Diagnostic::error("wrong-form", node.place, format!("{what} are none")).help(help));
         return None;
     }
     for item in items {
@@ -398,11 +403,10 @@ fn hold(
         None => (0.5, 1.0),
     };
     if speeds.0 > speeds.1 {
-        cx.error(
-            "out-of-range",
-            fields.key_place("speed"),
-            format!("{what} has a least speed above its most"),
-        );
+        let message = format!("{what} has a least speed above its most");
+        let help = "write it for example as `{least: 60 %, most: 100 %}`";
+        let place = fields.key_place("speed");
+        cx.push(Diagnostic::error("out-of-range", place, message).help(help));
         return None;
     }
     let style = match fields.get("style") {

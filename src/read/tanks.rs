@@ -209,7 +209,9 @@ fn table(cx: &mut Context, node: &Marked, name: &str) -> Option<Shape> {
     match shape.check() {
         Ok(()) => Some(shape),
         Err(why) => {
-            cx.error("table", node.place, format!("{name} cannot be used: {why}"));
+            let message = format!("{name} cannot be used: {why}");
+            let help = "give each level with the volume below it, both rising from point to point";
+            cx.push(Diagnostic::error("table", node.place, message).help(help));
             None
         }
     }

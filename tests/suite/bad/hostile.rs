@@ -451,6 +451,8 @@ pub fn large(lines: usize) -> String {
     text
 }
 
+/// A guard against work that grows with the square of a file, run beside other tests, checking and showing included; how
+/// long reading alone takes is measured by `benches/read.rs`.
 #[test]
 fn large_files_are_read_quickly() {
     let text = large(10_000);
@@ -458,14 +460,14 @@ fn large_files_are_read_quickly() {
         read_within(
             "10,000 network lines",
             text.as_bytes(),
-            Duration::from_millis(500)
+            Duration::from_millis(1500)
         ),
         ""
     );
     let text = large(7_500);
     assert!(text.lines().count() >= 10_000);
     assert_eq!(
-        read_within("10,000 lines", text.as_bytes(), Duration::from_millis(500)),
+        read_within("10,000 lines", text.as_bytes(), Duration::from_millis(1500)),
         ""
     );
     // short lines, as many as fit
