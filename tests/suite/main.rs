@@ -2,6 +2,7 @@
 
 mod bad;
 mod banks;
+mod command;
 mod description;
 mod effort;
 mod heads;
@@ -12,6 +13,7 @@ mod properties_of_liquids;
 mod published;
 mod published_over_time;
 mod random;
+mod readme;
 mod reference;
 mod shift_closed_forms;
 mod shift_meadow;
