@@ -3,7 +3,7 @@
 //!
 //! Invented data. Random numbers: `state = state * 6364136223846793005 + 1442695040888963407` modulo 2^64, of which the upper 32
 //! bits over 2^32 are the number. The grid's lines are shuffled (Fisher–Yates from the last down, j = floor(u (i + 1))), then
-//! taken in that order: first those that join two parts not yet joined, then others, until there are 1.2 lines a node. Lengths
+//! taken in that order: first those that join two parts not yet joined, then others, until there are 1.2 lines a node, and sorted. Lengths
 //! 50 to 500 m, bores 0.1 to 0.6 m, roughness 0.1 mm; node 0 is a reservoir at 100 m, every other node draws up to 1 m3/s / nodes.
 
 use dutybank::fluid::Fluid;
@@ -113,7 +113,13 @@ pub fn streets(count: usize) -> Network {
     let (tree, others): (Vec<_>, Vec<_>) =
         lines.into_iter().partition(|&(a, b)| joined.union(a, b));
     let further = side * side * 6 / 5 - tree.len();
-    for (a, b) in tree.into_iter().chain(others.into_iter().take(further)) {
+    let mut chosen: Vec<_> = tree
+        .into_iter()
+        .chain(others.into_iter().take(further))
+        .collect();
+    // in the order of their nodes, as a survey lists them
+    chosen.sort_unstable();
+    for (a, b) in chosen {
         maker.line(a, b);
     }
     maker.net.build().unwrap()

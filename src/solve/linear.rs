@@ -11,19 +11,20 @@ pub(crate) enum Factor {
     Large(Box<Supernodal>),
 }
 
-/// Unknowns from which blocks pay: at 1,000 the two take the same time on street networks, at 100,000 blocks are three times as
-/// fast there and eight times on grids (`benches/solve.rs`).
-const LARGE: usize = 1500;
+/// Multiplications of one factorisation from which blocks pay. On a grid of 10,000 nodes (1e7) a whole solve takes the
+/// same time either way, on one of 100,000 (5e8) blocks are 1.8 times as fast; on street networks, which fill in little, they never
+/// are (`benches/solve.rs`).
+const MUCH_WORK: f64 = 2e8;
 
 impl Factor {
     /// For `n` unknowns coupled pairwise as in `couplings`. Returns one slot per coupling.
     pub fn new(n: usize, couplings: &[(u32, u32)]) -> (Self, Vec<Slot>) {
-        if n >= LARGE
+        let (small, slots) = Simplicial::new(n, couplings);
+        if small.work() > MUCH_WORK
             && let Some((large, slots)) = Supernodal::new(n, couplings)
         {
             return (Self::Large(Box::new(large)), slots);
         }
-        let (small, slots) = Simplicial::new(n, couplings);
         (Self::Small(small), slots)
     }
 
@@ -199,6 +200,15 @@ impl Simplicial {
     /// Number of unknowns.
     pub fn unknowns(&self) -> usize {
         self.n
+    }
+
+    /// Multiplications of one factorisation: the squares of the columns' lengths.
+    fn work(&self) -> f64 {
+        let lengths = self
+            .l_first
+            .windows(2)
+            .map(|pair| f64::from(pair[1] - pair[0]));
+        lengths.map(|length| length * length).sum()
     }
 
     /// Sets the matrix to zero.

@@ -131,3 +131,32 @@ impl Supernodal {
         factor.solve_in_place_with_conj(Conj::No, right, Par::Seq, stack);
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// A chain of unit conductances grounded at its first node: the answer to a unit inflow at the last is 1, 2, 3 ..
+    #[test]
+    fn a_chain_is_solved() {
+        let n = 200;
+        let couplings: Vec<(u32, u32)> = (1..n as u32).map(|i| (i - 1, i)).collect();
+        let (mut factor, slots) = Supernodal::new(n, &couplings).unwrap();
+        for _ in 0..2 {
+            factor.clear();
+            factor.add_diagonal(0, 1.0);
+            for (&(i, j), &slot) in couplings.iter().zip(&slots) {
+                factor.add_diagonal(i, 1.0);
+                factor.add_diagonal(j, 1.0);
+                factor.add(slot, -1.0);
+            }
+            let mut x = vec![0.0; n];
+            x[n - 1] = 1.0;
+            assert!(factor.factorise());
+            factor.solve(&mut x);
+            for (i, x) in x.iter().enumerate() {
+                assert!((x - (i + 1) as f64).abs() < 1e-9, "{i}: {x}");
+            }
+        }
+    }
+}
