@@ -42,11 +42,23 @@ pub struct Unreachable {
     pub draw: f64,
 }
 
+/// What a node is to the search.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Seed {
+    Fixed,
+    Inflow,
+    Draw,
+    None,
+}
+
 /// The topology of a network and what water can reach in it.
 pub struct Reach {
     graph: UnGraph<(), ()>,
     passages: Vec<Passage>,
     directions: Vec<Direction>,
+    seeds: Vec<Seed>,
+    /// Whether what follows fits the passages, directions and seeds.
+    valid: bool,
     standings: Vec<Standing>,
     /// Per node, a number shared by all nodes that are joined by ways in use.
     components: Vec<u32>,
@@ -76,6 +88,8 @@ impl Reach {
             graph,
             passages: vec![Passage::Open; lines],
             directions: vec![Direction::Both; lines],
+            seeds: vec![Seed::None; nodes],
+            valid: false,
             standings: vec![Standing::Joined; nodes],
             components: vec![0; nodes],
             held: Vec::with_capacity(nodes),
@@ -85,37 +99,64 @@ impl Reach {
         }
     }
 
-    /// Finds passages, standings and components for these settings. Allocates nothing.
+    /// Finds passages, standings and components for these settings. Allocates nothing. True if any of them may have
+    /// changed since the last time: levels, speeds and sizes of draws alone change none.
     ///
     /// # Errors
     /// The first draw that no water reaches, or inflow that has nowhere to go.
-    pub fn update(&mut self, network: &Network, settings: &Settings) -> Result<(), Unreachable> {
-        for (passage, line) in self.passages.iter_mut().zip(network.line_ids()) {
-            *passage = line_passage(network, line, settings);
+    pub fn update(&mut self, network: &Network, settings: &Settings) -> Result<bool, Unreachable> {
+        let changed = self.look(network, settings) | !std::mem::take(&mut self.valid);
+        if changed {
+            self.follow(network, settings)?;
         }
-        for (direction, line) in self.directions.iter_mut().zip(network.line_ids()) {
-            *direction = network.direction(line, settings);
+        self.check_floating(network, settings)?;
+        self.valid = true;
+        Ok(changed)
+    }
+
+    /// Takes in what topology depends on; true if it is not what it was.
+    fn look(&mut self, network: &Network, settings: &Settings) -> bool {
+        fn put<T: PartialEq>(place: &mut T, value: T) -> bool {
+            let changed = *place != value;
+            *place = value;
+            changed
         }
-        let joined = |node: &NodeId| network.fixed_head(*node, settings).is_some();
-        let draw = |node: NodeId| {
-            if joined(&node) {
-                0.0
-            } else {
-                settings.draw(node)
-            }
-        };
+        let mut changed = false;
+        let lines = self.passages.iter_mut().zip(&mut self.directions);
+        for ((passage, direction), line) in lines.zip(network.line_ids()) {
+            changed |= put(passage, line_passage(network, line, settings));
+            changed |= put(direction, network.direction(line, settings));
+        }
+        for (seed, node) in self.seeds.iter_mut().zip(network.node_ids()) {
+            let draw = settings.draw(node);
+            let now = match network.fixed_head(node, settings) {
+                Some(_) => Seed::Fixed,
+                None if draw < 0.0 => Seed::Inflow,
+                None if draw > 0.0 => Seed::Draw,
+                None => Seed::None,
+            };
+            changed |= put(seed, now);
+        }
+        changed
+    }
+
+    /// Follows the water from where it comes and to where it can go.
+    fn follow(&mut self, network: &Network, settings: &Settings) -> Result<(), Unreachable> {
         // Where water comes from: fixed heads and inflows, followed downstream.
-        self.spread(network, true, |node| joined(&node) || draw(node) < 0.0);
+        self.spread(network, true, Seed::Inflow);
         // Where water can go: fixed heads and draws, followed upstream.
-        self.spread(network, false, |node| joined(&node) || draw(node) > 0.0);
+        self.spread(network, false, Seed::Draw);
         for node in network.node_ids() {
             let i = node.index();
             let (in_, out) = (self.forward_reached[i], self.backward_reached[i]);
-            if (draw(node) > 0.0 && !in_) || (draw(node) < 0.0 && !out) {
-                return Err(Unreachable {
-                    node,
-                    draw: draw(node),
-                });
+            let unmet = match self.seeds[i] {
+                Seed::Draw => !in_,
+                Seed::Inflow => !out,
+                Seed::Fixed | Seed::None => false,
+            };
+            if unmet {
+                let draw = settings.draw(node);
+                return Err(Unreachable { node, draw });
             }
             self.standings[i] = match (in_, out) {
                 (true, true) => Standing::Joined,
@@ -123,12 +164,12 @@ impl Reach {
                 (false, _) => Standing::Unserved,
             };
         }
-        self.find_components(network, joined);
-        self.check_floating(network, draw)
+        self.find_components(network);
+        Ok(())
     }
 
     /// Marks every node that can be reached from the seeds, downstream or upstream.
-    fn spread(&mut self, network: &Network, downstream: bool, seed: impl Fn(NodeId) -> bool) {
+    fn spread(&mut self, network: &Network, downstream: bool, seed: Seed) {
         let Self {
             graph,
             passages,
@@ -136,6 +177,7 @@ impl Reach {
             forward_reached,
             backward_reached,
             directions,
+            seeds,
             ..
         } = self;
         let reached = if downstream {
@@ -145,7 +187,8 @@ impl Reach {
         };
         stack.clear();
         for node in network.node_ids() {
-            reached[node.index()] = seed(node);
+            let here = seeds[node.index()];
+            reached[node.index()] = here == Seed::Fixed || here == seed;
             if reached[node.index()] {
                 stack.push(NodeIndex::new(node.index()));
             }
@@ -172,7 +215,7 @@ impl Reach {
     }
 
     /// Numbers the sets of nodes that are joined by lines in use.
-    fn find_components(&mut self, network: &Network, joined: impl Fn(&NodeId) -> bool) {
+    fn find_components(&mut self, network: &Network) {
         const NONE: u32 = u32::MAX;
         self.components.fill(NONE);
         self.held.clear();
@@ -185,7 +228,7 @@ impl Reach {
             self.components[start.index()] = component;
             self.stack.push(NodeIndex::new(start.index()));
             while let Some(here) = self.stack.pop() {
-                holds_head |= joined(&NodeId(here.index() as u32));
+                holds_head |= self.seeds[here.index()] == Seed::Fixed;
                 for edge in self.graph.edges(here) {
                     let next = edge.target().index();
                     if self.components[next] == NONE
@@ -201,11 +244,8 @@ impl Reach {
     }
 
     /// A component without a fixed head must draw exactly what flows into it.
-    fn check_floating(
-        &self,
-        network: &Network,
-        draw: impl Fn(NodeId) -> f64,
-    ) -> Result<(), Unreachable> {
+    fn check_floating(&self, network: &Network, settings: &Settings) -> Result<(), Unreachable> {
+        let draw = |node: NodeId| settings.draw(node);
         if self.held.iter().all(|&(_, held)| held) {
             return Ok(());
         }

@@ -178,15 +178,17 @@ impl<'n> System<'n> {
     /// # Errors
     /// A draw or inflow that no flow can satisfy.
     pub fn prepare(&mut self, settings: &Settings, state: &mut State) -> Result<(), Unreachable> {
-        self.reach.update(self.network, settings)?;
+        let changed = self.reach.update(self.network, settings)?;
         self.laws.set(self.network, settings, None);
+        let mut lifted = false;
         for line in self.network.line_ids() {
             let above = |end| {
                 self.network
                     .above_surface(line, end, settings)
                     .unwrap_or(0.0)
             };
-            self.lift[line.index()] = above(End::From) - above(End::To);
+            let lift = above(End::From) - above(End::To);
+            lifted |= lift != std::mem::replace(&mut self.lift[line.index()], lift);
             self.sense[line.index()] = match self.reach.direction(line) {
                 Direction::Both | Direction::Neither => 0.0,
                 Direction::Forward => 1.0,
@@ -213,7 +215,16 @@ impl<'n> System<'n> {
             self.held[ground.index()] = true;
             state.heads[ground.index()] = 0.0;
         }
-        self.strip_leaves(state);
+        for (line, was_live) in self.was_live.iter_mut().enumerate() {
+            *was_live = self.roles[line] == Role::Live;
+        }
+        if changed {
+            self.strip_leaves(state);
+        }
+        if changed || lifted {
+            self.gather_live();
+        }
+        self.fold_leaves(state);
         for (line, start) in self.start_flow.iter_mut().enumerate() {
             let flow = ordinary_flow(self.network, settings, line);
             *start = if self.sense[line] < 0.0 { -flow } else { flow };
@@ -221,10 +232,10 @@ impl<'n> System<'n> {
         Ok(())
     }
 
+    /// Finds the leaves and who is left.
     fn strip_leaves(&mut self, state: &mut State) {
         self.degree.fill(0);
         for (i, &(from, to)) in self.ends.iter().enumerate() {
-            self.was_live[i] = self.roles[i] == Role::Live;
             let used = self.reach.in_use(self.network, LineId(i as u32));
             self.roles[i] = if used { Role::Live } else { Role::Idle };
             if used {
@@ -253,14 +264,6 @@ impl<'n> System<'n> {
             let (line, parent) = (line.index(), parent.index());
             self.roles[line] = Role::Leaf;
             state.shut[line] = false;
-            // continuity: the line brings the leaf exactly what it draws
-            let brings = self.draws[node as usize];
-            state.flows[line] = if self.ends[line].1 == node {
-                brings
-            } else {
-                -brings
-            };
-            self.draws[parent] += brings;
             self.degree[node as usize] = 0;
             self.degree[parent] -= 1;
             self.leaves.push(Leaf {
@@ -275,7 +278,17 @@ impl<'n> System<'n> {
         for (node, free) in self.free.iter_mut().enumerate() {
             *free = self.places[node].filter(|_| !self.held[node] && self.degree[node] > 0);
         }
-        self.gather_live();
+    }
+
+    /// Continuity: the line of a leaf brings exactly what the leaf draws, and what lies beyond it.
+    fn fold_leaves(&mut self, state: &mut State) {
+        for leaf in &self.leaves {
+            let line = leaf.line as usize;
+            let brings = self.draws[leaf.node as usize];
+            let towards = self.ends[line].1 == leaf.node;
+            state.flows[line] = if towards { brings } else { -brings };
+            self.draws[leaf.parent as usize] += brings;
+        }
     }
 
     fn gather_live(&mut self) {
