@@ -29,6 +29,12 @@ pub(crate) enum Command {
     /// Solve every distinct set of running pumps in every case, and say what each further pump really adds
     #[command(after_help = DUTY_EXAMPLES)]
     Duty(DutyOptions),
+    /// Run one staging plan over the shift: what becomes of tanks and pumps, with exact times
+    #[command(after_help = SHIFT_EXAMPLES)]
+    Shift(ShiftOptions),
+    /// Run several staging plans over the same shift and put them in order
+    #[command(after_help = COMPARE_EXAMPLES)]
+    Compare(CompareOptions),
 }
 
 const SOLVE_EXAMPLES: &str = "\
@@ -52,6 +58,21 @@ Exit codes:
   0  the table was made, needs met or not
   1  a need is unmet in every set of some case, and --fail-unmet was given
   2  bad input, or a run that broke";
+
+const SHIFT_EXAMPLES: &str = "\
+Examples:
+  dutybank shift networks/meadow_lift_station.yaml --plan wide_common_stop
+  dutybank shift networks/meadow_lift_station.yaml --plan wide_common_stop --case storm --csv run.csv --events log.csv
+
+Exit codes: 0 the run was made; 2 bad input, or a run that broke";
+
+const COMPARE_EXAMPLES: &str = "\
+Examples:
+  dutybank compare networks/meadow_lift_station.yaml
+  dutybank compare networks/meadow_lift_station.yaml --case storm --csv runs.csv --scores scores.csv
+  dutybank compare networks/meadow_lift_station.yaml --weights spilled=1000,starts=0.2,energy=0.1
+
+Exit codes: 0 the runs were made; 2 bad input, or a run that broke";
 
 #[derive(Args)]
 pub(crate) struct FileOption {
@@ -125,4 +146,50 @@ pub(crate) struct DutyOptions {
     /// Exit with 1 if in some case no set meets all needs
     #[arg(long)]
     pub fail_unmet: bool,
+}
+
+#[derive(Args)]
+pub(crate) struct ShiftOptions {
+    #[command(flatten)]
+    pub input: FileOption,
+    #[command(flatten)]
+    pub changes: ChangeOptions,
+    /// Which plan of the file's `staging`
+    #[arg(long, value_name = "NAME")]
+    pub plan: Option<String>,
+    /// Write the time series to this CSV file: a row at each report time and at the exact time of every event
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
+    /// Write what happened, in plain words with its cause, to this CSV file
+    #[arg(long, value_name = "FILE")]
+    pub events: Option<PathBuf>,
+    /// Print one JSON object instead of tables
+    #[arg(long)]
+    pub json: bool,
+}
+
+#[derive(Args)]
+pub(crate) struct CompareOptions {
+    #[command(flatten)]
+    pub input: FileOption,
+    #[command(flatten)]
+    pub changes: ChangeOptions,
+    /// Which plans; all if not given
+    #[arg(long, value_name = "NAME,..", value_delimiter = ',')]
+    pub plans: Option<Vec<String>>,
+    /// Write all time series to this CSV file, with a column `plan`
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
+    /// Write what happened in each run to this CSV file
+    #[arg(long, value_name = "FILE")]
+    pub events: Option<PathBuf>,
+    /// Write the scorecard to this CSV file
+    #[arg(long, value_name = "FILE")]
+    pub scores: Option<PathBuf>,
+    /// Rank by a weighted sum instead: `spilled=1000,starts=0.2,cost=1`
+    #[arg(long, value_name = "MEASURE=NUMBER,..", value_delimiter = ',')]
+    pub weights: Vec<String>,
+    /// Print a JSON list of runs instead of tables
+    #[arg(long)]
+    pub json: bool,
 }

@@ -32,7 +32,7 @@ pub(super) fn duty(options: &DutyOptions) -> Result<(), Failure> {
     let gains = gains(&base.network, &base.needs, base.network.settings());
     if let Some(pending) = pending {
         let grid = whole_table(options, &solved, &base);
-        pending.write(
+        pending.write_whole(
             &grid
                 .csv(&base.units)
                 .map_err(|why| Failure::Broken(why.to_string()))?,

@@ -155,20 +155,39 @@ impl Pending {
         })
     }
 
-    pub fn write(mut self, bytes: &[u8]) -> Result<(), Failure> {
-        let broken = |why: std::io::Error| {
-            Failure::Broken(format!("{} cannot be written: {why}", self.path.display()))
-        };
-        self.file
-            .write_all(bytes)
-            .and_then(|()| self.file.flush())
-            .map_err(broken)?;
-        readable_by_all(&self.file);
-        self.file
-            .persist(&self.path)
-            .map(|_| ())
-            .map_err(|why| broken(why.error))
+    pub fn write_whole(mut self, bytes: &[u8]) -> Result<(), Failure> {
+        let written = self.file.write_all(bytes).and_then(|()| self.file.flush());
+        written.map_err(|why| self.broken(&why))?;
+        self.place()
     }
+
+    /// Puts what was written in its place.
+    pub fn place(self) -> Result<(), Failure> {
+        readable_by_all(&self.file);
+        let path = self.path;
+        let placed = self.file.persist(&path);
+        placed
+            .map(|_| ())
+            .map_err(|why| cannot_write(&path, &why.error))
+    }
+
+    fn broken(&self, why: &std::io::Error) -> Failure {
+        cannot_write(&self.path, why)
+    }
+}
+
+impl Write for Pending {
+    fn write(&mut self, bytes: &[u8]) -> std::io::Result<usize> {
+        self.file.write(bytes)
+    }
+
+    fn flush(&mut self) -> std::io::Result<()> {
+        self.file.flush()
+    }
+}
+
+fn cannot_write(path: &Path, why: &std::io::Error) -> Failure {
+    Failure::Broken(format!("{} cannot be written: {why}", path.display()))
 }
 
 /// Temporary files are private; results are files like any other.

@@ -2,8 +2,10 @@
 
 mod args;
 mod check;
+mod compare;
 mod duty;
 mod files;
+mod shift;
 mod solve;
 
 use std::process::ExitCode;
@@ -34,6 +36,8 @@ pub fn run() -> ExitCode {
         Command::Check(options) => check::check(options),
         Command::Solve(options) => solve::solve(options),
         Command::Duty(options) => duty::duty(options),
+        Command::Shift(options) => shift::shift(options),
+        Command::Compare(options) => compare::compare(options),
     };
     match outcome {
         Ok(()) | Err(Failure::PipeClosed) => ExitCode::SUCCESS,

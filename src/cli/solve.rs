@@ -1,7 +1,7 @@
 //! `dutybank solve`: the system as it stands.
 
 use super::Failure;
-use super::args::SolveOptions;
+use super::args::{ChangeOptions, SolveOptions};
 use super::files::{Input, Pending, print};
 use crate::output::words::Words;
 use crate::output::{self, json};
@@ -11,12 +11,7 @@ use crate::study::assessment::{Assessment, assess_balances};
 
 pub(super) fn solve(options: &SolveOptions) -> Result<(), Failure> {
     let input = Input::open(&options.input.file)?;
-    let mut changes = input.changes(&options.changes)?;
-    let mut system = read(&input, &changes)?;
-    if let Some(running) = &options.changes.running {
-        changes.extend(only_running(&system, running)?);
-        system = read(&input, &changes)?;
-    }
+    let (system, _) = read_changed(&input, &options.changes)?;
     if let Some(folder) = &options.csv {
         std::fs::create_dir_all(folder).map_err(|why| {
             Failure::Broken(format!("{} cannot be made: {why}", folder.display()))
@@ -49,6 +44,20 @@ pub(super) fn solve(options: &SolveOptions) -> Result<(), Failure> {
     } else {
         Ok(())
     }
+}
+
+/// The system with the changes that the command line asks for, and those.
+pub(super) fn read_changed(
+    input: &Input,
+    options: &ChangeOptions,
+) -> Result<(System, Vec<Change>), Failure> {
+    let mut changes = input.changes(options)?;
+    let mut system = read(input, &changes)?;
+    if let Some(running) = &options.running {
+        changes.extend(only_running(&system, running)?);
+        system = read(input, &changes)?;
+    }
+    Ok((system, changes))
 }
 
 pub(super) fn read(input: &Input, changes: &[Change]) -> Result<System, Failure> {
@@ -95,7 +104,7 @@ fn write_tables(
         .collect::<Result<_, Failure>>()?;
     files
         .into_iter()
-        .try_for_each(|(pending, bytes)| pending.write(&bytes))
+        .try_for_each(|(pending, bytes)| pending.write_whole(&bytes))
 }
 
 fn text(system: &System, assessment: &Assessment) -> String {
