@@ -250,9 +250,9 @@ impl Story {
     }
 }
 
-/// `43 min`, `7 h 17 min`, `3 d 4 h`.
+/// `43 min`, `7 h 17 min`, `3 d 4 h`: whole minutes that are surely there.
 fn span(seconds: f64) -> String {
-    let minutes = (seconds / MINUTE).round() as u64;
+    let minutes = (seconds / MINUTE).floor() as u64;
     match (minutes / 1440, minutes / 60 % 24, minutes % 60) {
         (0, 0, m) => format!("{m} min"),
         (0, h, m) => format!("{h} h {m} min"),

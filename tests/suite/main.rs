@@ -3,6 +3,7 @@
 mod bad;
 mod banks;
 mod command;
+mod command_over_time;
 mod description;
 mod effort;
 mod heads;
