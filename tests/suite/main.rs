@@ -16,6 +16,7 @@ mod published_over_time;
 mod random;
 mod readme;
 mod reference;
+mod reference_over_time;
 mod shift_closed_forms;
 mod shift_meadow;
 mod shift_read;
