@@ -46,6 +46,7 @@ pub fn station() -> Network {
         npsh_required: None,
         best_efficiency_flow: Some(0.07),
         motor: None,
+        drive: None,
     });
     for (k, &d) in d.iter().enumerate() {
         let setting = PumpSetting {

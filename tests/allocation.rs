@@ -91,8 +91,33 @@ fn a_solve_allocates_nothing() {
         }
     }
     assert!(cold_solves > 1000 && warm_solves > 1000);
+    steps_over_time_allocate_nothing();
     // and it does count
     let before = CALLS.load(Ordering::Relaxed);
     let kept = std::hint::black_box(vec![1_u8; 100]);
     assert!(CALLS.load(Ordering::Relaxed) > before && kept.len() == 100);
+}
+
+/// A tank that drains for a day, and one that drains for ten: what is allocated is for the run, not for its steps.
+fn steps_over_time_allocate_nothing() {
+    let text = "
+nodes: {tank: {tank: {floor: 5 m, depth: 9 m, area: 4000 m2, level: 8 m, inflow: 3}}, out: {outlet: 0}}
+lines: {drain: {from: tank, to: out, pipe: {length: 400 m, bore: 150 mm, roughness: 0.1 mm}}}
+shift: {starts: \"00:00\", lasts: 24 h}
+";
+    let none = |_: &str| Err(std::io::Error::other("no other file"));
+    let document = dutybank::read::Document::parse(text.as_bytes()).unwrap();
+    let system = document.system(&[], &none).unwrap();
+    let mut shift = document.over_time(&system, &[], &none).unwrap().shift;
+    let plan = dutybank::shift::Plan::default();
+    let mut allocated = |days: f64| {
+        shift.lasts = days * 86_400.0;
+        let before = CALLS.load(Ordering::Relaxed);
+        let outcome = dutybank::shift::run(&system.network, &shift, &plan, &mut ()).unwrap();
+        (CALLS.load(Ordering::Relaxed) - before, outcome.effort.steps)
+    };
+    let (day, few) = allocated(1.0);
+    let (ten_days, many) = allocated(10.0);
+    assert!(many > few, "{few} and {many} steps");
+    assert_eq!(day, ten_days, "calls for {few} and {many} steps");
 }

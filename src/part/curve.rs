@@ -26,10 +26,10 @@ impl std::fmt::Display for CurveError {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         match self {
             Self::TooFewPoints => write!(f, "a curve needs at least two points"),
-            Self::Lengths { x, y } => write!(f, "{x} flows but {y} values"),
+            Self::Lengths { x, y } => write!(f, "{x} points along it but {y} values"),
             Self::NotRising { at } => write!(
                 f,
-                "flow number {} does not lie above the one before it",
+                "point number {} does not lie beyond the one before it",
                 at + 1
             ),
             Self::NotFinite { at } => write!(f, "figure number {} is not a finite number", at + 1),

@@ -23,6 +23,8 @@ pub struct PumpModel {
     pub best_efficiency_flow: Option<f64>,
     /// The motor.
     pub motor: Option<Motor>,
+    /// Efficiency of a variable-speed drive over the speed ratio; none: no drive.
+    pub drive: Option<Efficiency>,
 }
 
 /// What the data sheet gives for power.
@@ -37,12 +39,34 @@ pub enum PowerCurve {
 }
 
 /// A motor.
-#[derive(Clone, Copy, Debug, PartialEq)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Motor {
     /// Rated shaft power, W.
     pub rated: f64,
-    /// Efficiency as a ratio; 1 where it is not given is not assumed.
-    pub efficiency: Option<f64>,
+    /// Efficiency over load (shaft power over rated); one that is not given is not assumed to be 1.
+    pub efficiency: Option<Efficiency>,
+}
+
+/// An efficiency that may depend on a ratio: a motor's on its load, a drive's on the speed.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Efficiency {
+    /// Always the same, above 0, at most 1.
+    Fixed(f64),
+    /// Over the ratio, above 0 and at most 1; held at its ends.
+    Over(Curve),
+}
+
+impl Efficiency {
+    /// The efficiency at a ratio.
+    pub fn at(&self, ratio: f64) -> f64 {
+        match self {
+            Self::Fixed(value) => *value,
+            Self::Over(curve) => {
+                let (low, high) = curve.domain();
+                curve.at(ratio.clamp(low, high)).value
+            }
+        }
+    }
 }
 
 /// Density for which data sheets state shaft power, kg/m3.
@@ -62,6 +86,15 @@ impl PumpModel {
     /// First flow of the head curve, m3/s.
     pub fn start_of_curve(&self) -> f64 {
         self.head.domain().0
+    }
+
+    /// Electrical power (W) behind a shaft power (W) at a speed ratio: shaft over motor and drive efficiency. None where the
+    /// motor's is not known.
+    pub fn electrical_power(&self, shaft: f64, speed: f64) -> Option<f64> {
+        let motor = self.motor.as_ref()?;
+        let of_motor = motor.efficiency.as_ref()?.at(shaft / motor.rated);
+        let of_drive = self.drive.as_ref().map_or(1.0, |drive| drive.at(speed));
+        (of_motor > 0.0 && of_drive > 0.0).then(|| shaft / (of_motor * of_drive))
     }
 
     /// Shaft power (W) at the model's speed, unworn, with liquid of `density` (kg/m3).
@@ -155,5 +188,35 @@ impl Covers {
             Cover::Upper => &self.upper,
             Cover::Lower => &self.lower,
         }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// 10 kW at the shaft, motor 20 kW: half load, 90 %; drive 96 % at 80 % speed. Invented.
+    #[test]
+    fn losses_of_motor_and_drive_multiply() {
+        let over = |x: &[f64], y: &[f64]| Some(Efficiency::Over(Curve::through(x, y).unwrap()));
+        let model = PumpModel {
+            name: String::new(),
+            speed: None,
+            impeller: None,
+            head: Curve::through(&[0.0, 1.0], &[10.0, 5.0]).unwrap(),
+            power: PowerCurve::Unknown,
+            npsh_required: None,
+            best_efficiency_flow: None,
+            motor: Some(Motor {
+                rated: 20e3,
+                efficiency: over(&[0.25, 0.5, 1.0], &[0.8, 0.9, 0.92]),
+            }),
+            drive: over(&[0.6, 0.8, 1.0], &[0.93, 0.96, 0.97]),
+        };
+        let power = model.electrical_power(10e3, 0.8).unwrap();
+        assert!((power - 10e3 / (0.9 * 0.96)).abs() < 1e-9);
+        // held at its ends
+        let power = model.electrical_power(1e3, 1.2).unwrap();
+        assert!((power - 1e3 / (0.8 * 0.97)).abs() < 1e-9);
     }
 }

@@ -129,6 +129,7 @@ impl Lowering<'_> {
                 npsh_required: model.npsh_required,
                 best_efficiency_flow: model.best_efficiency_flow,
                 motor: model.motor,
+                drive: model.drive,
             });
             self.models.insert(model.name, position);
         }

@@ -3,19 +3,20 @@
 use super::context::{Bound, Context, Fields, found};
 use super::spec::{ModelSpec, SiteSpec};
 use super::table::{self, Load};
-use super::yaml::{Key, Marked};
+use super::yaml::{Form, Key, Marked};
 use crate::diagnostic::{Diagnostic, Place};
 use crate::part::curve::{Curve, Polynomial};
-use crate::part::pump::{Motor, PowerCurve};
+use crate::part::pump::{Efficiency, Motor, PowerCurve};
 use crate::units::{Kind, SpeedValue};
 
-const MODEL_KEYS: [&str; 6] = [
+const MODEL_KEYS: [&str; 7] = [
     "speed",
     "impeller",
     "curve",
     "head_polynomial",
     "flow_limit",
     "motor",
+    "drive",
 ];
 /// Columns of a curve, what they are, and the range their figures must lie in.
 pub(super) const COLUMNS: [(&str, Kind, Bound); 5] = [
@@ -69,6 +70,7 @@ fn model(
         )
     });
     let motor = fields.get("motor").map(|node| motor(cx, node, &what));
+    let drive = fields.get("drive").map(|node| drive(cx, node, &what));
     let columns = match fields.get("curve") {
         Some(node) => read_columns(cx, node, &what, load),
         None => Some(Columns::default()),
@@ -98,6 +100,7 @@ fn model(
         npsh_required: npsh_required?,
         best_efficiency_flow,
         motor: motor.flatten(),
+        drive: drive.flatten(),
     })
 }
 
@@ -114,6 +117,64 @@ fn speed(cx: &mut Context, node: &Marked, what: &str) -> Option<f64> {
     }
 }
 
+/// A drive: `{efficiency: 97 %}`, or over the speed.
+fn drive(cx: &mut Context, node: &Marked, what: &str) -> Option<Efficiency> {
+    let what = format!("the drive of {what}");
+    let fields = cx.map(node, &what, &["efficiency"])?;
+    let node = cx.required(&fields, "efficiency", &what, "97 %")?;
+    efficiency(cx, node, &what, "speed")
+}
+
+/// One per cent, or a map of two lists: over the `ratio` (load or speed, in per cent).
+fn efficiency(cx: &mut Context, node: &Marked, what: &str, ratio: &str) -> Option<Efficiency> {
+    let label = format!("`efficiency` of {what}");
+    if !matches!(node.value, Form::Map(_)) {
+        let value = cx.quantity(node, &label, Kind::Percent, Bound::Share)?;
+        return usable(cx, node, &label, value).map(Efficiency::Fixed);
+    }
+    let fields = cx.map(node, &label, &[ratio, "efficiency"])?;
+    let mut column = |key: &str, example: &str, bound| {
+        let list = cx.required(&fields, key, &label, example)?;
+        let label = format!("`{key}` in the efficiency of {what}");
+        let items = cx.list(list, &label, example)?;
+        let values: Vec<Option<f64>> = items
+            .iter()
+            .map(|item| cx.quantity(item, &label, Kind::Percent, bound))
+            .collect();
+        values.into_iter().collect::<Option<Vec<f64>>>()
+    };
+    let ratios = column(ratio, "[25, 50, 100]", Bound::NotNegative);
+    let values = column("efficiency", "[88, 92, 93]", Bound::Share);
+    let (ratios, values) = (ratios?, values?);
+    let lowest = values.iter().copied().fold(1.0, f64::min);
+    usable(cx, node, &label, lowest)?;
+    match Curve::through(&ratios, &values) {
+        Ok(curve) => Some(Efficiency::Over(curve)),
+        Err(why) => {
+            let message = format!("{label} makes no curve: {why}");
+            let help =
+                format!("`{ratio}` must rise from point to point, with one efficiency for each");
+            cx.push(Diagnostic::error("curve", node.place, message).help(help));
+            None
+        }
+    }
+}
+
+/// An efficiency above zero; one that looks like a fraction draws a caution.
+fn usable(cx: &mut Context, node: &Marked, label: &str, value: f64) -> Option<f64> {
+    if value == 0.0 {
+        let message = format!("{label} must be above zero, found {}", found(node));
+        cx.error("out-of-range", node.place, message);
+        return None;
+    }
+    if value <= 0.01 {
+        let message = format!("{label} is {}", cx.units.format(Kind::Percent, value));
+        let help = "a bare number is in per cent: write 93 for 93 %";
+        cx.push(Diagnostic::caution("efficiency-fraction", node.place, message).help(help));
+    }
+    Some(value)
+}
+
 fn motor(cx: &mut Context, node: &Marked, what: &str) -> Option<Motor> {
     let what = format!("the motor of {what}");
     let fields = cx.map(node, &what, &["rated", "efficiency"])?;
@@ -124,24 +185,7 @@ fn motor(cx: &mut Context, node: &Marked, what: &str) -> Option<Motor> {
     });
     let efficiency = match fields.get("efficiency") {
         None => None,
-        Some(node) => {
-            let label = format!("`efficiency` of {what}");
-            let value = cx.quantity(node, &label, Kind::Percent, Bound::Share)?;
-            if value > 0.0 && value <= 0.01 {
-                let message = format!("{label} is {}", cx.units.format(Kind::Percent, value));
-                let help = "a bare number is in per cent: write 93 for 93 %";
-                cx.push(Diagnostic::caution("efficiency-fraction", node.place, message).help(help));
-            }
-            if value == 0.0 {
-                cx.error(
-                    "out-of-range",
-                    node.place,
-                    format!("{label} must be above zero, found {}", found(node)),
-                );
-                return None;
-            }
-            Some(value)
-        }
+        Some(node) => Some(efficiency(cx, node, &what, "load")?),
     };
     Some(Motor {
         rated: rated?,

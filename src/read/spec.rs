@@ -3,7 +3,7 @@
 use crate::diagnostic::Place;
 use crate::fluid::Fluid;
 use crate::part::curve::Curve;
-use crate::part::pump::{Motor, PowerCurve};
+use crate::part::pump::{Efficiency, Motor, PowerCurve};
 use crate::part::quadratic::QuadraticLoss;
 use crate::part::valve::Characteristic;
 use crate::units::SpeedValue;
@@ -154,6 +154,7 @@ pub(super) struct ModelSpec {
     pub npsh_required: Option<Curve>,
     pub best_efficiency_flow: Option<f64>,
     pub motor: Option<Motor>,
+    pub drive: Option<Efficiency>,
 }
 
 #[derive(Clone, Debug)]

@@ -3,37 +3,6 @@
 use super::schedule::Daily;
 use crate::network::{Network, Settings};
 use crate::part::PumpId;
-use crate::part::curve::Curve;
-
-/// An efficiency that may depend on a ratio (load of a motor, speed of a drive).
-#[derive(Clone, Debug)]
-pub enum Efficiency {
-    /// Always the same, above 0, at most 1.
-    Fixed(f64),
-    /// Over the ratio; held at its ends.
-    Over(Curve),
-}
-
-impl Efficiency {
-    fn at(&self, ratio: f64) -> f64 {
-        match self {
-            Self::Fixed(value) => *value,
-            Self::Over(curve) => {
-                let (low, high) = curve.domain();
-                curve.at(ratio.clamp(low, high)).value
-            }
-        }
-    }
-}
-
-/// Motor and drive of one pump.
-#[derive(Clone, Debug, Default)]
-pub struct DriveData {
-    /// Motor efficiency over its load (shaft power over rated); none: as the pump's model has it.
-    pub motor: Option<Efficiency>,
-    /// Drive efficiency over the speed ratio; none: no drive.
-    pub drive: Option<Efficiency>,
-}
 
 /// Shaft power of a running pump at flow `q` (m3/s) in its line, W; 0 when it stands.
 ///
@@ -54,26 +23,6 @@ pub(super) fn shaft_power(
         .model(id)
         .shaft_power(q / s, fluid.density, network.gravity())?;
     Some(s.powi(3) * power)
-}
-
-/// Electrical power behind a shaft power: shaft over motor and drive efficiency, W. None where no efficiency is known.
-pub(super) fn electrical_power(
-    network: &Network,
-    settings: &Settings,
-    drives: &[DriveData],
-    id: PumpId,
-    shaft: f64,
-) -> Option<f64> {
-    let model = network.model(id);
-    let drive = drives.get(id.index());
-    let motor = match drive.and_then(|drive| drive.motor.as_ref()) {
-        Some(efficiency) => efficiency.at(model.motor.map_or(1.0, |motor| shaft / motor.rated)),
-        None => model.motor?.efficiency?,
-    };
-    let drive = drive
-        .and_then(|drive| drive.drive.as_ref())
-        .map_or(1.0, |efficiency| efficiency.at(settings.pump(id).speed));
-    (motor > 0.0 && drive > 0.0).then(|| shaft / (motor * drive))
 }
 
 /// What electricity costs.

@@ -36,7 +36,7 @@ mod staging;
 mod tally;
 mod tank;
 
-pub use energy::{DriveData, Efficiency, Tariff, TariffWindow};
+pub use energy::{Tariff, TariffWindow};
 pub use engine::{Effort, Outcome, run};
 pub use error::ShiftError;
 pub use event::{Event, Wait, What, Who, Why};

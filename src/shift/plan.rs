@@ -1,6 +1,6 @@
 //! What happens to a network over a shift, and the rules that decide which pumps run: data only.
 
-use super::energy::{DriveData, Tariff};
+use super::energy::Tariff;
 use super::schedule::{Daily, Schedule};
 use super::score::Limits;
 use super::tank::Tank;
@@ -54,8 +54,6 @@ pub struct Shift {
     pub tariff: Option<Tariff>,
     /// CO2 per energy, kg/J.
     pub carbon: Option<f64>,
-    /// Motors and drives, one per pump; empty: motor efficiency as the pump models have it, and no drive.
-    pub drives: Vec<DriveData>,
     /// What the score counts as outside.
     pub limits: Limits,
     /// Relative tolerance of the volumes in a step; none: 1e-9.

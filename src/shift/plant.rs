@@ -6,7 +6,7 @@
 mod balance;
 
 use super::books::Books;
-use super::energy::{electrical_power, shaft_power};
+use super::energy::shaft_power;
 use super::hold::Holding;
 use super::plan::{Follow, Shift, Varying};
 use crate::network::{End, LineId, Network, NodeId, Settings};
@@ -371,15 +371,9 @@ impl<'a> Plant<'a> {
             let i = pump.index();
             let q = answer.flow(self.network.line_of(pump));
             let shaft = shaft_power(self.network, &self.settings, pump, q);
-            let electrical = shaft.and_then(|shaft| {
-                electrical_power(
-                    self.network,
-                    &self.settings,
-                    &self.shift.drives,
-                    pump,
-                    shaft,
-                )
-            });
+            let speed = self.settings.pump(pump).speed;
+            let model = self.network.model(pump);
+            let electrical = shaft.and_then(|shaft| model.electrical_power(shaft, speed));
             let electrical = match electrical {
                 None if !self.settings.pump(pump).running => 0.0,
                 other => other.unwrap_or(f64::NAN),

@@ -43,7 +43,7 @@ pub struct PumpOperation {
     pub efficiency: Option<f64>,
     /// Shaft power, W; 0 when stopped.
     pub shaft_power: Option<f64>,
-    /// Electrical power, shaft power over motor efficiency, W; 0 when stopped.
+    /// Electrical power, shaft power over motor and drive efficiency, W; 0 when stopped.
     pub electrical_power: Option<f64>,
     /// Shaft power over the motor's rating.
     pub motor_load: Option<f64>,
@@ -163,10 +163,9 @@ pub fn pump(
         efficiency: efficiency(model, q, weight * flow * head, shaft_power, setting.wear),
         shaft_power,
         electrical_power: shaft_power
-            .zip(model.motor.and_then(|motor| motor.efficiency))
-            .map(|(power, efficiency)| power / efficiency),
+            .and_then(|power| model.electrical_power(power, setting.speed)),
         motor_load: shaft_power
-            .zip(model.motor)
+            .zip(model.motor.as_ref())
             .map(|(power, motor)| power / motor.rated),
         suction_pressure,
         npsh_available,

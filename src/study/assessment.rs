@@ -290,7 +290,7 @@ fn pump_cautions(
         }
         Place::OnCurve => {}
     }
-    if let (Some(power), Some(motor)) = (pump.shaft_power, model.motor)
+    if let (Some(power), Some(motor)) = (pump.shaft_power, model.motor.as_ref())
         && power > motor.rated
     {
         cautions.push(Caution::Overloaded {

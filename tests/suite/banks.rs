@@ -71,6 +71,7 @@ impl Maker {
             npsh_required: None,
             best_efficiency_flow: None,
             motor: None,
+            drive: None,
         });
         let pump = Pump {
             name: name.into(),

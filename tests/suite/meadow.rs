@@ -9,7 +9,7 @@ use dutybank::fluid::Fluid;
 use dutybank::network::{Network, NetworkBuilder, NodeKind, PumpSetting};
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
-use dutybank::part::pump::{Motor, PowerCurve, Pump, PumpModel};
+use dutybank::part::pump::{Efficiency, Motor, PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::{Part, PumpId};
 use dutybank::shift::{
@@ -71,8 +71,9 @@ impl Sheet<'_> {
             best_efficiency_flow: Some(1e-3 * self.best),
             motor: Some(Motor {
                 rated: self.rated,
-                efficiency: Some(self.motor),
+                efficiency: Some(Efficiency::Fixed(self.motor)),
             }),
+            drive: None,
         }
     }
 }

@@ -7,7 +7,7 @@ use dutybank::network::{Network, NetworkBuilder, NodeId, NodeKind, PumpSetting, 
 use dutybank::part::Part;
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
-use dutybank::part::pump::{Motor, PowerCurve, Pump, PumpModel};
+use dutybank::part::pump::{Efficiency, Motor, PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::valve::{Characteristic, Valve};
 
@@ -324,8 +324,9 @@ impl Maker {
             best_efficiency_flow: Some(0.7 * end),
             motor: Some(Motor {
                 rated: 2e4,
-                efficiency: Some(0.92),
+                efficiency: Some(Efficiency::Fixed(0.92)),
             }),
+            drive: None,
         })
     }
 

@@ -194,6 +194,7 @@ fn parabolic(net: &mut NetworkBuilder, shutoff: f64, c: f64, end: f64) -> PumpId
         npsh_required: None,
         best_efficiency_flow: None,
         motor: None,
+        drive: None,
     });
     let pump = Pump {
         name: "pump".to_owned(),
@@ -246,6 +247,7 @@ fn sump(inflow: f64) -> (Network, Shift, Plan) {
         npsh_required: None,
         best_efficiency_flow: None,
         motor: None,
+        drive: None,
     });
     let pump = Pump {
         name: "pump".to_owned(),
