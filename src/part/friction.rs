@@ -307,30 +307,31 @@ impl DarcyWeisbachBatch {
 
     /// Works the friction factors of all pipes out for `flows`, one per pipe, m3/s; read them with [`Self::loss`].
     pub fn evaluate(&mut self, flows: &[f64]) {
-        let mut start = 0;
-        while start + LANES <= self.laws.len() {
-            self.evaluate_lanes::<LANES>(flows, start);
-            start += LANES;
+        let n = self.laws.len();
+        let whole = n - n % LANES;
+        for start in (0..whole).step_by(LANES) {
+            let at = |lane: usize| start + lane;
+            let (root_f, share) = self.lanes(flows, at);
+            self.root_f[start..start + LANES].copy_from_slice(&root_f);
+            self.share[start..start + LANES].copy_from_slice(&share);
         }
-        for single in start..self.laws.len() {
-            self.evaluate_lanes::<1>(flows, single);
+        if whole < n {
+            // The last pipe stands in for those that would fill the lanes up.
+            let (root_f, share) = self.lanes(flows, |lane| (whole + lane).min(n - 1));
+            self.root_f[whole..].copy_from_slice(&root_f[..n - whole]);
+            self.share[whole..].copy_from_slice(&share[..n - whole]);
         }
     }
 
     #[inline(always)]
-    fn evaluate_lanes<const N: usize>(&mut self, flows: &[f64], start: usize) {
-        let lanes = start..start + N;
-        let (flows, reynolds) = (
-            &flows[lanes.clone()],
-            &self.reynolds_per_flow[lanes.clone()],
-        );
-        let rough = &self.rough_per_flow[lanes.clone()];
+    fn lanes(&self, flows: &[f64], at: impl Fn(usize) -> usize) -> ([f64; LANES], [f64; LANES]) {
         // Slower flows are laminar or blended and do not use the result.
-        let re = std::array::from_fn(|n| at_least(reynolds[n] * flows[n].abs(), TURBULENT_START));
-        let a = std::array::from_fn(|n| rough[n] * flows[n].abs());
-        let (root_f, share) = colebrook::<N>(re, a);
-        self.root_f[lanes.clone()].copy_from_slice(&root_f);
-        self.share[lanes].copy_from_slice(&share);
+        let re = std::array::from_fn(|lane| {
+            let i = at(lane);
+            at_least(self.reynolds_per_flow[i] * flows[i].abs(), TURBULENT_START)
+        });
+        let a = std::array::from_fn(|lane| self.rough_per_flow[at(lane)] * flows[at(lane)].abs());
+        colebrook(re, a)
     }
 
     /// The loss of pipe `i` at the flow `q` last given to [`Self::evaluate`].

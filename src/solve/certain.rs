@@ -58,6 +58,7 @@ impl Certain {
     /// Brings `state` close to the minimum: heads, flows and which one-way lines are shut. The fast path, started from
     /// there with the plain laws, finishes.
     pub fn approach(&mut self, system: &mut System, state: &mut State, effort: &mut Effort) {
+        state.cold = false;
         self.damping = 1e-3;
         for extra in EXTRA_SLOPES {
             self.extra_slope = extra;

@@ -147,8 +147,9 @@ impl Newton {
     }
 
     /// Residuals at `state`, and the system for the next step; returns the worst residuals over their tolerances.
-    fn evaluate(&mut self, system: &mut System, state: &State) -> Worst {
+    fn evaluate(&mut self, system: &mut System, state: &mut State) -> Worst {
         system.laws.evaluate(&state.flows);
+        let cold = std::mem::take(&mut state.cold);
         let System {
             laws,
             factor,
@@ -172,8 +173,14 @@ impl Newton {
             if state.shut[line] {
                 continue;
             }
-            let q = state.flows[line];
-            let loss = laws.loss_at(line, q);
+            let mut q = state.flows[line];
+            let mut loss = laws.loss_at(line, q);
+            if cold && live.passive {
+                // Which way it flows is not known yet: from a standstill, with the resistance of an ordinary flow.
+                loss.slope = (loss.head / q).abs();
+                (loss.head, q) = (0.0, 0.0);
+                state.flows[line] = 0.0;
+            }
             let drop = live.drop(&state.heads);
             let r = loss.head - drop;
             // A law that is flat at no flow would leave the system singular there.

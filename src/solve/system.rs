@@ -47,6 +47,8 @@ pub(super) struct Live {
     /// 0 both ways, 1 forward only, -1 backward only.
     pub sense: f64,
     pub lift: f64,
+    /// Nothing in it says which way it flows: both ways are open and no pump is in it.
+    pub passive: bool,
 }
 
 impl Live {
@@ -72,6 +74,8 @@ pub(super) struct State {
     pub flows: Vec<f64>,
     /// Per line: a live one-way line that is held shut.
     pub shut: Vec<bool>,
+    /// Nothing is known of the flows in passive lines: what stands there is a size without a direction.
+    pub cold: bool,
 }
 
 pub(super) struct System<'n> {
@@ -170,6 +174,7 @@ impl<'n> System<'n> {
             heads: vec![0.0; n],
             flows: vec![0.0; m],
             shut: vec![false; m],
+            cold: false,
         }
     }
 
@@ -313,6 +318,8 @@ impl<'n> System<'n> {
                 slot,
                 sense: self.sense[line],
                 lift: self.lift[line],
+                passive: self.sense[line] == 0.0
+                    && self.network.lines()[line].pumps().next().is_none(),
             });
         }
     }
@@ -324,6 +331,7 @@ impl<'n> System<'n> {
 
     /// A start when nothing is known: ordinary flows, all lines open, heads amid the held ones.
     pub fn cold_start(&self, state: &mut State) {
+        state.cold = true;
         let (mut sum, mut count) = (0.0, 0.0);
         for (head, _) in state
             .heads
@@ -350,6 +358,7 @@ impl<'n> System<'n> {
 
     /// A start from the last answer; lines that were not live then get their ordinary flow.
     pub fn warm_start(&self, state: &mut State) {
+        state.cold = false;
         for live in &self.live {
             let line = live.index();
             // What was shut as a one-way line is not once water can pass both ways: nothing would open it again.
