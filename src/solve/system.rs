@@ -331,7 +331,10 @@ impl<'n> System<'n> {
 
     /// A start when nothing is known: ordinary flows, all lines open, heads amid the held ones.
     pub fn cold_start(&self, state: &mut State) {
-        state.cold = true;
+        /// In a station lines are drawn the way they flow, and ordinary flows are a better start than a standstill (6 iterations
+        /// against 7); in streets and grids they are not (13 against 10, and 14 against 9).
+        const LINES_OF_A_STATION: usize = 100;
+        state.cold = self.live.len() > LINES_OF_A_STATION;
         let (mut sum, mut count) = (0.0, 0.0);
         for (head, _) in state
             .heads
