@@ -47,6 +47,7 @@ pub fn station() -> Network {
         best_efficiency_flow: Some(0.07),
         motor: None,
         drive: None,
+        maker: dutybank::part::pump::MakerLimits::default(),
     });
     for (k, &d) in d.iter().enumerate() {
         let setting = PumpSetting {

@@ -13,6 +13,7 @@ use crate::part::PumpId;
 use crate::read::{Case, System};
 use crate::study::duty::{Combination, MOST_SETS, combinations};
 use crate::study::gain::{Gain, gains};
+use crate::study::mains;
 
 /// What `--cases` calls the file as it stands.
 const AS_IS: &str = "as-is";
@@ -224,6 +225,18 @@ fn text(options: &DutyOptions, solved: &[Solved], base: &System, gains: &[Gain])
     for gain in gains {
         out.push_str(&words.gain(gain));
         out.push('\n');
+    }
+    if let Some(case) = solved.first() {
+        let network = &case.system.network;
+        let ranges = mains::ranges(network, &case.combinations);
+        if !ranges.is_empty() {
+            let words = Words {
+                network,
+                units: &case.system.units,
+            };
+            out.push_str(&words.velocities(&ranges, &case.combinations));
+            out.push('\n');
+        }
     }
     if options.worst_first {
         out.push_str(&whole_table(options, solved, base).text(&base.units));

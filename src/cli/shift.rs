@@ -9,9 +9,11 @@ use super::files::{Input, Pending, print};
 use super::solve::read_changed;
 use crate::output;
 use crate::output::shift::{Story, Telling};
+use crate::output::words::Words;
 use crate::read::{Change, OverTime, System};
 use crate::shift::{Event, Plan, Row, run};
 use crate::study::ranking::Run;
+use crate::study::starts;
 use crate::units::Kind;
 
 pub(super) fn shift(options: &ShiftOptions) -> Result<(), Failure> {
@@ -45,6 +47,17 @@ pub(super) fn shift(options: &ShiftOptions) -> Result<(), Failure> {
     out.push_str(&output::shift::card(&telling, &run));
     out.push('\n');
     out.push_str(&output::shift::pumps(&system.network, &run).text(&system.units));
+    let words = Words {
+        network: &system.network,
+        units: &system.units,
+    };
+    let too_many = starts::too_many(&system.network, &run.score);
+    if !too_many.is_empty() {
+        out.push_str("\nCautions\n");
+    }
+    for (pump, starts, allowed) in too_many {
+        out.push_str(&format!("  - {}\n", words.starts(pump, starts, allowed)));
+    }
     out.push_str(&format!("\n{}\n", output::CAUTION));
     print(&out)
 }

@@ -8,6 +8,7 @@ use crate::output::{self, json};
 use crate::read::{Change, System};
 use crate::solve::Solver;
 use crate::study::assessment::{Assessment, assess_balances};
+use crate::study::threshold::threshold_speeds;
 
 pub(super) fn solve(options: &SolveOptions) -> Result<(), Failure> {
     let input = Input::open(&options.input.file)?;
@@ -19,12 +20,14 @@ pub(super) fn solve(options: &SolveOptions) -> Result<(), Failure> {
     }
     let network = &system.network;
     let settings = network.settings();
-    let balances = Solver::new(network)
+    let mut solver = Solver::new(network);
+    let balances = solver
         .balances(settings)
         .map_err(|why| Failure::Broken(format!("{}: {}", input.name, why.message(network))))?;
     let assessment = assess_balances(network, &system.needs, settings, &balances);
+    let thresholds = threshold_speeds(&mut solver, settings);
     if let Some(folder) = &options.csv {
-        write_tables(&system, &assessment, folder)?;
+        write_tables(&system, &assessment, &thresholds, folder)?;
     }
     if options.json {
         let value = json::solve(
@@ -32,11 +35,12 @@ pub(super) fn solve(options: &SolveOptions) -> Result<(), Failure> {
             &system.needs,
             &system.units,
             &assessment,
+            &thresholds,
             &system.cautions,
         );
         print(&format!("{value:#}\n"))?;
     } else {
-        print(&text(&system, &assessment))?;
+        print(&text(&system, &assessment, &thresholds))?;
     }
     let unmet = assessment.needs.iter().any(|need| !need.met);
     if options.fail_unmet && unmet {
@@ -84,13 +88,15 @@ fn only_running(system: &System, names: &[String]) -> Result<Vec<Change>, Failur
 fn write_tables(
     system: &System,
     assessment: &Assessment,
+    thresholds: &[Option<f64>],
     folder: &std::path::Path,
 ) -> Result<(), Failure> {
     let words = Words {
         network: &system.network,
         units: &system.units,
     };
-    let mut grids = output::solve::grids(&system.network, &system.needs, assessment);
+    let mut grids = output::solve::grids(&words, &system.needs, assessment, thresholds);
+    grids.push(output::limits::grid(&words, assessment, false));
     grids.push(output::solve::cautions(&words, assessment));
     let files: Vec<(Pending, Vec<u8>)> = grids
         .iter()
@@ -107,19 +113,21 @@ fn write_tables(
         .try_for_each(|(pending, bytes)| pending.write_whole(&bytes))
 }
 
-fn text(system: &System, assessment: &Assessment) -> String {
+fn text(system: &System, assessment: &Assessment, thresholds: &[Option<f64>]) -> String {
     let mut out = String::new();
     if let Some(title) = &system.title {
         out.push_str(&format!("{title}\n\n"));
-    }
-    for grid in output::solve::grids(&system.network, &system.needs, assessment) {
-        out.push_str(&grid.text(&system.units));
-        out.push('\n');
     }
     let words = Words {
         network: &system.network,
         units: &system.units,
     };
+    let mut grids = output::solve::grids(&words, &system.needs, assessment, thresholds);
+    grids.push(output::limits::grid(&words, assessment, true));
+    for grid in grids.iter().filter(|grid| !grid.rows.is_empty()) {
+        out.push_str(&grid.text(&system.units));
+        out.push('\n');
+    }
     let mut cautions: Vec<String> = assessment
         .cautions
         .iter()

@@ -3,8 +3,8 @@
 use std::collections::HashSet;
 
 use super::{
-    Bank, Direction, End, Line, LineId, Network, Node, NodeId, NodeKind, PumpSetting, Settings,
-    ValveSetting,
+    Bank, Direction, End, Limits, Line, LineFacts, LineId, Network, Node, NodeId, NodeKind,
+    PumpSetting, Settings, ValveSetting,
 };
 use crate::fluid::Fluid;
 use crate::part::pump::{Covers, Pump, PumpModel};
@@ -99,6 +99,7 @@ impl NetworkBuilder {
                 models: Vec::new(),
                 covers: Vec::new(),
                 settings: Settings::new(),
+                limits: Limits::default(),
                 fluid,
                 gravity,
                 barometer,
@@ -161,6 +162,7 @@ impl NetworkBuilder {
             to,
             ports: [None, None],
             parts,
+            facts: LineFacts::default(),
         });
         self.network.settings.add_line();
         id
@@ -169,6 +171,16 @@ impl NetworkBuilder {
     /// Sets the height (m) of an end of a line above the floor of the tank there.
     pub fn port(&mut self, line: LineId, end: End, height: f64) {
         self.network.lines[line.index()].ports[end as usize] = Some(height);
+    }
+
+    /// Says what is known of a line that its flow does not depend on.
+    pub fn facts(&mut self, line: LineId, facts: LineFacts) {
+        self.network.lines[line.index()].facts = facts;
+    }
+
+    /// The limits that the system is judged by; the defaults if not given.
+    pub fn limits(&mut self, limits: Limits) {
+        self.network.limits = limits;
     }
 
     /// Speed (revolutions per second) and full impeller (m) of a model added before.
@@ -182,6 +194,12 @@ impl NetworkBuilder {
     /// Elevation (m) of a node added before; a reservoir's is its surface, a tank's its floor.
     pub fn elevation(&self, node: NodeId) -> f64 {
         self.network.elevation(node, &self.network.settings)
+    }
+
+    /// Whether a node added before has a free surface: a reservoir or a tank.
+    pub fn has_free_surface(&self, node: NodeId) -> bool {
+        let kind = self.network.node(node).kind;
+        matches!(kind, NodeKind::Reservoir | NodeKind::Tank { .. })
     }
 
     /// Changes the settings the network starts with.

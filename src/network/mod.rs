@@ -5,16 +5,20 @@
 
 mod build;
 mod feasible;
+mod judged;
+mod limits;
 mod need;
 mod reach;
 mod settings;
 
 pub use build::{BuildError, NetworkBuilder};
+pub use limits::{LimitName, Limits, Measure};
 pub use need::{Need, Target};
 pub use reach::{Passage, Reach, Standing, Unreachable};
 pub use settings::{CheckCondition, PumpSetting, Settings, TankMode, ValveSetting};
 
 use crate::fluid::Fluid;
+use crate::part::friction::Pipe;
 use crate::part::pump::{Covers, Pump, PumpModel};
 use crate::part::valve::Valve;
 use crate::part::{Part, PumpId, ValveId};
@@ -86,6 +90,28 @@ pub struct Line {
     pub ports: [Option<f64>; 2],
     /// Its parts in the order in which water flowing forward meets them; at least one.
     pub parts: Vec<Part>,
+    /// What limits are judged by, beside its flow.
+    pub facts: LineFacts,
+}
+
+/// What is known of a line that its flow does not depend on; none: not known.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct LineFacts {
+    /// Gauge pressure that its pipes are rated for, the lowest of them, Pa.
+    pub rating: Option<f64>,
+    /// Mean wave speed of its pipes, weighted by travel time, m/s.
+    pub wave_speed: Option<f64>,
+    /// The bell by which it draws from a tank or a reservoir.
+    pub bell: Option<Bell>,
+}
+
+/// The open end by which a line draws from a free surface.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Bell {
+    /// Inner diameter of its mouth, m.
+    pub diameter: f64,
+    /// Elevation of its mouth, m above the datum.
+    pub elevation: f64,
 }
 
 impl Line {
@@ -106,13 +132,32 @@ impl Line {
 
     /// The smallest bore among the line's pipes, m: where its velocity is highest.
     pub fn narrowest_bore(&self) -> Option<f64> {
-        self.parts
-            .iter()
-            .filter_map(|part| match part {
-                Part::Pipe(pipe) => Some(pipe.bore),
-                _ => None,
-            })
-            .min_by(f64::total_cmp)
+        self.pipes().map(|pipe| pipe.bore).min_by(f64::total_cmp)
+    }
+
+    /// The bore of the line's longest pipe, m: that of a main whose station has narrower pipes.
+    pub fn main_bore(&self) -> Option<f64> {
+        self.pipes()
+            .max_by(|a, b| a.length.total_cmp(&b.length))
+            .map(|pipe| pipe.bore)
+    }
+
+    /// Length of the line's pipes, m.
+    pub fn pipe_length(&self) -> f64 {
+        self.pipes().map(|pipe| pipe.length).sum()
+    }
+
+    /// Volume of the line's pipes, m3.
+    pub fn pipe_volume(&self) -> f64 {
+        let area = |bore: f64| std::f64::consts::FRAC_PI_4 * bore * bore;
+        self.pipes().map(|pipe| pipe.length * area(pipe.bore)).sum()
+    }
+
+    fn pipes(&self) -> impl Iterator<Item = &Pipe> {
+        self.parts.iter().filter_map(|part| match part {
+            Part::Pipe(pipe) => Some(pipe),
+            _ => None,
+        })
     }
 }
 
@@ -184,6 +229,7 @@ pub struct Network {
     models: Vec<PumpModel>,
     covers: Vec<Option<Covers>>,
     settings: Settings,
+    limits: Limits,
     fluid: Fluid,
     gravity: f64,
     barometer: f64,
@@ -336,6 +382,11 @@ impl Network {
     /// The settings as the network was built.
     pub fn settings(&self) -> &Settings {
         &self.settings
+    }
+
+    /// The limits that this system is judged by.
+    pub fn limits(&self) -> &Limits {
+        &self.limits
     }
 
     /// The liquid.

@@ -124,7 +124,7 @@ impl Reach {
         let mut changed = false;
         let lines = self.passages.iter_mut().zip(&mut self.directions);
         for ((passage, direction), line) in lines.zip(network.line_ids()) {
-            changed |= put(passage, line_passage(network, line, settings));
+            changed |= put(passage, network.passage(line, settings));
             changed |= put(direction, network.direction(line, settings));
         }
         for (seed, node) in self.seeds.iter_mut().zip(network.node_ids()) {
@@ -327,27 +327,29 @@ impl Reach {
     }
 }
 
-/// Whether water can pass a line: a shut valve comes before a stopped pump.
-fn line_passage(network: &Network, line: LineId, settings: &Settings) -> Passage {
-    if settings.check(line) == CheckCondition::StuckShut && network.line(line).has_check_valve() {
-        return Passage::Closed;
-    }
-    let mut passage = Passage::Open;
-    for part in &network.line(line).parts {
-        match part {
-            Part::Valve(id) => {
-                let setting = settings.valve(*id);
-                if !setting.open || network.valve(*id).loss_at(setting.opening).is_none() {
-                    return Passage::Closed;
-                }
-            }
-            Part::Pump(id)
-                if !settings.pump(*id).running && network.pump(*id).when_stopped.is_none() =>
-            {
-                passage = Passage::Stopped;
-            }
-            _ => {}
+impl Network {
+    /// Whether water can pass a line: a shut valve comes before a stopped pump.
+    pub fn passage(&self, line: LineId, settings: &Settings) -> Passage {
+        if settings.check(line) == CheckCondition::StuckShut && self.line(line).has_check_valve() {
+            return Passage::Closed;
         }
+        let mut passage = Passage::Open;
+        for part in &self.line(line).parts {
+            match part {
+                Part::Valve(id) => {
+                    let setting = settings.valve(*id);
+                    if !setting.open || self.valve(*id).loss_at(setting.opening).is_none() {
+                        return Passage::Closed;
+                    }
+                }
+                Part::Pump(id)
+                    if !settings.pump(*id).running && self.pump(*id).when_stopped.is_none() =>
+                {
+                    passage = Passage::Stopped;
+                }
+                _ => {}
+            }
+        }
+        passage
     }
-    passage
 }

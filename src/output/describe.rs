@@ -4,6 +4,7 @@ use crate::network::{
     Direction, LineId, Network, NodeId, NodeKind, Passage, Reach, Settings, Standing, Target,
 };
 use crate::part::Part;
+use crate::part::character::US_SPECIFIC_SPEED;
 use crate::read::System;
 use crate::units::{Kind, UnitSet};
 
@@ -30,6 +31,12 @@ pub fn describe(system: &System) -> String {
         out.push(String::new());
         out.push("Static lift".to_owned());
         out.extend(lifts);
+    }
+    let models = describer.models();
+    if !models.is_empty() {
+        out.push(String::new());
+        out.push("Pump models".to_owned());
+        out.extend(models);
     }
     out.push(String::new());
     out.push("Reach".to_owned());
@@ -63,6 +70,41 @@ impl<'a> Describer<'a> {
 
     fn name(&self, node: NodeId) -> &'a str {
         &self.network.node(node).name
+    }
+
+    /// What the curves of each model say of its character.
+    fn models(&self) -> Vec<String> {
+        let flow = |q: f64| self.units.format(Kind::Flow, q);
+        let models = self.network.models().iter();
+        models
+            .map(|model| {
+                let mut facts = vec![format!(
+                    "shut-off at {}, curve ends at {}",
+                    self.length(model.shutoff_head()),
+                    flow(model.end_of_curve())
+                )];
+                if let Some(best) = model.best_efficiency_flow {
+                    let head = self.length(model.head.at(best).value);
+                    facts.push(format!("best efficiency at {} and {head}", flow(best)));
+                }
+                if let Some(rise) = model.rise_to_shutoff() {
+                    facts.push(format!("head rises {:.0} % to shut-off", 100.0 * rise));
+                }
+                if let Some(speed) = model.specific_speed() {
+                    facts.push(format!(
+                        "specific speed {speed:.0} (rpm, m3/s, m) or {:.0} (US)",
+                        US_SPECIFIC_SPEED * speed
+                    ));
+                }
+                if let Some(below) = model.hunts_below() {
+                    facts.push(format!(
+                        "droops: side by side such pumps hunt below {}",
+                        flow(below)
+                    ));
+                }
+                format!("  {}: {}", model.name, facts.join("; "))
+            })
+            .collect()
     }
 
     fn sizes(&self) -> String {

@@ -3,8 +3,9 @@
 use super::grid::{Cell, Column, Grid};
 use super::words::Words;
 use crate::network::{Need, Target};
-use crate::solve::LineState;
+use crate::study::caution::Caution;
 use crate::study::duty::{Combination, Outcome};
+use crate::study::limit::About;
 use crate::units::{Kind, UnitSet};
 
 /// Joules in a kilowatt-hour.
@@ -137,9 +138,12 @@ fn limit_word(words: &Words, outcome: &Outcome) -> String {
     let Some(limit) = &outcome.limit else {
         return String::new();
     };
-    let state = outcome.assessment.lines[words.network.line_of(limit.pump).index()].state;
     let text = words.limit(limit);
-    if text.ends_with("nothing") && state == LineState::Checked {
+    let held_shut = |caution: &Caution| match caution {
+        Caution::HeldShut { pump, .. } => limit.about == About::Pump(*pump),
+        _ => false,
+    };
+    if outcome.assessment.cautions.iter().any(held_shut) {
         text + ": held shut"
     } else {
         text

@@ -2,6 +2,7 @@
 
 use serde_json::{Map, Value, json};
 
+use super::limits;
 use super::solve::state_word;
 use super::words::Words;
 use crate::diagnostic::Diagnostic;
@@ -9,6 +10,7 @@ use crate::network::{Need, Network, Target};
 use crate::study::assessment::Assessment;
 use crate::study::duty::Combination;
 use crate::study::gain::Gain;
+use crate::study::mains;
 use crate::units::{Kind, UnitSet};
 
 /// Joules in a kilowatt-hour.
@@ -41,6 +43,7 @@ pub fn solve(
     needs: &[Need],
     units: &UnitSet,
     assessment: &Assessment,
+    thresholds: &[Option<f64>],
     file_cautions: &[Diagnostic],
 ) -> Value {
     let mut cautions: Vec<Value> = file_cautions
@@ -49,13 +52,20 @@ pub fn solve(
             json!({"code": caution.code, "line": caution.place.map(|place| place.line), "message": caution.message})
         })
         .collect();
-    cautions.extend(cautions_of(&Words { network, units }, assessment));
+    let words = Words { network, units };
+    cautions.extend(cautions_of(&words, assessment));
+    let mut pumps = pumps(network, units, assessment);
+    for (pump, threshold) in network.pumps().iter().zip(thresholds) {
+        pumps[&pump.name]["threshold_speed"] = number(*threshold);
+    }
     json!({
         "units": units_of(units),
         "nodes": nodes(network, units, assessment),
         "lines": lines(network, units, assessment),
-        "pumps": pumps(network, units, assessment),
+        "pumps": pumps,
         "needs": needs_of(needs, units, assessment),
+        "limits": limits_of(&words, assessment),
+        "mains": mains_of(&words, assessment),
         "balance": {
             "worst_node": number(Some(assessment.balance.worst_node)),
             "worst_line": number(Some(assessment.balance.worst_line)),
@@ -70,6 +80,35 @@ fn cautions_of(words: &Words, assessment: &Assessment) -> Vec<Value> {
         json!({"code": caution.code(), "about": words.about(caution), "message": words.caution(caution)})
     });
     each.collect()
+}
+
+fn limits_of(words: &Words, assessment: &Assessment) -> Value {
+    let each = assessment.limits.iter().map(|limit| {
+        let kind = limits::kind_of(limit.kind);
+        let figure = |value| figure(words.units, kind, Some(value));
+        json!({
+            "about": words.name_of(limit.about), "limit": limits::name_of(limit.kind), "code": limit.kind.code(),
+            "value": figure(limit.value), "bound": figure(limit.bound), "unit": words.units.unit(kind).symbol,
+            "at_least": limit.kind.is_least(), "broken": limit.is_broken(), "source": words.says(limit),
+        })
+    });
+    each.collect()
+}
+
+fn mains_of(words: &Words, assessment: &Assessment) -> Value {
+    let mains = mains::states(words.network, &assessment.lines, &assessment.pumps);
+    let each = mains.iter().map(|main| {
+        let value = json!({
+            "velocity": figure(words.units, Kind::Velocity, Some(main.velocity)),
+            "retention_s": number(Some(main.retention)),
+            "wave_speed": figure(words.units, Kind::Velocity, Some(main.wave_speed)),
+            "wave_speed_known": main.wave_speed_known,
+            "surge_head": figure(words.units, Kind::Length, Some(main.surge_head)),
+            "return_time_s": number(Some(main.return_time)),
+        });
+        (words.network.line(main.line).name.clone(), value)
+    });
+    Value::Object(each.collect())
 }
 
 fn nodes(network: &Network, units: &UnitSet, assessment: &Assessment) -> Value {

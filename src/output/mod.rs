@@ -1,9 +1,11 @@
 //! Finished figures put into a form: tables, CSV, JSON, sentences. Computes nothing.
 
+mod cautions;
 pub mod describe;
 pub mod duty;
 pub mod grid;
 pub mod json;
+pub mod limits;
 pub mod shift;
 pub mod solve;
 pub mod words;

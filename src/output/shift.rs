@@ -7,6 +7,7 @@ use super::json::{figure, number};
 use crate::network::Network;
 use crate::shift::{Event, Score, Shift, What, Why};
 use crate::study::ranking::{Measure, Run};
+use crate::study::starts;
 use crate::units::{Kind, UnitSet};
 
 const MINUTE: f64 = 60.0;
@@ -418,6 +419,7 @@ pub fn pumps(network: &Network, run: &Run) -> Grid {
             Cell::Text(network.pump(pump.pump).name.clone()),
             Cell::Plain(Some(f64::from(pump.starts)), 0),
             Cell::Plain(Some(f64::from(pump.worst_hour_starts)), 0),
+            Cell::Plain(starts::allowed(network, pump.pump), 0),
             Cell::Plain(Some(pump.run_time / HOUR), 2),
             Cell::Figure(Some(pump.volume)),
             Cell::Plain(pump.shaft_energy.map(|joules| joules / KILOWATT_HOUR), 1),
@@ -432,6 +434,7 @@ pub fn pumps(network: &Network, run: &Run) -> Grid {
             Column::text("pump", "pump"),
             Column::text("starts", "starts"),
             Column::text("worst/h", "worst_hour_starts"),
+            Column::text("may/h", "starts_allowed"),
             Column::in_unit("run", "hours", "h"),
             Column::figure("volume", "volume", Kind::Volume),
             Column::in_unit("shaft", "shaft_energy", "kWh"),

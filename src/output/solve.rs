@@ -5,6 +5,7 @@ use super::words::Words;
 use crate::network::{Need, Network, Target};
 use crate::solve::LineState;
 use crate::study::assessment::Assessment;
+use crate::study::mains::{self, Main};
 use crate::units::Kind;
 
 /// A line's state in a word.
@@ -17,14 +18,24 @@ pub fn state_word(state: LineState) -> &'static str {
     }
 }
 
-/// Needs, pumps, lines and nodes, in that order.
-pub fn grids(network: &Network, needs: &[Need], assessment: &Assessment) -> Vec<Grid> {
+/// Needs, pumps, lines, nodes and mains, in that order; `thresholds` are the pumps' threshold speeds, one per pump.
+pub fn grids(
+    words: &Words,
+    needs: &[Need],
+    assessment: &Assessment,
+    thresholds: &[Option<f64>],
+) -> Vec<Grid> {
+    let network = words.network;
     let mut grids = needs_grids(needs, assessment);
     if !network.pumps().is_empty() {
-        grids.push(pumps(network, assessment));
+        grids.push(pumps(network, assessment, thresholds));
     }
     grids.push(lines(network, assessment));
     grids.push(nodes(network, assessment));
+    let mains = mains::states(network, &assessment.lines, &assessment.pumps);
+    if !mains.is_empty() {
+        grids.push(self::mains(network, &mains));
+    }
     grids
 }
 
@@ -71,7 +82,8 @@ fn needs_grids(needs: &[Need], assessment: &Assessment) -> Vec<Grid> {
     grids
 }
 
-fn pumps(network: &Network, assessment: &Assessment) -> Grid {
+fn pumps(network: &Network, assessment: &Assessment, thresholds: &[Option<f64>]) -> Grid {
+    let has_threshold = thresholds.iter().any(Option::is_some);
     let rows = network.pump_ids().zip(&assessment.pumps).map(|(id, pump)| {
         let state = match (
             pump.running,
@@ -82,7 +94,7 @@ fn pumps(network: &Network, assessment: &Assessment) -> Grid {
             (true, state) => format!("runs, {}", state_word(state)),
             (false, _) => "stopped".to_owned(),
         };
-        vec![
+        let mut cells = vec![
             Cell::Text(network.pump(id).name.clone()),
             Cell::Text(state),
             Cell::Figure(Some(pump.flow)),
@@ -94,9 +106,14 @@ fn pumps(network: &Network, assessment: &Assessment) -> Grid {
             Cell::Figure(pump.npsh_available),
             Cell::Figure(pump.npsh_required),
             Cell::Figure(pump.suction_pressure),
-        ]
+        ];
+        if has_threshold {
+            let threshold = thresholds[id.index()];
+            cells.push(Cell::Plain(threshold.map(|speed| 100.0 * speed), 1));
+        }
+        cells
     });
-    Grid {
+    let mut grid = Grid {
         title: "Pumps".to_owned(),
         name: "pumps".to_owned(),
         columns: vec![
@@ -111,6 +128,47 @@ fn pumps(network: &Network, assessment: &Assessment) -> Grid {
             Column::figure("NPSHa", "npsh_available", Kind::Length),
             Column::figure("NPSHr", "npsh_required", Kind::Length),
             Column::figure("suction", "suction_pressure", Kind::Pressure),
+        ],
+        rows: rows.collect(),
+    };
+    if has_threshold {
+        let column = Column::in_unit("zero below", "threshold_speed", "% speed");
+        grid.columns.push(column);
+    }
+    grid
+}
+
+/// Velocity, retention and the first screen for surge.
+fn mains(network: &Network, mains: &[Main]) -> Grid {
+    let rows = mains.iter().map(|main| {
+        vec![
+            Cell::Text(network.line(main.line).name.clone()),
+            Cell::Figure(Some(main.velocity)),
+            Cell::Plain(Some(main.retention / 60.0), 1),
+            Cell::Plain(Some(main.wave_speed), 0),
+            Cell::Text(
+                if main.wave_speed_known {
+                    ""
+                } else {
+                    "rigid wall"
+                }
+                .to_owned(),
+            ),
+            Cell::Figure(Some(main.surge_head)),
+            Cell::Plain(Some(main.return_time), 1),
+        ]
+    });
+    Grid {
+        title: "Mains, and a first screen for surge that clears nothing".to_owned(),
+        name: "mains".to_owned(),
+        columns: vec![
+            Column::text("main", "main"),
+            Column::figure("velocity", "velocity", Kind::Velocity),
+            Column::in_unit("water stays", "retention", "min"),
+            Column::in_unit("wave speed", "wave_speed", "m/s"),
+            Column::text("", "wave_speed_of"),
+            Column::figure("a v / g", "surge_head", Kind::Length),
+            Column::in_unit("2 L / a", "return_time", "s"),
         ],
         rows: rows.collect(),
     }

@@ -1,9 +1,10 @@
-//! Sentences: cautions, limits and gains in the user's names and units.
+//! Sentences in the user's names and units.
 
-use crate::network::Network;
+use crate::network::{LimitName, Network};
 use crate::part::PumpId;
-use crate::study::assessment::{Caution, Limit, LimitKind, NPSH_MARGIN, PREFERRED_REGION};
+use crate::study::duty::Combination;
 use crate::study::gain::Gain;
+use crate::study::mains;
 use crate::units::{Kind, UnitSet};
 
 /// What a sentence needs at hand.
@@ -16,142 +17,47 @@ pub struct Words<'a> {
 }
 
 impl Words<'_> {
-    fn pump(&self, id: PumpId) -> &str {
+    pub(super) fn pump(&self, id: PumpId) -> &str {
         &self.network.pump(id).name
     }
 
-    fn figure(&self, kind: Kind, value: f64) -> String {
+    pub(super) fn figure(&self, kind: Kind, value: f64) -> String {
         self.units.with_unit(kind, value)
     }
 
     /// A whole per cent.
-    fn percent(share: f64) -> String {
+    pub(super) fn percent(share: f64) -> String {
         format!("{:.0} %", 100.0 * share)
     }
 
-    /// Name of what a caution is about; empty for the whole system.
-    pub fn about(&self, caution: &Caution) -> &str {
-        match caution {
-            Caution::HeldShut { pump }
-            | Caution::DeadHeaded { pump }
-            | Caution::Backflow { pump, .. }
-            | Caution::PastCurve { pump, .. }
-            | Caution::BeforeCurve { pump, .. }
-            | Caution::Overloaded { pump, .. }
-            | Caution::NpshShort { pump, .. }
-            | Caution::NpshThin { pump, .. }
-            | Caution::OutsidePreferred { pump, .. } => self.pump(*pump),
-            Caution::BelowVapour { node, .. } | Caution::NoHead { node } => {
-                &self.network.node(*node).name
+    /// How fast water goes through each main, at least and at most over the sets of running pumps.
+    pub fn velocities(&self, ranges: &[mains::Range], combinations: &[Combination]) -> String {
+        let with = |(set, velocity): (usize, f64)| {
+            let running = combinations[set].running.iter();
+            let names: Vec<&str> = running.map(|pump| self.pump(*pump)).collect();
+            let velocity = self.figure(Kind::Velocity, velocity);
+            format!("{velocity} with {}", names.join(" + "))
+        };
+        let each = ranges.iter().map(|range| {
+            let name = &self.network.line(range.line).name;
+            let slowest = with(range.slowest);
+            match range.slowest.0 == range.fastest.0 {
+                true => format!("  {name}: {slowest}\n"),
+                false => format!("  {name}: {slowest}, {}\n", with(range.fastest)),
             }
-            Caution::SecondBalance { .. } => "",
-        }
+        });
+        std::iter::once("Velocity in the mains\n".to_owned())
+            .chain(each)
+            .collect()
     }
 
-    /// A caution in a sentence without a full stop.
-    pub fn caution(&self, caution: &Caution) -> String {
-        let flow = |q: f64| self.figure(Kind::Flow, q);
-        let head = |h: f64| self.figure(Kind::Length, h);
-        match *caution {
-            Caution::HeldShut { pump } => format!(
-                "{} runs but delivers nothing: its check valve is held shut. It heats the water in its casing; stop it",
-                self.pump(pump)
-            ),
-            Caution::DeadHeaded { pump } => format!(
-                "{} runs against a shut way and delivers nothing. It heats the water in its casing and can burst it: stop it",
-                self.pump(pump)
-            ),
-            Caution::Backflow { pump, flow: q } => {
-                format!(
-                    "{} of water runs back through {}",
-                    flow(-q),
-                    self.pump(pump)
-                )
-            }
-            Caution::PastCurve { pump, flow: q, end } => format!(
-                "{} would deliver {}, past the end of its curve at {}: no figure there is certain",
-                self.pump(pump),
-                flow(q),
-                flow(end)
-            ),
-            Caution::BeforeCurve {
-                pump,
-                flow: q,
-                start,
-            } => format!(
-                "{} delivers {}, below the start of its curve at {}: no figure there is certain",
-                self.pump(pump),
-                flow(q),
-                flow(start)
-            ),
-            Caution::Overloaded { pump, power, rated } => format!(
-                "{} needs {} at the shaft, its motor is rated {} ({})",
-                self.pump(pump),
-                self.figure(Kind::Power, power),
-                self.figure(Kind::Power, rated),
-                Self::percent(power / rated)
-            ),
-            Caution::NpshShort {
-                pump,
-                available,
-                required,
-            } => format!(
-                "{} cavitates: NPSH available {}, required {}",
-                self.pump(pump),
-                head(available),
-                head(required)
-            ),
-            Caution::NpshThin {
-                pump,
-                available,
-                required,
-            } => format!(
-                "NPSH margin of {} is thin: available {}, required {}; asked are {} times or {} more, the larger \
-                 (ANSI/HI 9.6.1 as quoted in the trade)",
-                self.pump(pump),
-                head(available),
-                head(required),
-                NPSH_MARGIN.0,
-                head(NPSH_MARGIN.1)
-            ),
-            Caution::OutsidePreferred { pump, share } => format!(
-                "{} runs at {} of its best-efficiency flow, outside {:.0} to {} (ANSI/HI 9.6.3 as quoted in the trade)",
-                self.pump(pump),
-                Self::percent(share),
-                100.0 * PREFERRED_REGION.0,
-                Self::percent(PREFERRED_REGION.1)
-            ),
-            Caution::BelowVapour { node, pressure } => format!(
-                "pressure at {} is {}: below vapour pressure, where the water column parts and this answer does not hold",
-                self.network.node(node).name,
-                self.figure(Kind::Pressure, pressure)
-            ),
-            Caution::SecondBalance { delivered } => format!(
-                "a drooping head curve allows a second balance near this one, delivering {}: which one it takes depends on how it is started",
-                flow(delivered)
-            ),
-            Caution::NoHead { node } => {
-                format!(
-                    "{} is cut off from every fixed head: its head means nothing",
-                    self.network.node(node).name
-                )
-            }
-        }
-    }
-
-    /// A limit in a few words.
-    pub fn limit(&self, limit: &Limit) -> String {
-        let pump = self.pump(limit.pump);
-        match limit.kind {
-            LimitKind::DeliversNothing => format!("{pump} delivers nothing"),
-            LimitKind::Motor(load) => format!("{pump} motor at {}", Self::percent(load)),
-            LimitKind::Npsh(ratio) => format!("{pump} NPSH {ratio:.2} x required"),
-            LimitKind::Region(share) => format!("{pump} at {} of BEP", Self::percent(share)),
-            LimitKind::EndOfCurve(share) if share > 1.0 => format!("{pump} past its curve"),
-            LimitKind::EndOfCurve(share) => {
-                format!("{pump} at {} of its curve", Self::percent(share))
-            }
-        }
+    /// Starts that are more than a motor bears.
+    pub fn starts(&self, pump: PumpId, starts: u32, allowed: f64) -> String {
+        format!(
+            "{} is started {starts} times in its worst hour, its motor bears {allowed:.0} ({})",
+            self.pump(pump),
+            self.network.limits().source(LimitName::StartsPerHour)
+        )
     }
 
     /// The gain card of a bank.

@@ -3,6 +3,7 @@
 //! A part knows no node, no other part, no name and no unit: only its own law. Every law obeys the contract of
 //! [`HeadLaw`]; the laws of one line add up to a law of the same kind.
 
+pub mod character;
 pub mod curve;
 pub mod fittings;
 pub mod friction;
@@ -10,6 +11,7 @@ mod logarithm;
 pub mod materials;
 pub mod pump;
 pub mod quadratic;
+pub mod surge;
 pub mod valve;
 
 /// Head lost at one flow, and how fast that loss grows with flow.

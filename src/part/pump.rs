@@ -25,6 +25,23 @@ pub struct PumpModel {
     pub motor: Option<Motor>,
     /// Efficiency of a variable-speed drive over the speed ratio; none: no drive.
     pub drive: Option<Efficiency>,
+    /// Limits that the maker states.
+    pub maker: MakerLimits,
+}
+
+/// What a pump's maker states of its limits; none: not stated.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct MakerLimits {
+    /// Minimum continuous flow at the model's speed, m3/s.
+    pub minimum_flow: Option<f64>,
+    /// Preferred region, as shares of best-efficiency flow.
+    pub preferred: Option<(f64, f64)>,
+    /// Allowable region, as shares of best-efficiency flow.
+    pub allowable: Option<(f64, f64)>,
+    /// Largest gauge pressure that the casing bears, Pa.
+    pub casing_pressure: Option<f64>,
+    /// Volume of liquid in the casing, m3.
+    pub casing_volume: Option<f64>,
 }
 
 /// What the data sheet gives for power.
@@ -212,6 +229,7 @@ mod tests {
                 efficiency: over(&[0.25, 0.5, 1.0], &[0.8, 0.9, 0.92]),
             }),
             drive: over(&[0.6, 0.8, 1.0], &[0.93, 0.96, 0.97]),
+            maker: MakerLimits::default(),
         };
         let power = model.electrical_power(10e3, 0.8).unwrap();
         assert!((power - 10e3 / (0.9 * 0.96)).abs() < 1e-9);

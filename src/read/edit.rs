@@ -16,6 +16,9 @@ pub(super) fn part_keys(kind: &str) -> &'static [&'static str] {
             "friction_factor",
             "fittings",
             "k",
+            "rating",
+            "wall",
+            "wave_speed",
         ],
         "loss" => &["k", "fittings", "bore"],
         "valve" => &["k", "kv", "cv", "bore", "open", "opening", "characteristic"],
@@ -34,9 +37,10 @@ pub(super) fn part_keys(kind: &str) -> &'static [&'static str] {
 }
 
 /// Keys of which only one can stand; a new one takes the place of the others.
-const EXCLUSIVE: [&[&str]; 4] = [
+const EXCLUSIVE: [&[&str]; 5] = [
     &["roughness", "material", "c_factor", "friction_factor"],
     &["k", "kv", "cv"],
+    &["wall", "wave_speed"],
     &["elevation", "barometer"],
     &["area", "diameter", "lying", "volumes"],
 ];

@@ -9,7 +9,17 @@ use crate::diagnostic::{Diagnostic, Place};
 use crate::units::Kind;
 
 pub(super) const PARTS: [&str; 6] = ["pipe", "loss", "valve", "check_valve", "equipment", "pump"];
-const LINE_KEYS: [&str; 6] = ["from", "to", "count", "parts", "from_port", "to_port"];
+const LINE_KEYS: [&str; 7] = [
+    "from",
+    "to",
+    "count",
+    "parts",
+    "from_port",
+    "to_port",
+    "bell",
+];
+/// Most lines of a network, banks written out.
+const MOST_LINES: usize = 1_000_000;
 /// Most lines in one bank.
 pub(super) const LARGEST_BANK: f64 = 1000.0;
 
@@ -53,6 +63,10 @@ fn line(
         )
     };
     let ports = [port(cx, "from_port"), port(cx, "to_port")];
+    let bell = super::limits::bell(cx, &fields, &what).map(|value| Placed {
+        value,
+        place: fields.key_place("bell"),
+    });
     let parts = parts(cx, site, &what, &fields);
     let mut members = Vec::new();
     for member in changes.members_of(&key.name) {
@@ -66,6 +80,7 @@ fn line(
         from: from?,
         to: to?,
         ports,
+        bell,
         count: transposed(count)?,
         parts: parts?,
         members: members
@@ -164,4 +179,22 @@ fn listed(cx: &mut Context, site: &SiteSpec, what: &str, item: &Marked) -> Optio
             None
         }
     }
+}
+
+/// Whether the lines, banks written out, are few enough to be built at all.
+pub(super) fn not_too_many(cx: &mut Context, lines: &[LineSpec]) -> bool {
+    let mut count = 0;
+    for line in lines {
+        count += line.count.unwrap_or(1) as usize;
+        if count > MOST_LINES {
+            let message = format!(
+                "with line `{}` there are more than {MOST_LINES} lines",
+                line.name
+            );
+            let help = "every member of a bank is a line";
+            cx.push(Diagnostic::error("out-of-range", line.place, message).help(help));
+            return false;
+        }
+    }
+    true
 }

@@ -3,6 +3,8 @@
 use std::collections::HashMap;
 
 use super::context::{Context, Referent};
+use super::limits::line_facts;
+use super::lines::not_too_many;
 use super::references::TakenNames;
 use super::spec::{
     FrictionSpec, LineSpec, LossSpec, Names, NeedSpec, NodeKindSpec, PartKindSpec, PartSpec,
@@ -30,14 +32,12 @@ struct Lowering<'c> {
     names: TakenNames,
 }
 
-/// Most lines of a network, banks written out.
-const MOST_LINES: usize = 1_000_000;
-
 /// The network and the needs; none if there are errors.
 pub(super) fn lower(cx: &mut Context, spec: Spec) -> Option<(Network, Vec<Need>)> {
     let site = spec.site;
     let names = TakenNames::of(cx, &spec.names);
-    let net = NetworkBuilder::new(site.fluid, site.gravity, site.barometer);
+    let mut net = NetworkBuilder::new(site.fluid, site.gravity, site.barometer);
+    net.limits(spec.limits.clone());
     let mut lowering = Lowering {
         cx,
         spec,
@@ -130,6 +130,7 @@ impl Lowering<'_> {
                 best_efficiency_flow: model.best_efficiency_flow,
                 motor: model.motor,
                 drive: model.drive,
+                maker: model.maker,
             });
             self.models.insert(model.name, position);
         }
@@ -150,6 +151,8 @@ impl Lowering<'_> {
             let problem = Diagnostic::error("self-loop", line.to.place, message);
             self.cx.push(problem.help(help));
         }
+        let surface = from.is_none_or(|id| self.net.has_free_surface(id));
+        let facts = line_facts(self.cx, line, self.spec.site.fluid.density, surface);
         let named = self.pumps_have_names(line);
         let to = to.filter(|_| named && !is_loop);
         let mut ids = Vec::new();
@@ -168,6 +171,7 @@ impl Lowering<'_> {
                     self.net.port(id, end, height);
                 }
             }
+            self.net.facts(id, facts);
             ids.push(id);
             if suffix.is_some() {
                 self.lines.insert(name, vec![id]);
@@ -223,6 +227,7 @@ impl Lowering<'_> {
                     bore,
                     friction,
                     k,
+                    facts: _,
                 } => {
                     let (length, bore) = (*length, *bore);
                     let friction = match *friction {
@@ -473,24 +478,6 @@ impl Lowering<'_> {
             at_most: need.at_most,
         })
     }
-}
-
-/// Whether the lines, banks written out, are few enough to be built at all.
-fn not_too_many(cx: &mut Context, lines: &[LineSpec]) -> bool {
-    let mut count = 0;
-    for line in lines {
-        count += line.count.unwrap_or(1) as usize;
-        if count > MOST_LINES {
-            let message = format!(
-                "with line `{}` there are more than {MOST_LINES} lines",
-                line.name
-            );
-            let help = "every member of a bank is a line";
-            cx.push(Diagnostic::error("out-of-range", line.place, message).help(help));
-            return false;
-        }
-    }
-    true
 }
 
 fn numbered(name: &str, member: Option<u32>) -> String {

@@ -10,6 +10,7 @@ mod changes;
 mod context;
 mod edit;
 mod known;
+mod limits;
 mod lines;
 mod lower;
 mod models;
@@ -34,7 +35,7 @@ pub use table::Load;
 pub use yaml::LARGEST;
 
 use crate::diagnostic::{Diagnostic, Diagnostics, Severity};
-use crate::network::{Need, Network};
+use crate::network::{Limits, Need, Network};
 use crate::units::UnitSet;
 use changes::MemberChanges;
 use context::{Context, Fields};
@@ -42,7 +43,7 @@ use spec::{Names, Placed, Spec};
 use yaml::{Form, Marked};
 
 /// Sections of a system file.
-const SECTIONS: [&str; 14] = [
+const SECTIONS: [&str; 15] = [
     "title",
     "units",
     "fluid",
@@ -51,6 +52,7 @@ const SECTIONS: [&str; 14] = [
     "lines",
     "pump_models",
     "needs",
+    "limits",
     "cases",
     "schedules",
     "shift",
@@ -290,9 +292,12 @@ fn spec(cx: &mut Context, fields: &Fields, members: &MemberChanges, load: Load) 
     let needs = fields
         .get("needs")
         .map_or_else(Vec::new, |node| needs::needs(cx, node));
+    let limits = fields.get("limits");
+    let limits = limits.map_or_else(Limits::default, |node| limits::limits(cx, node));
     Spec {
         title,
         site,
+        limits,
         names,
         nodes,
         lines,

@@ -1,6 +1,7 @@
 //! `pump_models`: curves from columns, from a CSV file or from a polynomial.
 
 use super::context::{Bound, Context, Fields, found};
+use super::limits::MAKER_KEYS;
 use super::spec::{ModelSpec, SiteSpec};
 use super::table::{self, Load};
 use super::yaml::{Form, Key, Marked};
@@ -9,7 +10,7 @@ use crate::part::curve::{Curve, Polynomial};
 use crate::part::pump::{Efficiency, Motor, PowerCurve};
 use crate::units::{Kind, SpeedValue};
 
-const MODEL_KEYS: [&str; 7] = [
+const MODEL_KEYS: [&str; 11] = [
     "speed",
     "impeller",
     "curve",
@@ -17,6 +18,10 @@ const MODEL_KEYS: [&str; 7] = [
     "flow_limit",
     "motor",
     "drive",
+    MAKER_KEYS[0],
+    MAKER_KEYS[1],
+    MAKER_KEYS[2],
+    MAKER_KEYS[3],
 ];
 /// Columns of a curve, what they are, and the range their figures must lie in.
 pub(super) const COLUMNS: [(&str, Kind, Bound); 5] = [
@@ -71,6 +76,7 @@ fn model(
     });
     let motor = fields.get("motor").map(|node| motor(cx, node, &what));
     let drive = fields.get("drive").map(|node| drive(cx, node, &what));
+    let maker = super::limits::maker(cx, &fields, &what);
     let columns = match fields.get("curve") {
         Some(node) => read_columns(cx, node, &what, load),
         None => Some(Columns::default()),
@@ -101,6 +107,7 @@ fn model(
         best_efficiency_flow,
         motor: motor.flatten(),
         drive: drive.flatten(),
+        maker,
     })
 }
 

@@ -20,7 +20,7 @@ pub(super) fn part(
 ) -> Option<PartSpec> {
     let what = format!("the {} of {line}", kind.replace('_', " "));
     let kind = match kind {
-        "pipe" => pipe(cx, &what, node)?,
+        "pipe" => pipe(cx, site, &what, node)?,
         "loss" => {
             let fields = cx.map(node, &what, &["k", "fittings", "bore"])?;
             if !fields.has("k") && !fields.has("fittings") {
@@ -116,7 +116,7 @@ fn bore(cx: &mut Context, fields: &Fields, what: &str) -> Option<Option<f64>> {
     }
 }
 
-fn pipe(cx: &mut Context, what: &str, node: &Marked) -> Option<PartKindSpec> {
+fn pipe(cx: &mut Context, site: &SiteSpec, what: &str, node: &Marked) -> Option<PartKindSpec> {
     let keys = [
         "length",
         "bore",
@@ -126,6 +126,9 @@ fn pipe(cx: &mut Context, what: &str, node: &Marked) -> Option<PartKindSpec> {
         "friction_factor",
         "fittings",
         "k",
+        "rating",
+        "wall",
+        "wave_speed",
     ];
     let fields = cx.map(node, what, &keys)?;
     let length = cx.required(&fields, "length", what, "12 m");
@@ -148,11 +151,13 @@ fn pipe(cx: &mut Context, what: &str, node: &Marked) -> Option<PartKindSpec> {
     });
     let friction = friction(cx, &fields, what, given_bore);
     let k = loss_coefficient(cx, &fields, what);
+    let facts = super::limits::pipe_facts(cx, site, &fields, what, given_bore);
     Some(PartKindSpec::Pipe {
         length: length?,
         bore: given_bore?,
         friction: friction?,
         k: k?,
+        facts,
     })
 }
 

@@ -2,8 +2,9 @@
 
 use crate::diagnostic::Place;
 use crate::fluid::Fluid;
+use crate::network::{Bell, Limits};
 use crate::part::curve::Curve;
-use crate::part::pump::{Efficiency, Motor, PowerCurve};
+use crate::part::pump::{Efficiency, MakerLimits, Motor, PowerCurve};
 use crate::part::quadratic::QuadraticLoss;
 use crate::part::valve::Characteristic;
 use crate::units::SpeedValue;
@@ -19,6 +20,7 @@ pub(super) struct Placed<T> {
 pub(super) struct Spec {
     pub title: Option<String>,
     pub site: SiteSpec,
+    pub limits: Limits,
     pub names: Names,
     pub nodes: Vec<NodeSpec>,
     pub lines: Vec<LineSpec>,
@@ -81,6 +83,7 @@ pub(super) struct LineSpec {
     pub from: Placed<String>,
     pub to: Placed<String>,
     pub ports: [Option<f64>; 2],
+    pub bell: Option<Placed<Bell>>,
     /// Number in the bank; none: a single line.
     pub count: Option<u32>,
     pub parts: Vec<PartSpec>,
@@ -101,6 +104,7 @@ pub(super) enum PartKindSpec {
         bore: f64,
         friction: FrictionSpec,
         k: f64,
+        facts: PipeFacts,
     },
     Loss(LossSpec),
     Valve {
@@ -116,6 +120,13 @@ pub(super) enum PartKindSpec {
     },
     Equipment(QuadraticLoss),
     Pump(Box<PumpSpec>),
+}
+
+/// What a pipe says that its flow does not depend on.
+#[derive(Clone, Copy, Debug, Default)]
+pub(super) struct PipeFacts {
+    pub rating: Option<f64>,
+    pub wave_speed: Option<f64>,
 }
 
 #[derive(Clone, Copy, Debug)]
@@ -155,6 +166,7 @@ pub(super) struct ModelSpec {
     pub best_efficiency_flow: Option<f64>,
     pub motor: Option<Motor>,
     pub drive: Option<Efficiency>,
+    pub maker: MakerLimits,
 }
 
 #[derive(Clone, Debug)]

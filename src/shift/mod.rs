@@ -46,5 +46,5 @@ pub use plan::{
 };
 pub use record::{Column, Record, Row, Sink, columns};
 pub use schedule::{Between, Daily, Schedule, ScheduleError};
-pub use score::{Limits, PumpScore, Score, TankScore};
+pub use score::{PumpScore, Score, TankScore};
 pub use tank::{Gas, Shape, ShapeError, Tank};

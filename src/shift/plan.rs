@@ -2,7 +2,6 @@
 
 use super::energy::Tariff;
 use super::schedule::{Daily, Schedule};
-use super::score::Limits;
 use super::tank::Tank;
 use crate::network::{CheckCondition, LineId, Network, NodeId, NodeKind};
 use crate::part::PumpId;
@@ -54,8 +53,6 @@ pub struct Shift {
     pub tariff: Option<Tariff>,
     /// CO2 per energy, kg/J.
     pub carbon: Option<f64>,
-    /// What the score counts as outside.
-    pub limits: Limits,
     /// Relative tolerance of the volumes in a step; none: 1e-9.
     pub tolerance: Option<f64>,
 }

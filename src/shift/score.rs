@@ -3,30 +3,6 @@
 use crate::network::NodeId;
 use crate::part::PumpId;
 
-/// What counts as outside, and who says so.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct Limits {
-    /// Preferred region, share of best efficiency flow: 0.7 to 1.2.
-    ///
-    /// # Source
-    /// ANSI/HI 9.6.3 as quoted in the trade; it varies with specific speed.
-    pub preferred: (f64, f64),
-    /// Least continuous flow, share of best efficiency flow: 0.3, where the maker says nothing.
-    ///
-    /// # Source
-    /// Common practice, no source (25 to 40 %).
-    pub least_flow: f64,
-}
-
-impl Default for Limits {
-    fn default() -> Self {
-        Self {
-            preferred: (0.7, 1.2),
-            least_flow: 0.3,
-        }
-    }
-}
-
 /// What became of a tank. Levels in m, volumes in m3, times in s.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct TankScore {

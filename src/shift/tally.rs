@@ -85,7 +85,6 @@ impl Tally {
                 self.below_trip[i] += length;
             }
         }
-        let limits = &plant.shift.limits;
         for pump in plant.network.pump_ids() {
             let setting = plant.settings.pump(pump);
             if !setting.running {
@@ -103,11 +102,12 @@ impl Tally {
             // At the end but for rounding is on the curve.
             let end = model.end_of_curve() * (1.0 + 1e-9);
             tally.past_end += length * share_above(a, b, end);
-            if let Some(bep) = model.best_efficiency_flow {
-                let below = |share: f64| 1.0 - share_above(a, b, share * bep);
-                let (low, high) = limits.preferred;
-                tally.below_least_flow += length * below(limits.least_flow);
-                tally.outside_preferred += length * (below(low) + share_above(a, b, high * bep));
+            let below = |flow: f64| 1.0 - share_above(a, b, flow);
+            if let Some(least) = plant.network.minimum_flow(pump) {
+                tally.below_least_flow += length * below(least);
+            }
+            if let Some((low, high)) = plant.network.preferred_region(pump) {
+                tally.outside_preferred += length * (below(low) + share_above(a, b, high));
             }
         }
     }

@@ -1,6 +1,7 @@
 //! Every distinct set of running pumps, in the state that a case describes.
 
-use super::assessment::{Assessment, Limit, assess_balances, binding_limit, electrical_power};
+use super::assessment::{Assessment, assess_balances, electrical_power};
+use super::limit::Limit;
 use super::sets::{self, Group};
 use crate::network::{Need, Network, Settings};
 use crate::part::PumpId;
@@ -73,7 +74,7 @@ fn solve(solver: &mut Solver, needs: &[Need], settings: &Settings) -> Result<Out
     let power = electrical_power(&assessment);
     let running = assessment.pumps.iter().filter(|pump| pump.running);
     Ok(Outcome {
-        limit: binding_limit(network, &assessment),
+        limit: assessment.binding_limit(),
         shaft_power: running.map(|pump| pump.shaft_power).sum(),
         specific_energy: power
             .filter(|_| assessment.delivered > 1e-9)

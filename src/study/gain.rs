@@ -3,7 +3,9 @@
 use argmin::core::{CostFunction, Executor, State};
 use argmin::solver::brent::BrentRoot;
 
-use super::assessment::{Assessment, Caution, assess};
+use super::assessment::{Assessment, assess};
+use super::caution::Caution;
+use super::shutoff::shutoff_head;
 use crate::network::{Bank, LineId, Need, Network, NodeId, Settings};
 use crate::part::PumpId;
 use crate::solve::{SolveError, Solver};
@@ -94,7 +96,7 @@ fn gain(
 /// Running pumps that are held shut.
 fn held_shut(assessment: &Assessment) -> Vec<PumpId> {
     let held = |caution: &Caution| match caution {
-        Caution::HeldShut { pump } => Some(*pump),
+        Caution::HeldShut { pump, .. } => Some(*pump),
         _ => None,
     };
     assessment.cautions.iter().filter_map(held).collect()
@@ -113,10 +115,7 @@ fn end_flow(
     line: LineId,
 ) -> Option<f64> {
     let network = solver.network();
-    let shutoff = |id: &PumpId| {
-        let setting = stopped.pump(*id);
-        (1.0 - setting.wear) * setting.ratio().powi(2) * network.model(*id).shutoff_head()
-    };
+    let shutoff = |id: &PumpId| shutoff_head(network, &stopped, *id);
     let shutoff = pumps.iter().map(shutoff).fold(0.0, f64::max);
     let (from, to) = (network.line(line).from, network.line(line).to);
     if !network.is_point(from) && !network.is_point(to) {

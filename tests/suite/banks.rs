@@ -72,6 +72,7 @@ impl Maker {
             best_efficiency_flow: None,
             motor: None,
             drive: None,
+            maker: dutybank::part::pump::MakerLimits::default(),
         });
         let pump = Pump {
             name: name.into(),

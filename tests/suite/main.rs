@@ -7,6 +7,7 @@ mod command_over_time;
 mod description;
 mod effort;
 mod heads;
+mod judgement;
 mod laws;
 mod meadow;
 mod properties;

@@ -74,6 +74,7 @@ impl Sheet<'_> {
                 efficiency: Some(Efficiency::Fixed(self.motor)),
             }),
             drive: None,
+            maker: dutybank::part::pump::MakerLimits::default(),
         }
     }
 }

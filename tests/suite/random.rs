@@ -327,6 +327,7 @@ impl Maker {
                 efficiency: Some(Efficiency::Fixed(0.92)),
             }),
             drive: None,
+            maker: dutybank::part::pump::MakerLimits::default(),
         })
     }
 

@@ -2,8 +2,10 @@
 
 use assert_cmd::Command;
 
+const README: &str = concat!(env!("CARGO_MANIFEST_DIR"), "/README.md");
+
 fn readme() -> String {
-    std::fs::read_to_string(concat!(env!("CARGO_MANIFEST_DIR"), "/README.md")).unwrap()
+    std::fs::read_to_string(README).unwrap()
 }
 
 fn command() -> Command {
@@ -22,18 +24,28 @@ fn tidy(text: &str) -> String {
         .to_owned()
 }
 
+/// `UPDATE_EXPECTED=1` writes what is printed now into the README; look at it.
 #[test]
 fn every_console_block_is_what_the_command_prints() {
     let readme = readme();
+    let mut updated = readme.clone();
     let blocks: Vec<&str> = readme.split("```console\n").skip(1).collect();
     assert!(blocks.len() >= 2);
+    let update = std::env::var_os("UPDATE_EXPECTED").is_some();
     for block in blocks {
         let block = block.split("```").next().unwrap();
         let (line, shown) = block.split_once('\n').unwrap();
         let arguments = line.strip_prefix("$ dutybank ").unwrap().split_whitespace();
         let output = command().args(arguments).output().unwrap();
-        let printed = String::from_utf8(output.stdout).unwrap();
-        assert_eq!(tidy(&printed), tidy(shown), "{line}");
+        let printed = tidy(&String::from_utf8(output.stdout).unwrap());
+        if update {
+            updated = updated.replace(block, &format!("{line}\n{printed}\n"));
+        } else {
+            assert_eq!(printed, tidy(shown), "{line}");
+        }
+    }
+    if update {
+        std::fs::write(README, updated).unwrap();
     }
 }
 

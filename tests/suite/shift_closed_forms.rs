@@ -195,6 +195,7 @@ fn parabolic(net: &mut NetworkBuilder, shutoff: f64, c: f64, end: f64) -> PumpId
         best_efficiency_flow: None,
         motor: None,
         drive: None,
+        maker: dutybank::part::pump::MakerLimits::default(),
     });
     let pump = Pump {
         name: "pump".to_owned(),
@@ -248,6 +249,7 @@ fn sump(inflow: f64) -> (Network, Shift, Plan) {
         best_efficiency_flow: None,
         motor: None,
         drive: None,
+        maker: dutybank::part::pump::MakerLimits::default(),
     });
     let pump = Pump {
         name: "pump".to_owned(),

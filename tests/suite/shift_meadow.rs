@@ -5,9 +5,7 @@
 //! are rounded to whole per cent, which is 0.7 % of energy and cost.
 
 use crate::meadow::{self, Meadow, NARROW, WIDE_COMMON, WIDE_STEPPED};
-use dutybank::shift::{
-    Fault, FaultKind, Limits, Outcome, Plan, Record, Rotate, Shift, What, columns, run,
-};
+use dutybank::shift::{Fault, FaultKind, Outcome, Plan, Record, Rotate, Shift, What, columns, run};
 use std::time::Instant;
 
 fn outcome(meadow: &Meadow, shift: &Shift, plan: &Plan) -> Outcome {
@@ -262,7 +260,6 @@ fn rows_are_in_order_and_fit_their_columns() {
     let spread =
         hours.iter().copied().fold(0.0, f64::max) - hours.iter().copied().fold(1e9, f64::min);
     assert!(spread < 1200.0, "{hours:?}");
-    assert_eq!(Limits::default().preferred, (0.7, 1.2));
 }
 
 /// Run with `--release -- --ignored --nocapture`.
