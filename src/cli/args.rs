@@ -35,6 +35,9 @@ pub(crate) enum Command {
     /// Run several staging plans over the same shift and put them in order
     #[command(after_help = COMPARE_EXAMPLES)]
     Compare(CompareOptions),
+    /// Write a calculation note as one HTML page that a reviewer can check
+    #[command(after_help = REPORT_EXAMPLES)]
+    Report(ReportOptions),
 }
 
 const SOLVE_EXAMPLES: &str = "\
@@ -73,6 +76,13 @@ Examples:
   dutybank compare networks/meadow_lift_station.yaml --weights spilled=1000,starts=0.2,energy=0.1
 
 Exit codes: 0 the runs were made; 2 bad input, or a run that broke";
+
+const REPORT_EXAMPLES: &str = "\
+Examples:
+  dutybank report networks/mill_pond_transfer.yaml --out note.html
+  dutybank report networks/meadow_lift_station.yaml --out note.html --job \"Second duty pump, for review\" --cases as-is,storm
+
+Exit codes: 0 the page was written; 2 bad input, or a run that broke";
 
 #[derive(Args)]
 pub(crate) struct FileOption {
@@ -192,4 +202,36 @@ pub(crate) struct CompareOptions {
     /// Print a JSON list of runs instead of tables
     #[arg(long)]
     pub json: bool,
+}
+
+#[derive(Args)]
+pub(crate) struct ReportOptions {
+    #[command(flatten)]
+    pub input: FileOption,
+    /// The page to write: one file that needs no other and opens from disk
+    #[arg(long, value_name = "FILE")]
+    pub out: PathBuf,
+    /// Words on the job, under the title
+    #[arg(long, value_name = "TEXT")]
+    pub job: Option<String>,
+    /// Only these cases in the combination tables; `as-is` is the file as it stands
+    #[arg(long, value_name = "NAME,..", value_delimiter = ',')]
+    pub cases: Option<Vec<String>>,
+}
+
+impl ReportOptions {
+    /// What the combination tables of the page are asked for.
+    pub fn duty(&self) -> DutyOptions {
+        DutyOptions {
+            input: FileOption {
+                file: self.input.file.clone(),
+            },
+            pumps: None,
+            cases: self.cases.clone(),
+            worst_first: false,
+            json: false,
+            csv: None,
+            fail_unmet: false,
+        }
+    }
 }

@@ -19,10 +19,10 @@ use crate::study::mains;
 const AS_IS: &str = "as-is";
 
 /// A case that has been solved.
-struct Solved {
-    name: String,
-    system: System,
-    combinations: Vec<Combination>,
+pub(super) struct Solved {
+    pub name: String,
+    pub system: System,
+    pub combinations: Vec<Combination>,
 }
 
 pub(super) fn duty(options: &DutyOptions) -> Result<(), Failure> {
@@ -90,7 +90,7 @@ fn only_switches(case: &Case) -> bool {
     changes.all(|change| change.path().ends_with(".running"))
 }
 
-fn solve_cases(
+pub(super) fn solve_cases(
     options: &DutyOptions,
     input: &Input,
     base: &System,
@@ -208,6 +208,16 @@ fn whole_table(options: &DutyOptions, solved: &[Solved], base: &System) -> Grid 
     output::duty::grid(title, output::duty::columns(&base.needs, &base.units), rows)
 }
 
+/// The table of one case.
+pub(super) fn case_grid(case: &Solved) -> Grid {
+    let title = match case.name.as_str() {
+        "" => "As the file stands".to_owned(),
+        name => format!("Case: {name}"),
+    };
+    let columns = output::duty::columns(&case.system.needs, &case.system.units);
+    output::duty::grid(&title, columns, rows(case, false))
+}
+
 const LEGEND: &str = "\
 NPSH spare: least margin of a running pump. Columns named after needs: room left, negative where unmet.
 Cases that only change which pumps run are left out: every set is here already.
@@ -243,13 +253,7 @@ fn text(options: &DutyOptions, solved: &[Solved], base: &System, gains: &[Gain])
         out.push('\n');
     } else {
         for case in solved {
-            let title = match case.name.as_str() {
-                "" => "As the file stands".to_owned(),
-                name => format!("Case: {name}"),
-            };
-            let columns = output::duty::columns(&base.needs, &base.units);
-            let grid = output::duty::grid(&title, columns, rows(case, false));
-            out.push_str(&grid.text(&base.units));
+            out.push_str(&case_grid(case).text(&base.units));
             out.push('\n');
         }
     }

@@ -5,6 +5,7 @@ mod check;
 mod compare;
 mod duty;
 mod files;
+mod report;
 mod shift;
 mod solve;
 
@@ -38,6 +39,7 @@ pub fn run() -> ExitCode {
         Command::Duty(options) => duty::duty(options),
         Command::Shift(options) => shift::shift(options),
         Command::Compare(options) => compare::compare(options),
+        Command::Report(options) => report::report(options),
     };
     match outcome {
         Ok(()) | Err(Failure::PipeClosed) => ExitCode::SUCCESS,

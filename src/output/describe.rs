@@ -13,46 +13,84 @@ const SHOWN: usize = 12;
 
 /// The description; one fact a line.
 pub fn describe(system: &System) -> String {
-    let describer = Describer::new(system);
     let mut out = Vec::new();
     if let Some(title) = &system.title {
         out.push(title.clone());
         out.push(String::new());
     }
-    out.push(describer.sizes());
-    out.push(String::new());
-    out.push("Nodes".to_owned());
-    out.extend(describer.nodes());
-    out.push(String::new());
-    out.push("Lines".to_owned());
-    out.extend(describer.lines());
-    let lifts = describer.lifts();
-    if !lifts.is_empty() {
-        out.push(String::new());
-        out.push("Static lift".to_owned());
-        out.extend(lifts);
-    }
-    let models = describer.models();
-    if !models.is_empty() {
-        out.push(String::new());
-        out.push("Pump models".to_owned());
-        out.extend(models);
-    }
-    out.push(String::new());
-    out.push("Reach".to_owned());
-    out.extend(describer.reach());
-    if !system.needs.is_empty() {
-        out.push(String::new());
-        out.push("Needs".to_owned());
-        out.extend(system.needs.iter().map(|need| describer.need(need)));
+    for (heading, facts) in sections(system, SHOWN) {
+        if !heading.is_empty() {
+            out.push(String::new());
+            out.push(heading.to_owned());
+        }
+        let indent = if heading.is_empty() { "" } else { "  " };
+        out.extend(facts.iter().map(|fact| format!("{indent}{fact}")));
     }
     out.join("\n") + "\n"
+}
+
+/// The description by heading, the first without one; at most so many nodes and lines are named.
+pub fn sections(system: &System, shown: usize) -> Vec<(&'static str, Vec<String>)> {
+    let describer = Describer {
+        shown,
+        ..Describer::new(system)
+    };
+    let needs = system.needs.iter().map(|need| describer.need(need));
+    let sections = [
+        ("", vec![describer.sizes()]),
+        ("Nodes", describer.nodes()),
+        ("Lines", describer.lines()),
+        ("Static lift", describer.lifts()),
+        ("Pump models", describer.models()),
+        ("Reach", describer.reach()),
+        ("Needs", needs.collect()),
+    ];
+    let said = |section: &(&str, Vec<String>)| !section.1.is_empty();
+    sections.into_iter().filter(said).collect()
+}
+
+/// What the figures rest on: liquid, place, method.
+pub fn basis(system: &System) -> Vec<String> {
+    let (network, units) = (&system.network, &system.units);
+    let fluid = network.fluid();
+    let vapour = fluid.vapour_pressure.map_or(
+        "vapour pressure not given, so NPSH available is not known".to_owned(),
+        |vapour| {
+            format!(
+                "vapour pressure {} absolute",
+                units.format(Kind::Pressure, vapour)
+            )
+        },
+    );
+    vec![
+        format!(
+            "Liquid: density {}, kinematic viscosity {}, {vapour}.",
+            units.format(Kind::Density, fluid.density),
+            units.format(Kind::Viscosity, fluid.kinematic_viscosity)
+        ),
+        format!(
+            "Place: air pressure {} absolute, gravity {} m/s2.",
+            units.format(Kind::Pressure, network.barometer()),
+            network.gravity()
+        ),
+        "Pipes: Darcy–Weisbach with Colebrook–White (J. Inst. Civil Engineers 11, 1939), 64/Re up to Re 2000, a smooth rise between 2000 and \
+         4000; Hazen–Williams where a C factor is given. Fittings and valves: K v2/2g."
+            .to_owned(),
+        "Pumps: monotone piecewise cubic through the points of the data sheet (Fritsch and Carlson, SIAM J. Numer. Anal. 17, 1980); head with \
+         the square of the speed ratio, flow with the ratio, power with its cube. Wear takes head at unchanged shaft power."
+            .to_owned(),
+        "Balance: flows at every point and heads along every open line together by Newton's method; check valves open or held shut by \
+         complementarity."
+            .to_owned(),
+        "Tanks and reservoirs stand at their levels in steady states; levels move only over time.".to_owned(),
+    ]
 }
 
 struct Describer<'a> {
     network: &'a Network,
     units: &'a UnitSet,
     settings: &'a Settings,
+    shown: usize,
 }
 
 impl<'a> Describer<'a> {
@@ -61,6 +99,7 @@ impl<'a> Describer<'a> {
             network: &system.network,
             units: &system.units,
             settings: system.network.settings(),
+            shown: SHOWN,
         }
     }
 
@@ -102,7 +141,7 @@ impl<'a> Describer<'a> {
                         flow(below)
                     ));
                 }
-                format!("  {}: {}", model.name, facts.join("; "))
+                format!("{}: {}", model.name, facts.join("; "))
             })
             .collect()
     }
@@ -123,9 +162,13 @@ impl<'a> Describer<'a> {
 
     fn nodes(&self) -> Vec<String> {
         let ids: Vec<NodeId> = self.network.node_ids().collect();
-        let mut out: Vec<String> = ids.iter().take(SHOWN).map(|id| self.node(*id)).collect();
-        if ids.len() > SHOWN {
-            out.push(format!("  and {} more", ids.len() - SHOWN));
+        let mut out: Vec<String> = ids
+            .iter()
+            .take(self.shown)
+            .map(|id| self.node(*id))
+            .collect();
+        if ids.len() > self.shown {
+            out.push(format!("and {} more", ids.len() - self.shown));
         }
         out
     }
@@ -163,7 +206,7 @@ impl<'a> Describer<'a> {
                 )
             }
         };
-        format!("  {}: {what}", node.name)
+        format!("{}: {what}", node.name)
     }
 
     fn lines(&self) -> Vec<String> {
@@ -173,8 +216,8 @@ impl<'a> Describer<'a> {
             if std::mem::replace(&mut told[id.index()], true) {
                 continue;
             }
-            if out.len() == SHOWN * 2 {
-                out.push("  and more".to_owned());
+            if out.len() == self.shown * 2 {
+                out.push("and more".to_owned());
                 break;
             }
             let bank = self
@@ -200,7 +243,7 @@ impl<'a> Describer<'a> {
                 }
                 None => (self.network.line(id).name.clone(), String::new()),
             };
-            out.push(format!("  {who}{alike} {}", self.line(id)));
+            out.push(format!("{who}{alike} {}", self.line(id)));
         }
         out
     }
@@ -277,9 +320,13 @@ impl<'a> Describer<'a> {
             .filter(|(id, _)| supplies(*id))
             .min_by(|a, b| a.1.total_cmp(&b.1));
         if let (Some(low), false) = (lowest, self.network.pumps().is_empty()) {
-            for high in fixed.iter().filter(|(_, head)| *head > low.1).take(SHOWN) {
+            for high in fixed
+                .iter()
+                .filter(|(_, head)| *head > low.1)
+                .take(self.shown)
+            {
                 out.push(format!(
-                    "  from {} to {}: {}",
+                    "from {} to {}: {}",
                     self.name(low.0),
                     self.name(high.0),
                     self.length(high.1 - low.1)
@@ -301,7 +348,7 @@ impl<'a> Describer<'a> {
             } else {
                 format!("the inflow at {node} has nowhere to go")
             };
-            return vec![format!("  {what}")];
+            return vec![format!("{what}")];
         }
         let mut out = Vec::new();
         let named = |standing: Standing| {
@@ -322,14 +369,14 @@ impl<'a> Describer<'a> {
         let unserved = named(Standing::Unserved);
         if !unserved.is_empty() {
             out.push(format!(
-                "  cut off from every fixed head, so without a head: {}",
+                "cut off from every fixed head, so without a head: {}",
                 listed(&unserved)
             ));
         }
         let blind = named(Standing::Blind);
         if !blind.is_empty() {
             out.push(format!(
-                "  water comes in but cannot go on: {}",
+                "water comes in but cannot go on: {}",
                 listed(&blind)
             ));
         }
@@ -344,12 +391,12 @@ impl<'a> Describer<'a> {
                 .map(|id| self.network.line(id).name.as_str())
                 .collect();
             if !names.is_empty() {
-                out.push(format!("  {what}: {}", listed(&names)));
+                out.push(format!("{what}: {}", listed(&names)));
             }
         }
         if out.is_empty() {
             out.push(
-                "  every point is joined to a fixed head by ways that water can take".to_owned(),
+                "every point is joined to a fixed head by ways that water can take".to_owned(),
             );
         }
         out
@@ -376,7 +423,7 @@ impl<'a> Describer<'a> {
             .at_most
             .map(|limit| format!("at most {}", self.units.format(kind, limit)));
         let limits: Vec<String> = [least, most].into_iter().flatten().collect();
-        format!("  {}: {what}, {}", need.name, limits.join(", "))
+        format!("{}: {what}, {}", need.name, limits.join(", "))
     }
 }
 

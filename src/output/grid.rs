@@ -66,7 +66,7 @@ impl Column {
     }
 
     /// The symbol of its unit; empty if it has none.
-    fn symbol<'a>(&'a self, units: &'a UnitSet) -> &'a str {
+    pub(super) fn symbol<'a>(&'a self, units: &'a UnitSet) -> &'a str {
         self.kind.map_or(&self.unit, |kind| units.unit(kind).symbol)
     }
 }
@@ -74,9 +74,7 @@ impl Column {
 impl Grid {
     /// For people: headings with their units under them, figures aligned, columns that say nothing left out.
     pub fn text(&self, units: &UnitSet) -> String {
-        let shown: Vec<usize> = (0..self.columns.len())
-            .filter(|i| self.is_filled(*i))
-            .collect();
+        let shown = self.shown_columns();
         let mut table = Table::new();
         table
             .load_style(presets::NOTHING)
@@ -112,7 +110,14 @@ impl Grid {
         format!("{}\n{}\n", self.title, body.join("\n"))
     }
 
-    fn shown(&self, cell: &Cell, column: usize, units: &UnitSet) -> String {
+    /// Positions of the columns that say something.
+    pub(super) fn shown_columns(&self) -> Vec<usize> {
+        let columns = 0..self.columns.len();
+        columns.filter(|i| self.is_filled(*i)).collect()
+    }
+
+    /// An entry for people.
+    pub(super) fn shown(&self, cell: &Cell, column: usize, units: &UnitSet) -> String {
         let absent = || "-".to_owned();
         match (cell, self.columns[column].kind) {
             (Cell::Text(text), _) => text.clone(),

@@ -2,6 +2,7 @@
 
 use super::grid::{Cell, Column, Grid};
 use super::words::Words;
+use crate::network::{LimitName, Measure};
 use crate::study::assessment::Assessment;
 use crate::study::limit::{Limit, LimitKind, Says};
 use crate::units::Kind;
@@ -176,5 +177,35 @@ pub fn grid(words: &Words, assessment: &Assessment, near: bool) -> Grid {
             Column::text("who says so", "source"),
         ],
         rows,
+    }
+}
+
+/// The values that limits have here, given or by default, and who says so; those that are not judged left out.
+pub fn values(words: &Words) -> Grid {
+    let limits = words.network.limits();
+    let rows = LimitName::all().filter_map(|name| {
+        let value = limits.value(name)?;
+        let shown = match name.measure() {
+            Measure::Share => Words::percent(value),
+            Measure::Number => format!("{value}"),
+            Measure::Length => words.figure(Kind::Length, value),
+            Measure::Pressure => words.figure(Kind::Pressure, value),
+            Measure::Velocity => words.figure(Kind::Velocity, value),
+        };
+        Some(vec![
+            Cell::Text(name.key().to_owned()),
+            Cell::Text(shown),
+            Cell::Text(limits.source(name).to_owned()),
+        ])
+    });
+    Grid {
+        title: "Limits as they are set".to_owned(),
+        name: "limit_values".to_owned(),
+        columns: vec![
+            Column::text("limit", "limit"),
+            Column::text("value", "value"),
+            Column::text("who says so", "source"),
+        ],
+        rows: rows.collect(),
     }
 }

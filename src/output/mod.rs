@@ -6,7 +6,9 @@ pub mod duty;
 pub mod grid;
 pub mod json;
 pub mod limits;
+pub mod report;
 pub mod shift;
+pub mod sketch;
 pub mod solve;
 pub mod words;
 

@@ -351,10 +351,10 @@ pub fn scores(network: &Network, runs: &[&Run]) -> Grid {
     }
 }
 
-/// The scorecard of one run as people read it: figure under figure, what does not occur left out.
-pub fn card(telling: &Telling, run: &Run) -> String {
+/// The scorecard of one run by name and value, what does not occur left out.
+pub fn card_rows(telling: &Telling, run: &Run) -> Vec<(&'static str, String)> {
     let score = &run.score;
-    let mut rows: Vec<(&str, String)> = Vec::new();
+    let mut rows: Vec<(&'static str, String)> = Vec::new();
     for measure in Measure::ALL {
         let value = measure.of(score);
         let shown = match measure {
@@ -404,6 +404,12 @@ pub fn card(telling: &Telling, run: &Run) -> String {
         "books closed to",
         format!("{:.0e} of the throughput", score.volume_error),
     ));
+    rows
+}
+
+/// The scorecard of one run as people read it: figure under figure.
+pub fn card(telling: &Telling, run: &Run) -> String {
+    let rows = card_rows(telling, run);
     let width = rows.iter().map(|(name, _)| name.len()).max().unwrap_or(0);
     let lines: Vec<String> = rows
         .iter()

@@ -1,7 +1,8 @@
 //! Sentences in the user's names and units.
 
-use crate::network::{LimitName, Network};
+use crate::network::{LimitName, Need, Network, Target};
 use crate::part::PumpId;
+use crate::study::assessment::NeedValue;
 use crate::study::duty::Combination;
 use crate::study::gain::Gain;
 use crate::study::mains;
@@ -49,6 +50,32 @@ impl Words<'_> {
         std::iter::once("Velocity in the mains\n".to_owned())
             .chain(each)
             .collect()
+    }
+
+    /// A need and what it comes to.
+    pub fn need(&self, need: &Need, value: &NeedValue) -> String {
+        let (kind, of) = match &need.target {
+            Target::FlowInto(node) => (Kind::Flow, &self.network.node(*node).name),
+            Target::FlowIn(lines) => (Kind::Flow, &self.network.line(lines[0]).name),
+            Target::PressureAt(node) => (Kind::Pressure, &self.network.node(*node).name),
+        };
+        let found = value
+            .value
+            .map_or("no figure".to_owned(), |value| self.figure(kind, value));
+        let side = |word: &str, limit: Option<f64>| {
+            limit.map(|limit| format!("{word} {} wanted", self.figure(kind, limit)))
+        };
+        let wanted = [
+            side("at least", need.at_least),
+            side("at most", need.at_most),
+        ];
+        let wanted: Vec<String> = wanted.into_iter().flatten().collect();
+        let met = if value.met { "met" } else { "NOT met" };
+        format!(
+            "{}: {met}. {found} at {of}, {}",
+            need.name,
+            wanted.join(", ")
+        )
     }
 
     /// Starts that are more than a motor bears.

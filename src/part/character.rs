@@ -1,6 +1,7 @@
 //! What the curves of a pump model say of its character: specific speed, rise to shut-off, and where it hunts.
 
-use super::pump::PumpModel;
+use super::pump::{DATA_SHEET_DENSITY, PowerCurve, PumpModel};
+use crate::fluid::STANDARD_GRAVITY;
 
 /// Specific speed in US units (rpm, gpm, ft) for 1 in metric ones (rpm, m3/s, m).
 ///
@@ -9,6 +10,21 @@ use super::pump::PumpModel;
 pub const US_SPECIFIC_SPEED: f64 = 51.645_237_87;
 
 impl PumpModel {
+    /// Efficiency at the model's speed, unworn: its own column, or as hydraulic over shaft power, both for the density of data
+    /// sheets. None where it cannot be told.
+    pub fn efficiency(&self, q: f64) -> Option<f64> {
+        match &self.power {
+            PowerCurve::Unknown => None,
+            PowerCurve::Efficiency(curve) => Some(curve.at(q).value),
+            PowerCurve::Shaft(curve) => {
+                let hydraulic = DATA_SHEET_DENSITY * STANDARD_GRAVITY * q * self.head.at(q).value;
+                Some(curve.at(q).value)
+                    .filter(|shaft| *shaft > 0.0)
+                    .map(|shaft| hydraulic / shaft)
+            }
+        }
+    }
+
     /// Specific speed at best efficiency, in rpm, m3/s and m; for one stage and one eye.
     ///
     /// n_q = n sqrt(Q) / H^0.75

@@ -74,6 +74,14 @@ impl Curve {
         }
     }
 
+    /// Abscissas that show the curve: those of its points, or nine even ones of a polynomial.
+    pub fn abscissas(&self) -> Vec<f64> {
+        match self {
+            Self::Points(curve) => curve.x.clone(),
+            Self::Polynomial(curve) => (0..9).map(|i| curve.limit * f64::from(i) / 8.0).collect(),
+        }
+    }
+
     /// Abscissas at which the curve can turn from rising to falling or back, the ends included.
     fn turning_points(&self) -> Vec<f64> {
         match self {

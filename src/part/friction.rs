@@ -166,6 +166,16 @@ impl DarcyWeisbach {
         law
     }
 
+    /// Reynolds number at flow `q`.
+    pub fn reynolds(&self, q: f64) -> f64 {
+        self.reynolds_per_flow * q.abs()
+    }
+
+    /// Roughness over bore.
+    pub fn relative_roughness(&self) -> f64 {
+        self.rough_per_flow / self.reynolds_per_flow * (3.7 * 2.51 * TWO_OVER_LN10)
+    }
+
     /// Colebrook–White at flow `q` > 0.
     fn turbulent(&self, q: f64) -> HeadLoss {
         let ([root_f], [share]) =

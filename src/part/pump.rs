@@ -87,7 +87,7 @@ impl Efficiency {
 }
 
 /// Density for which data sheets state shaft power, kg/m3.
-const DATA_SHEET_DENSITY: f64 = 1000.0;
+pub(super) const DATA_SHEET_DENSITY: f64 = 1000.0;
 
 impl PumpModel {
     /// Head at no flow, m.

@@ -232,13 +232,17 @@ impl Document {
         }
     }
 
-    fn system_over_time(&self, changes: &[Change], load: Load) -> Result<System, Diagnostics> {
-        let system = self.system(changes, load)?;
-        let has_shift = match &self.root.value {
+    /// Whether the file has a `shift`.
+    pub fn has_shift(&self) -> bool {
+        match &self.root.value {
             Form::Map(entries) => entries.iter().any(|(key, _)| key.name == "shift"),
             _ => false,
-        };
-        if has_shift {
+        }
+    }
+
+    fn system_over_time(&self, changes: &[Change], load: Load) -> Result<System, Diagnostics> {
+        let system = self.system(changes, load)?;
+        if self.has_shift() {
             self.over_time(&system, changes, load)?;
         }
         Ok(system)

@@ -12,3 +12,4 @@ pub mod sets;
 pub mod shutoff;
 pub mod starts;
 pub mod threshold;
+pub mod worked;
