@@ -1,7 +1,7 @@
 //! Where a volume reaches a threshold within a step, its extrema inside the step looked at too.
 
-use super::dormand_prince::Step;
 use super::root::far_side;
+use super::step::Step;
 use std::convert::Infallible;
 
 /// Which way a threshold is reached.

@@ -4,7 +4,6 @@ mod advance;
 mod inside;
 mod settle;
 
-use super::dormand_prince::Step;
 use super::energy::Meter;
 use super::error::ShiftError;
 use super::event::{Event, What, Who, Why};
@@ -13,6 +12,7 @@ use super::plant::{Plant, Side};
 use super::record::{Row, Sink};
 use super::score::Score;
 use super::staging::{Control, FigureWatch, SLACK, Watch};
+use super::step::Step;
 use super::tally::Tally;
 use crate::network::{Network, NodeId};
 use crate::solve::operation;
@@ -71,6 +71,17 @@ struct Quiet {
     span: f64,
 }
 
+/// Which method steps, and how long the other has been the better one.
+#[derive(Clone, Copy, Debug, Default)]
+struct Stiffness {
+    /// The implicit method steps.
+    on: bool,
+    /// Steps in a row that asked for the other method, less those that did not.
+    count: u32,
+    /// h times the size of the fastest rate in the last implicit step.
+    fastest: f64,
+}
+
 struct Engine<'a> {
     network: &'a Network,
     shift: &'a Shift,
@@ -86,8 +97,7 @@ struct Engine<'a> {
     /// Error of the last step that stood, over its tolerance.
     last_error: f64,
     tolerance: f64,
-    /// Factor on it.
-    slack: f64,
+    stiffness: Stiffness,
     watches: Vec<Watch>,
     figure_watches: Vec<FigureWatch>,
     figure_values: Vec<f64>,
@@ -136,7 +146,7 @@ impl<'a> Engine<'a> {
             length: shift.lasts,
             last_error: 1e-2,
             tolerance: shift.tolerance.unwrap_or(TOLERANCE),
-            slack: 1.0,
+            stiffness: Stiffness::default(),
             watches: Vec::new(),
             figure_watches: Vec::new(),
             figure_values: Vec::new(),

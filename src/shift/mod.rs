@@ -28,11 +28,13 @@ mod event;
 mod hold;
 mod plan;
 mod plant;
+mod radau;
 mod record;
 mod root;
 mod schedule;
 mod score;
 mod staging;
+mod step;
 mod tally;
 mod tank;
 

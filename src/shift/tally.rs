@@ -1,11 +1,11 @@
 //! Counts what the score is made of while the run goes on; its memory does not grow with the run.
 
-use super::dormand_prince::Step;
 use super::energy::Meter;
 use super::plan::{Call, Follow, Plan, Shift};
 use super::plant::{Mode, Plant, Side};
 use super::score::{PumpScore, Score, TankScore, share_above};
 use super::staging::Control;
+use super::step::Step;
 use crate::network::Network;
 use crate::solve::operation;
 

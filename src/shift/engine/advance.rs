@@ -14,13 +14,10 @@ use crate::shift::staging::{Figure, FigureWatch, SLACK, Watch};
 impl Engine<'_> {
     /// Steps until something happens or is due.
     pub(super) fn advance(&mut self, sink: &mut impl Sink) -> Result<(), ShiftError> {
-        const MOST_STEPS: u32 = 2_000_000;
+        const MOST_STEPS: u32 = 500_000;
         let stop = self.next_time();
         self.collect_watches();
-        for taken in 0..MOST_STEPS {
-            // Two tanks that have come level through a wide pipe pull at each other harder the closer they are: no explicit step
-            // rests there. After a thousand steps without an event, levels to a millionth are good enough.
-            self.slack = 10_f64.powi((taken / 1000).min(3) as i32);
+        for _ in 0..MOST_STEPS {
             let remaining = stop - self.t;
             if remaining <= 0.0 {
                 self.t = stop;
@@ -176,7 +173,16 @@ impl Engine<'_> {
         let (mut before, mut after) = (0.0, f64::INFINITY);
         loop {
             let passing = h <= 2.0 * LOCATED;
-            let flip = self.stages(h, !passing)?;
+            let Stages::Settled(flip) = self.stages(h, !passing)? else {
+                self.effort.rejected += 1;
+                h *= 0.25;
+                (before, after) = (0.0, f64::INFINITY);
+                self.length = h;
+                if h < 1e-9 {
+                    return Err(ShiftError::Stuck { time: self.t });
+                }
+                continue;
+            };
             if let (Some(_), false) = (flip, passing) {
                 self.effort.rejected += 1;
                 after = h;
@@ -191,15 +197,13 @@ impl Engine<'_> {
                 };
                 continue;
             }
-            let tolerance = self.slack * self.tolerance;
-            let tanks = &self.plant.tanks;
-            let error = self.step.error(&self.sums, |i, size| {
-                1e-4 * tolerance * tanks[i].capacity + tolerance * size
-            });
+            let error = self
+                .step
+                .error(&self.sums, |i, size| self.tolerated(i, size));
             let stands = error <= 1.0;
             if !stands && h > 1e-9 {
                 self.effort.rejected += 1;
-                let shrink = (0.9 * error.powf(-0.2)).clamp(0.1, 0.9);
+                let shrink = (0.9 * error.powf(-1.0 / self.order())).clamp(0.1, 0.9);
                 h *= if shrink.is_nan() { 0.1 } else { shrink };
                 // The error asks for less than the flip does: a later step will come to that.
                 (before, after) = (0.0, f64::INFINITY);
@@ -214,7 +218,8 @@ impl Engine<'_> {
             self.effort.steps += 1;
             // Growth by the last two errors (K. Gustafsson, ACM Trans. Math. Softw. 17, 1991).
             let error = error.max(1e-8);
-            let growth = 0.9 * error.powf(-0.7 / 5.0) * self.last_error.powf(0.4 / 5.0);
+            let order = self.order();
+            let growth = 0.9 * error.powf(-0.7 / order) * self.last_error.powf(0.4 / order);
             let next = h * growth.clamp(0.2, 5.0);
             // A step cut short by an event says little about how long one may be.
             let cut_short = h >= remaining || after.is_finite();
@@ -224,12 +229,50 @@ impl Engine<'_> {
                 next
             };
             self.last_error = error;
+            self.judge_stiffness();
             return Ok(flip.filter(|_| passing));
         }
     }
 
-    /// The stages of a step; stops at the first flip if asked to.
-    fn stages(&mut self, h: f64, stop_at_flip: bool) -> Result<Option<LineId>, ShiftError> {
+    /// Error of a step that a volume of this size may have.
+    fn tolerated(&self, tank: usize, size: f64) -> f64 {
+        // A stiff course comes to rest by itself; what is asked of levels (1e-4 m) is still a hundred times coarser.
+        let slack = if self.stiffness.on { 100.0 } else { 1.0 };
+        let tolerance = slack * self.tolerance;
+        1e-4 * tolerance * self.plant.tanks[tank].capacity + tolerance * size
+    }
+
+    /// With which power of its length the error of a step falls.
+    fn order(&self) -> f64 {
+        if self.stiffness.on { 4.0 } else { 5.0 }
+    }
+
+    /// Changes to the other method when that has been the better one for a while.
+    fn judge_stiffness(&mut self) {
+        /// Steps in a row: E. Hairer, G. Wanner, Solving Ordinary Differential Equations II (1996), section IV.2.
+        const LONG_ENOUGH: u32 = 15;
+        /// h times the fastest rate at which an explicit step of that length would stand too.
+        const EASY: f64 = 1.0;
+        let stiffness = &mut self.stiffness;
+        let other_is_better = match stiffness.on {
+            false => self.step.is_stiff(),
+            true => stiffness.fastest < EASY,
+        };
+        stiffness.count = match other_is_better {
+            true => stiffness.count + 1,
+            false => stiffness.count.saturating_sub(3),
+        };
+        if stiffness.count >= LONG_ENOUGH {
+            stiffness.on = !stiffness.on;
+            stiffness.count = 0;
+        }
+    }
+
+    /// The stages of a step; those of an explicit one stop at the first flip if asked to.
+    fn stages(&mut self, h: f64, stop_at_flip: bool) -> Result<Stages, ShiftError> {
+        if self.stiffness.on {
+            return self.implicit_stages(h);
+        }
         let Self {
             plant,
             step,
@@ -250,6 +293,52 @@ impl Engine<'_> {
                 ControlFlow::Continue(())
             })
         })?;
-        Ok(flip)
+        Ok(Stages::Settled(flip))
     }
+
+    /// The stages of an implicit step. On the way to them lines may open and shut: only the last look at each stage counts.
+    fn implicit_stages(&mut self, h: f64) -> Result<Stages, ShiftError> {
+        let small: Vec<f64> = (0..self.plant.tanks.len())
+            .map(|tank| 0.01 * self.tolerated(tank, self.sums[tank]))
+            .collect();
+        let Self {
+            plant,
+            step,
+            sums,
+            t,
+            stiffness,
+            ..
+        } = self;
+        let time = *t;
+        let mut flips = [None; 3];
+        let taken = step.take_implicit(
+            time,
+            h,
+            sums,
+            |tank| small[tank],
+            |t, y, rates| {
+                plant
+                    .evaluate(Side::Run, t, y, rates)
+                    .map_err(|error| ShiftError::Solve { time, error })?;
+                flips.rotate_left(1);
+                flips[2] = plant.flip;
+                Ok::<_, ShiftError>(())
+            },
+        )?;
+        Ok(match taken {
+            None => Stages::Unsettled,
+            Some(fastest) => {
+                stiffness.fastest = fastest;
+                Stages::Settled(flips.into_iter().flatten().next())
+            }
+        })
+    }
+}
+
+/// What came of the stages of a step.
+enum Stages {
+    /// They stand; a line that opens or shuts in the step, if any.
+    Settled(Option<LineId>),
+    /// No such step: it must be shorter.
+    Unsettled,
 }
