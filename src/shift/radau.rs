@@ -80,15 +80,19 @@ impl Newton {
         }
     }
 
-    /// The change of Z that the rates of the stages (`rates[i]` at stage i) call for; none if the matrix is singular.
-    pub fn change(&self, z: &DVector<f64>, rates: [&[f64]; 3]) -> Option<DVector<f64>> {
+    /// What the equations of the stages leave over: h (A x I) F - Z, with the rates `rates[i]` at stage i.
+    pub fn residual(&self, z: &DVector<f64>, rates: [&[f64]; 3]) -> DVector<f64> {
         let n = self.states;
-        let right = DVector::from_fn(3 * n, |row, _| {
+        DVector::from_fn(3 * n, |row, _| {
             let (i, state) = (row / n, row % n);
             let sum: f64 = (0..3).map(|j| self.a[i][j] * rates[j][state]).sum();
             self.h * sum - z[row]
-        });
-        self.factored.solve(&right)
+        })
+    }
+
+    /// The change of Z that a residual calls for; none if the matrix is singular.
+    pub fn change(&self, residual: &DVector<f64>) -> Option<DVector<f64>> {
+        self.factored.solve(residual)
     }
 
     /// Estimate of the error of each state, of third order: (I - h gamma J)^-1 (gamma h f(t, y) + gamma sum e_i Z_i).

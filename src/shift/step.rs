@@ -44,6 +44,9 @@ const IMPLICIT: [usize; 3] = [1, 2, 6];
 /// E. Hairer, G. Wanner, Solving Ordinary Differential Equations II (1996), section IV.2, with their code for this pair.
 const STABLE: f64 = 3.25;
 
+/// How much worse than a change that counts as none the equations of the stages may hold.
+const ROUGHLY: f64 = 1000.0;
+
 /// Most Newton iterations in a step; with a matrix made anew at these.
 const MOST_ITERATIONS: usize = 12;
 const ANEW_EVERY: usize = 4;
@@ -157,12 +160,17 @@ impl Step {
                 f(t + radau::C[stage] * h, &at, &mut self.rates[place])?;
             }
             let [a, b, c] = IMPLICIT.map(|place| self.rates[place].as_slice());
-            let Some(change) = newton.change(&z, [a, b, c]) else {
+            let residual = newton.residual(&z, [a, b, c]);
+            let Some(change) = newton.change(&residual) else {
                 return Ok(None);
             };
-            let size = (0..3 * n)
-                .map(|row| change[row].abs() / small(row % n))
-                .fold(0.0, f64::max);
+            let worst = |vector: &DVector<f64>| {
+                let over = (0..3 * n).map(|row| vector[row].abs() / small(row % n));
+                over.fold(0.0, f64::max)
+            };
+            // Where rates are steeper at the start of the step than at its stages a small change says nothing: the equations of the
+            // stages must hold too, as well as rates of such steepness can be told.
+            let size = worst(&change).max(worst(&residual) / ROUGHLY);
             if size.is_nan() {
                 return Ok(None);
             }
@@ -191,7 +199,8 @@ impl Step {
         Ok(None)
     }
 
-    /// df/dy at `y`, whose rates stand at `place`, by differences a hundred times what counts as none.
+    /// df/dy at `y`, whose rates stand at `place`, by differences a hundred times what counts as none: finer ones would see the rounding of the
+    /// steady solutions.
     fn jacobian<E>(
         &mut self,
         t: f64,
