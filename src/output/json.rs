@@ -55,6 +55,7 @@ pub fn solve(
         "nodes": nodes(network, units, assessment),
         "lines": lines(network, units, assessment),
         "pumps": pumps(network, units, assessment),
+        "regulators": super::regulators::json(network, units, assessment),
         "needs": needs_of(needs, units, assessment),
         "balance": {
             "worst_node": number(Some(assessment.balance.worst_node)),

@@ -4,6 +4,7 @@ pub mod describe;
 pub mod duty;
 pub mod grid;
 pub mod json;
+pub mod regulators;
 pub mod shift;
 pub mod solve;
 pub mod words;

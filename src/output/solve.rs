@@ -23,6 +23,7 @@ pub fn grids(network: &Network, needs: &[Need], assessment: &Assessment) -> Vec<
     if !network.pumps().is_empty() {
         grids.push(pumps(network, assessment));
     }
+    grids.extend(super::regulators::grids(network, assessment));
     grids.push(lines(network, assessment));
     grids.push(nodes(network, assessment));
     grids

@@ -19,6 +19,7 @@ mod nodes;
 mod over_time;
 mod parts;
 mod references;
+mod regulators;
 mod schedules;
 mod site;
 mod spec;

@@ -4,7 +4,9 @@
 
 use crate::network::{Need, Network, NodeId, NodeKind, Settings, Target};
 use crate::part::{Part, PumpId};
-use crate::solve::operation::{self, LineOperation, NodeOperation, Place, PumpOperation};
+use crate::solve::operation::{
+    self, LineOperation, NodeOperation, Place, PumpOperation, RegulatorOperation,
+};
 use crate::solve::{Balance, Balances, LineState, Solution};
 
 /// Lowest and highest share of best-efficiency flow that is preferred for lasting operation.
@@ -28,6 +30,8 @@ pub struct Assessment {
     pub lines: Vec<LineOperation>,
     /// One per pump.
     pub pumps: Vec<PumpOperation>,
+    /// One per regulating part.
+    pub regulators: Vec<RegulatorOperation>,
     /// One per need.
     pub needs: Vec<NeedValue>,
     /// What to be careful about.
@@ -130,6 +134,10 @@ pub fn assess(
         .pump_ids()
         .map(|id| operation::pump(network, settings, solution, id))
         .collect();
+    let regulators = network
+        .regulator_ids()
+        .map(|id| operation::regulator(network, settings, solution, id))
+        .collect();
     let need_values: Vec<NeedValue> = needs
         .iter()
         .map(|need| {
@@ -153,6 +161,7 @@ pub fn assess(
         nodes,
         lines,
         pumps,
+        regulators,
         needs: need_values,
         cautions,
         balance: *solution.balance(),
@@ -238,7 +247,7 @@ fn friction_share(
         for part in &network.line(id).parts {
             let is_running = |pump: PumpId| settings.pump(pump).running;
             if !matches!(part, Part::Pump(pump) if is_running(*pump)) {
-                dissipated += q * operation::part_loss(network, settings, part, q);
+                dissipated += q * operation::loss_in(network, settings, solution, part, q);
             }
         }
     }
