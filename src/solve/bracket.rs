@@ -4,12 +4,7 @@ use super::newton::Effort;
 use super::paths::Paths;
 use super::regulate::Regulating;
 use super::system::{State, System};
-
-/// Rounds before it is given up.
-const ROUNDS: u32 = 40;
-
-/// Balances before it is given up.
-const BALANCES: u32 = 10_000;
+use super::tolerance::HELD_HEAD;
 
 /// Largest loss that is tried, m: far beyond any pump.
 const LARGEST: f64 = 1e6;
@@ -29,44 +24,39 @@ struct Bench<'a, 'n> {
     system: &'a mut System<'n>,
     state: &'a mut State,
     effort: &'a mut Effort,
+    /// Room that counts as none, m.
+    enough: f64,
 }
 
 impl Regulating {
-    /// Goes round until no unit has to move; what cannot be content stays as far as the search came.
-    pub(super) fn bracket_all(
+    /// Brackets every unit once; true if one of them moved. Early rounds need not be fine: the others move yet.
+    pub(super) fn bracket_round(
         &mut self,
+        round: u32,
         paths: &mut Paths,
         system: &mut System,
         state: &mut State,
         effort: &mut Effort,
-    ) {
-        for unit in 0..system.throttles.lines.len() {
-            system.throttle(unit, 0.0);
-        }
-        system.cold_start(state);
+    ) -> bool {
         let mut bench = Bench {
             paths,
             system,
             state,
             effort,
+            enough: 10_f64.powi(-(round as i32)),
         };
-        let units = bench.system.throttles.lines.len();
-        for _ in 0..ROUNDS {
-            let mut moved = false;
-            for unit in 0..units {
-                let throttles = &bench.system.throttles;
-                if !throttles.acts[unit] || throttles.leader[unit] != unit {
-                    continue;
-                }
-                let before = throttles.extra[unit];
-                self.bracket(&mut bench, unit);
-                let after = bench.system.throttles.extra[unit];
-                moved |= (after - before).abs() > 1e-9 * (1.0 + after);
+        let mut moved = false;
+        for unit in 0..bench.system.throttles.lines.len() {
+            let throttles = &bench.system.throttles;
+            if !throttles.acts[unit] || throttles.leader[unit] != unit {
+                continue;
             }
-            if !moved || self.balances > BALANCES {
-                return;
-            }
+            let before = throttles.extra[unit];
+            self.bracket(&mut bench, unit);
+            let after = bench.system.throttles.extra[unit];
+            moved |= (after - before).abs() > 1e-9 * (1.0 + after);
         }
+        moved || bench.enough > HELD_HEAD.absolute
     }
 
     /// Finds the loss at which one unit is content, the others left as they are.
@@ -130,11 +120,13 @@ impl Regulating {
             system,
             state,
             effort,
+            ..
         } = bench;
         self.balance(paths, system, state, effort);
         let felt = system.throttles.ruling(system, state, unit);
         let room = felt.map_or(0.0, |felt| {
-            if felt.value.abs() <= 0.5 * felt.tolerance {
+            let fine = felt.value.abs() <= 0.5 * felt.tolerance;
+            if fine || felt.head.abs() <= bench.enough {
                 0.0
             } else {
                 felt.head

@@ -41,6 +41,15 @@ const LIMIT: u32 = 40;
 /// Outer steps without a better state before that.
 const PATIENCE: u32 = 6;
 
+/// Rounds of bracketing.
+const ROUNDS: u32 = 30;
+
+/// Balances of the certain path before it is given up.
+const BALANCES: u32 = 5_000;
+
+/// Loss beyond the verge of opening that keeps a line shut while others move, m: more than heads move in one step.
+const FIRMLY: f64 = 1e3;
+
 /// What a unit asks for at the present balance.
 #[derive(Clone, Copy, Debug, PartialEq)]
 enum Wish {
@@ -50,8 +59,10 @@ enum Wish {
     Ruled,
     /// It is to add nothing.
     Open,
-    /// It stands still under a loss though it has room: the loss is to become this.
-    Lower(f64),
+    /// It has no room and stands still: it is to stay shut whatever else moves.
+    Shut,
+    /// It stands still under its loss though it has room: it is to be ruled from the verge of opening.
+    Reopen,
 }
 
 /// Scratch.
@@ -62,6 +73,8 @@ pub(super) struct Regulating {
     /// Of the ruled ones: the response of each one's room to each one's loss, by columns.
     matrix: Vec<f64>,
     right: Vec<f64>,
+    /// Per unit: losses to go back to.
+    kept: Vec<f64>,
     response: Response,
     pub(super) balances: u32,
 }
@@ -74,6 +87,7 @@ impl Regulating {
             ruled: Vec::with_capacity(units),
             matrix: vec![0.0; units * units],
             right: vec![0.0; units],
+            kept: vec![0.0; units],
             response: Response::new(system),
             balances: 0,
         }
@@ -93,8 +107,23 @@ impl Regulating {
         if self.steps(paths, system, state, effort, &mut certain) {
             return certain;
         }
-        self.bracket_all(paths, system, state, effort);
-        self.steps(paths, system, state, effort, &mut certain);
+        for unit in 0..system.throttles.lines.len() {
+            system.throttle(unit, 0.0);
+        }
+        system.cold_start(state);
+        for round in 0..ROUNDS {
+            let moved = self.bracket_round(round, paths, system, state, effort);
+            self.kept.copy_from_slice(&system.throttles.extra);
+            if self.steps(paths, system, state, effort, &mut certain) {
+                break;
+            }
+            for unit in 0..self.kept.len() {
+                system.throttle(unit, self.kept[unit]);
+            }
+            if !moved || self.balances > BALANCES {
+                break;
+            }
+        }
         true
     }
 
@@ -172,6 +201,18 @@ impl Regulating {
 
     /// One outer step; false if there is none.
     fn step(&mut self, system: &mut System, state: &mut State, effort: &mut Effort) -> bool {
+        // One at a time: several that each would make the others' opening needless need not fit together.
+        let room = |unit: &usize| {
+            let felt = system.throttles.ruling(system, state, *unit);
+            felt.map_or(0.0, |felt| felt.head)
+        };
+        let reopens = |unit: &usize| self.wishes[*unit] == Wish::Reopen;
+        let first = (0..system.throttles.lines.len())
+            .filter(reopens)
+            .max_by(|a, b| room(a).total_cmp(&room(b)));
+        if let Some(unit) = first {
+            self.wishes[unit] = reopen(system, state, unit);
+        }
         if !self.response.linearise(system, state, effort) || !self.choose(system, state) {
             return false;
         }
@@ -182,9 +223,9 @@ impl Regulating {
             let leader = system.throttles.leader[unit];
             let alone = system.throttles.led_by(leader).count() == 1;
             let new = match self.wishes[leader] {
-                Wish::Stay => continue,
+                Wish::Stay | Wish::Reopen => extra,
                 Wish::Open => 0.0,
-                Wish::Lower(to) => to,
+                Wish::Shut => (system.push(state, line) + extra).max(0.0) + FIRMLY,
                 Wish::Ruled if alone => {
                     let q = state.flows[line] + self.response.flow(system, line);
                     let drop = system.drop(state, line) + extra + self.response.drop(system, line);
@@ -200,9 +241,7 @@ impl Regulating {
         }
         self.response.advance(system, state);
         for unit in 0..system.throttles.lines.len() {
-            if self.wishes[system.throttles.leader[unit]] != Wish::Stay {
-                system.throttle(unit, self.right[unit]);
-            }
+            system.throttle(unit, self.right[unit]);
         }
         true
     }
@@ -258,19 +297,42 @@ impl Regulating {
     }
 }
 
+/// Brings a unit that stands still to the verge of opening, with the resistance of an ordinary flow, so that a step can take
+/// it from there.
+fn reopen(system: &mut System, state: &mut State, leader: usize) -> Wish {
+    let led = |system: &System, unit: usize| system.throttles.leader[unit] == leader;
+    let mut spare = f64::NEG_INFINITY;
+    for unit in leader..system.throttles.lines.len() {
+        if led(system, unit) {
+            let line = system.throttles.lines[unit];
+            spare = spare.max(system.push(state, line) + system.throttles.extra[unit]);
+        }
+    }
+    if spare <= 0.0 {
+        return Wish::Open;
+    }
+    for unit in leader..system.throttles.lines.len() {
+        if led(system, unit) {
+            let line = system.throttles.lines[unit];
+            system.throttle(unit, spare);
+            state.shut[line] &= system.push(state, line) < -HELD_HEAD.absolute;
+        }
+    }
+    Wish::Ruled
+}
+
 /// What a unit wishes, and how far it is from content, over its tolerance.
 fn wish(system: &System, state: &State, unit: usize, felt: &Felt) -> (Wish, f64) {
     let extra = system.throttles.extra[unit];
     let off = felt.value / felt.tolerance;
     if system.all_stand_still(state, unit) {
         // Nothing flows: right if it has no room, or nothing would flow without its loss either.
-        if off <= 1.0 || extra == 0.0 {
-            return (Wish::Stay, 0.0);
-        }
-        let lines = system.throttles.led_by(unit);
-        let push = lines.map(|led| system.push(state, system.throttles.lines[led]));
-        let spare = push.fold(f64::NEG_INFINITY, f64::max) + extra;
-        return (Wish::Lower((0.5 * spare.min(extra)).max(0.0)), off);
+        return match extra {
+            _ if off < -1.0 => (Wish::Shut, 0.0),
+            0.0 => (Wish::Stay, 0.0),
+            _ if off <= 1.0 => (Wish::Stay, 0.0),
+            _ => (Wish::Reopen, off),
+        };
     }
     if off < 0.0 {
         return (Wish::Ruled, -off);

@@ -4,6 +4,7 @@ use super::newton::Effort;
 use super::system::{State, System};
 use super::throttles::{Feeler, Throttles};
 use super::tolerance::SLOPE_FLOOR;
+use crate::part::HeadLaw;
 
 /// Scratch, and the last response.
 pub(super) struct Response {
@@ -34,13 +35,25 @@ impl Response {
         effort.factorisations += 1;
         system.laws.evaluate(&state.flows);
         let System {
-            laws, factor, live, ..
+            laws,
+            factor,
+            live,
+            throttles,
+            start_flow,
+            ..
         } = system;
         factor.clear();
         self.conductance.fill(0.0);
         for live in live.iter().filter(|live| !state.shut[live.index()]) {
             let line = live.index();
-            let slope = laws.loss_at(line, state.flows[line]).slope;
+            let q = state.flows[line];
+            let slope = if q == 0.0 && throttles.unit_of(line).is_some() {
+                // What is on the verge of opening is flat there: the resistance of an ordinary flow says more.
+                let law = laws.line(line);
+                (law.loss(start_flow[line]).head - law.loss(0.0).head) / start_flow[line]
+            } else {
+                laws.loss_at(line, q).slope
+            };
             let y = 1.0 / slope.max(SLOPE_FLOOR);
             self.conductance[line] = y;
             factor.join(live.from_unknown, live.to_unknown, live.slot, y);

@@ -308,6 +308,9 @@ impl<'n> Solver<'n> {
         if let Some(at) = self.system.reach.unsatisfiable(network, settings) {
             return SolveError::Unreachable(at);
         }
+        if let Some(error) = self.not_held(error) {
+            return error;
+        }
         let size = |node: &NodeId| self.state.heads[node.index()].abs();
         match network
             .node_ids()
@@ -319,6 +322,23 @@ impl<'n> Solver<'n> {
             },
             _ => error,
         }
+    }
+
+    /// The regulating part behind a state that does not balance: one that closed without end and still lets too much pass.
+    fn not_held(&self, error: SolveError) -> Option<SolveError> {
+        const WITHOUT_END: f64 = 1e4;
+        if let SolveError::NotHeld { .. } = error {
+            return Some(error);
+        }
+        let throttles = &self.system.throttles;
+        let worst = (0..throttles.lines.len())
+            .filter(|unit| throttles.acts[*unit] && throttles.extra[*unit] > WITHOUT_END)
+            .find(|unit| !self.system.stands_still(&self.state, *unit))?;
+        let ruling = throttles.ruling(&self.system, &self.state, worst)?;
+        Some(SolveError::NotHeld {
+            regulator: ruling.feeler.id,
+            off: ruling.value,
+        })
     }
 
     /// Puts the state into the answer: heads that mean nothing are left out, states are named.

@@ -17,6 +17,7 @@ mod random;
 mod readme;
 mod reference;
 mod reference_over_time;
+mod regulating;
 mod shift_closed_forms;
 mod shift_meadow;
 mod shift_read;
