@@ -10,6 +10,8 @@ use dutybank::read::{self, Change, Document};
 use dutybank::solve::operation::{self, RegulatorOperation};
 use dutybank::solve::{Solution, SolveError, Solver};
 
+use dutybank::shift::{Plan, Record, Shape, Shift, Tank, What, run};
+
 use crate::description::{Description, Piece};
 use crate::random::{self, Random, Range};
 
@@ -367,7 +369,7 @@ lines:
         ),
         (
             "limit_flow: {flow: 39 m3/h, k: 3, bore: 100 mm}",
-            "lets 39.0 m3/h pass",
+            "lets 39 m3/h pass",
         ),
     ] {
         let text = text.replace("PART", part);
@@ -380,6 +382,83 @@ lines:
         };
         assert!(message.contains(expected), "{message}");
     }
+}
+
+/// The tank gives its limit while its level is above r q2, then what its level lets through: sqrt(z) falls by t/(2 A sqrt(r)).
+#[test]
+fn a_limiter_below_a_draining_tank_stands_wide_open_from_the_level_that_needs_it_no_more() {
+    let (area, r, limit) = (2.0, 4e4, 0.005);
+    let net = network(&format!(
+        "
+nodes: {{tank: {{tank: {{floor: 0 m, depth: 5 m, area: {area} m2, level: 4 m}}}}, pond: {{reservoir: 0 m}}}}
+lines: {{out: {{from: tank, to: pond, limit_flow: {{flow: {limit} m3/s, k: {}, bore: 100 mm}}}}}}
+",
+        k(r)
+    ));
+    let tank = net.find_node("tank").unwrap();
+    let shift = Shift {
+        lasts: 1600.0,
+        report_every: Some(400.0),
+        tanks: vec![Tank::open(tank, Shape::Upright { area }, 5.0, 4.0)],
+        ..Shift::default()
+    };
+    let mut record = Record::new();
+    run(&net, &shift, &Plan::default(), &mut record).unwrap();
+    let turns: Vec<(What, f64)> = record.events().iter().map(|e| (e.what, e.time)).collect();
+    let open = turns.iter().find(|(what, _)| *what == What::WideOpen);
+    // 2 m2 x (4 m - r q2) / q
+    near(open.unwrap_or_else(|| panic!("{turns:?}")).1, 1200.0, 1e-5);
+    let level = |time: f64| {
+        let row = record.times().iter().position(|t| (t - time).abs() < 1e-6);
+        record.column(0)[row.unwrap()]
+    };
+    near(level(800.0), 2.0, 1e-9);
+    near(level(1600.0), 0.25, 1e-6);
+}
+
+/// `tests/reference/regulating.py`: every combination of states tried, each solved by scipy.optimize.root.
+#[test]
+fn generated_networks_agree_with_an_independent_solution() {
+    let file =
+        std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/reference/regulating.json");
+    let cases: serde_json::Value =
+        serde_json::from_str(&std::fs::read_to_string(file).unwrap()).unwrap();
+    let cases = cases.as_array().unwrap();
+    assert!(cases.len() >= 40);
+    let mut wrong = Vec::new();
+    let (mut figures, mut most, mut certain) = (0, 0, 0);
+    for (i, case) in cases.iter().enumerate() {
+        let net = network(case["text"].as_str().unwrap());
+        let solution = solved(&net);
+        most = most.max(solution.balance().iterations);
+        certain += u32::from(solution.balance().certain_path);
+        for (name, expected) in case["heads"].as_object().unwrap() {
+            let (found, expected) = (head(&net, &solution, name), expected.as_f64().unwrap());
+            figures += 1;
+            if (found - expected).abs() > 1e-6 {
+                wrong.push(format!("{i}: {name} at {found}, not {expected}"));
+            }
+        }
+        for (name, expected) in case["flows"].as_object().unwrap() {
+            let (found, expected) = (flow(&net, &solution, name), expected.as_f64().unwrap());
+            figures += 1;
+            if (found - expected).abs() > 1e-8 {
+                wrong.push(format!("{i}: {name} carries {found}, not {expected}"));
+            }
+        }
+        for (name, expected) in case["states"].as_object().unwrap() {
+            let found = dutybank::output::regulators::state_word(does(&net, &solution, name).state);
+            figures += 1;
+            if Some(found) != expected.as_str() {
+                wrong.push(format!("{i}: {name} is {found}, not {expected}"));
+            }
+        }
+    }
+    println!(
+        "{figures} figures of {} networks, at most {most} iterations, {certain} by the certain path",
+        cases.len()
+    );
+    assert!(wrong.is_empty(), "{}", wrong.join("\n"));
 }
 
 /// What the answer says of each part, looked at from outside: by heads and flows alone.
