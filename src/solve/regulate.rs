@@ -8,23 +8,23 @@
 //! s_i >= 0,   room_i(s) >= 0,   one of them zero while line i flows
 //! ```
 //!
-//! *Outer steps*: a semismooth Newton method. At the balance for the present `s` the laws are made linear; units with more loss
-//! than room are ruled (their room is to become zero), the others open wide. With `u` the change of losses,
+//! *Outer steps*: a primal–dual active set. At the balance for the present `s`, units with more loss than room are ruled (their
+//! room is to become zero), the others open wide or stay shut. With these states frozen a Newton iteration on heads, flows and
+//! losses together finds the balance that they ask for: one solve with the factorised heads system per ruled unit, and a small
+//! dense system in the changes `u` of the losses,
 //!
 //! ```text
-//! (sum_j y (dh_i - dh_other)) = sum_out y u - sum_in y u      y = 1/g'(q)
-//! A u = -room over the ruled ones,  A_ij = d room_i / d s_j
+//! A u = -room - (what comes of the rest),   A_ij = d room_i / d s_j
 //! ```
 //!
-//! one solve with the factorised heads system per ruled unit. The new loss is then read off the law at the flow and heads
-//! foreseen, `s = h_from - h_to - g(q)`, which is exact where either alone decides.
+//! Then the network is balanced with the losses found, one-way lines free again, and the wishes are looked at anew.
 //!
 //! *Certain path*: opening one part further never lessens what it feels (the inverse of a heads system has its largest entry
 //! of each column on the diagonal), so room_i rises with s_i and one part alone is found by bracketing, for certain. Several are bracketed in turn
 //! until none moves, which is a nonlinear Gauss–Seidel method; outer steps from there finish.
 //!
 //! # Source
-//! L. Qi, J. Sun, "A nonsmooth version of Newton's method", Mathematical Programming 58, 1993; J. M. Ortega, W. C. Rheinboldt,
+//! M. Hintermüller, K. Ito, K. Kunisch, "The primal-dual active set strategy as a semismooth Newton method", SIAM J. Optim. 13, 2002; J. M. Ortega, W. C. Rheinboldt,
 //! "Iterative Solution of Nonlinear Equations in Several Variables", 1970, section 7.4 (Gauss–Seidel); M. Dowell, P. Jarratt, "A
 //! modified regula falsi method", BIT 11, 1971 (the bracketing).
 
@@ -40,6 +40,9 @@ const LIMIT: u32 = 40;
 
 /// Outer steps without a better state before that.
 const PATIENCE: u32 = 6;
+
+/// Iterations with the wishes as they are.
+const FROZEN: u32 = 20;
 
 /// Rounds of bracketing.
 const ROUNDS: u32 = 30;
@@ -63,6 +66,8 @@ enum Wish {
     Shut,
     /// It stands still under its loss though it has room: it is to be ruled from the verge of opening.
     Reopen,
+    /// It stands still, just so: content, but ready to flow when others move.
+    Verge,
 }
 
 /// Scratch.
@@ -199,81 +204,106 @@ impl Regulating {
         worst
     }
 
-    /// One outer step; false if there is none.
+    /// One outer step: with the wishes as they are, a Newton iteration on heads, flows and losses together. False if that
+    /// leads nowhere.
     fn step(&mut self, system: &mut System, state: &mut State, effort: &mut Effort) -> bool {
-        // One at a time: several that each would make the others' opening needless need not fit together.
+        self.prepare(system, state);
+        let mut before = f64::INFINITY;
+        for _ in 0..FROZEN {
+            effort.iterations += 1;
+            let Some(worst) = self.response.linearise(system, state, effort) else {
+                return false;
+            };
+            let worst = self.ruled.iter().fold(worst, |worst, unit| {
+                let felt = system.throttles.ruling(system, state, *unit);
+                felt.map_or(worst, |felt| worst.max(felt.value.abs() / felt.tolerance))
+            });
+            // Rounding ends it, or a course that leads away.
+            let done = worst <= 1.0 || worst < 1e4 && worst >= before;
+            if done {
+                break;
+            }
+            before = worst;
+            if !self.choose(system, state) {
+                return false;
+            }
+            self.response.advance(system, state);
+            for unit in 0..system.throttles.lines.len() {
+                let extra = system.throttles.extra[unit] + self.response.change[unit];
+                system.throttle(unit, extra);
+            }
+        }
+        self.land(system, state)
+    }
+
+    /// Takes the wishes over: who opens is open, who is ruled is in the equations.
+    fn prepare(&mut self, system: &mut System, state: &mut State) {
+        // One reopens at a time: several that each would make the others' opening needless need not fit together.
+        let units = system.throttles.lines.len();
         let room = |unit: &usize| {
             let felt = system.throttles.ruling(system, state, *unit);
             felt.map_or(0.0, |felt| felt.head)
         };
         let reopens = |unit: &usize| self.wishes[*unit] == Wish::Reopen;
-        let first = (0..system.throttles.lines.len())
+        let first = (0..units)
             .filter(reopens)
             .max_by(|a, b| room(a).total_cmp(&room(b)));
-        if let Some(unit) = first {
-            self.wishes[unit] = reopen(system, state, unit);
+        self.ruled.clear();
+        for unit in 0..units {
+            match self.wishes[unit] {
+                Wish::Reopen if first != Some(unit) => {}
+                Wish::Reopen | Wish::Verge => {
+                    self.wishes[unit] = reopen(system, state, unit);
+                }
+                _ => {}
+            }
+            match self.wishes[unit] {
+                Wish::Ruled => self.ruled.push(unit),
+                Wish::Open => throttle_all(system, state, unit, |_| 0.0),
+                Wish::Shut => throttle_all(system, state, unit, |spare| spare.max(0.0) + FIRMLY),
+                Wish::Stay | Wish::Reopen | Wish::Verge => {}
+            }
         }
-        if !self.response.linearise(system, state, effort) || !self.choose(system, state) {
+    }
+
+    /// After the iteration: losses below zero and flows against the way of a line are no answer, but say which way it lies.
+    fn land(&mut self, system: &mut System, state: &State) -> bool {
+        let finite = |x: &f64| x.is_finite();
+        if !state.flows.iter().all(finite) || !state.heads.iter().all(finite) {
             return false;
         }
-        self.response.work_out(system);
         for unit in 0..system.throttles.lines.len() {
-            let line = system.throttles.lines[unit];
-            let extra = system.throttles.extra[unit];
-            let leader = system.throttles.leader[unit];
-            let alone = system.throttles.led_by(leader).count() == 1;
-            let new = match self.wishes[leader] {
-                Wish::Stay | Wish::Reopen => extra,
-                Wish::Open => 0.0,
-                Wish::Shut => (system.push(state, line) + extra).max(0.0) + FIRMLY,
-                Wish::Ruled if alone => {
-                    let q = state.flows[line] + self.response.flow(system, line);
-                    let drop = system.drop(state, line) + extra + self.response.drop(system, line);
-                    // s = h_from - h_to - g(q)
-                    drop - system.loss(line, q.max(0.0)).head
-                }
-                Wish::Ruled => extra + self.response.change[unit],
-            };
-            if !new.is_finite() {
-                return false;
+            if self.wishes[system.throttles.leader[unit]] != Wish::Ruled {
+                continue;
             }
-            self.right[unit] = new.max(0.0);
-        }
-        self.response.advance(system, state);
-        for unit in 0..system.throttles.lines.len() {
-            system.throttle(unit, self.right[unit]);
+            let line = system.throttles.lines[unit];
+            let backwards = state.flows[line] < 0.0;
+            let extra = system.throttles.extra[unit];
+            let new = if backwards && extra > 0.0 {
+                extra + FIRMLY
+            } else {
+                extra.max(0.0)
+            };
+            system.throttle(unit, new);
         }
         true
     }
 
-    /// The changes of loss: the opening ones give theirs up, the ruled ones take their room away.
+    /// The changes of loss of the ruled ones that take their room away.
     fn choose(&mut self, system: &mut System, state: &State) -> bool {
-        let units = system.throttles.lines.len();
-        self.ruled.clear();
-        for unit in 0..units {
-            if self.wishes[unit] == Wish::Ruled {
-                self.ruled.push(unit);
-            }
-        }
         let n = self.ruled.len();
         for j in 0..n {
             self.response.change.fill(0.0);
             self.response.put(&system.throttles, self.ruled[j], 1.0);
-            self.response.work_out(system);
+            self.response.work_out(system, false);
             for i in 0..n {
                 self.matrix[j * n + i] = self.felt(system, state, self.ruled[i]).1;
             }
         }
         self.response.change.fill(0.0);
-        for unit in 0..units {
-            if self.wishes[unit] == Wish::Open {
-                let change = -system.throttles.extra[unit];
-                self.response.put(&system.throttles, unit, change);
-            }
-        }
-        self.response.work_out(system);
+        self.response.work_out(system, true);
         for i in 0..n {
-            // A u = -room - (what the opening ones do)
+            // A u = -room - (what comes of the rest)
             let (room, response) = self.felt(system, state, self.ruled[i]);
             self.right[i] = -room - response;
         }
@@ -284,6 +314,7 @@ impl Regulating {
             self.response
                 .put(&system.throttles, self.ruled[i], self.right[i]);
         }
+        self.response.work_out(system, true);
         true
     }
 
@@ -297,26 +328,31 @@ impl Regulating {
     }
 }
 
-/// Brings a unit that stands still to the verge of opening, with the resistance of an ordinary flow, so that a step can take
-/// it from there.
-fn reopen(system: &mut System, state: &mut State, leader: usize) -> Wish {
-    let led = |system: &System, unit: usize| system.throttles.leader[unit] == leader;
-    let mut spare = f64::NEG_INFINITY;
+/// Sets the losses of a unit and of those that share it, told how much head each has to spare at no flow.
+fn throttle_all(system: &mut System, state: &State, leader: usize, to: impl Fn(f64) -> f64) {
     for unit in leader..system.throttles.lines.len() {
-        if led(system, unit) {
+        if system.throttles.leader[unit] == leader {
             let line = system.throttles.lines[unit];
-            spare = spare.max(system.push(state, line) + system.throttles.extra[unit]);
+            let spare = system.push(state, line) + system.throttles.extra[unit];
+            system.throttle(unit, to(spare));
         }
+    }
+}
+
+/// Brings a unit that stands still to the verge of opening, so that a step can take it from there.
+fn reopen(system: &mut System, state: &mut State, leader: usize) -> Wish {
+    let mut spare = f64::NEG_INFINITY;
+    for unit in system.throttles.led_by(leader) {
+        let line = system.throttles.lines[unit];
+        spare = spare.max(system.push(state, line) + system.throttles.extra[unit]);
     }
     if spare <= 0.0 {
         return Wish::Open;
     }
-    for unit in leader..system.throttles.lines.len() {
-        if led(system, unit) {
-            let line = system.throttles.lines[unit];
-            system.throttle(unit, spare);
-            state.shut[line] &= system.push(state, line) < -HELD_HEAD.absolute;
-        }
+    throttle_all(system, state, leader, |_| spare);
+    for unit in system.throttles.led_by(leader) {
+        let line = system.throttles.lines[unit];
+        state.shut[line] &= system.push(state, line) < -HELD_HEAD.absolute;
     }
     Wish::Ruled
 }
@@ -330,7 +366,7 @@ fn wish(system: &System, state: &State, unit: usize, felt: &Felt) -> (Wish, f64)
         return match extra {
             _ if off < -1.0 => (Wish::Shut, 0.0),
             0.0 => (Wish::Stay, 0.0),
-            _ if off <= 1.0 => (Wish::Stay, 0.0),
+            _ if off <= 1.0 => (Wish::Verge, 0.0),
             _ => (Wish::Reopen, off),
         };
     }

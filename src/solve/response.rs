@@ -1,19 +1,29 @@
 //! How a balance answers, to first order, when the further losses of regulating parts change.
+//!
+//! ```text
+//! line j:   dq = y (dh_from - dh_to - r - u)                    y = 1/g'(q),  r = g(q) + s - (h_from - h_to),  u: change of s
+//! node i:   sum_j y (dh_i - dh_other) = e_i + sum_out y (r + u) - sum_in y (r + u)
+//! ```
 
 use super::newton::Effort;
 use super::system::{State, System};
 use super::throttles::{Feeler, Throttles};
-use super::tolerance::SLOPE_FLOOR;
-use crate::part::HeadLaw;
+use super::tolerance::{HEAD, SLOPE_FLOOR, flow_tolerance, rounding};
+use crate::part::{HeadLaw, HeadLoss};
 
 /// Scratch, and the last response.
 pub(super) struct Response {
     /// Per line: conductance 1/g'(q), m3/s per m; zero where nothing flows or the flow follows from continuity.
     conductance: Vec<f64>,
-    /// Per unknown and one for all held heads.
+    /// Per line: by how much its heads do not balance, m.
+    residual: Vec<f64>,
+    /// Per unknown and one for all held heads: by how much its flows do not balance, m3/s.
+    imbalance: Vec<f64>,
     step: Vec<f64>,
     /// Per node: change of head, m.
     rise: Vec<f64>,
+    /// Whether the response includes that to what does not balance yet.
+    whole: bool,
     /// Per unit: the change of loss that this answers, m.
     pub change: Vec<f64>,
 }
@@ -24,41 +34,71 @@ impl Response {
         let size = |n: usize| if units == 0 { 0 } else { n };
         Self {
             conductance: vec![0.0; size(system.roles.len())],
+            residual: vec![0.0; size(system.roles.len())],
+            imbalance: vec![0.0; size(system.unknowns() + 1)],
             step: vec![0.0; size(system.unknowns() + 1)],
             rise: vec![0.0; size(system.held.len())],
+            whole: false,
             change: vec![0.0; units],
         }
     }
 
-    /// Makes the laws linear at the present flows; false if that cannot be done.
-    pub fn linearise(&mut self, system: &mut System, state: &State, effort: &mut Effort) -> bool {
+    /// Makes the laws linear at the present flows; returns how far these are from balance, over the tolerances; none if
+    /// that cannot be done.
+    pub fn linearise(
+        &mut self,
+        system: &mut System,
+        state: &State,
+        effort: &mut Effort,
+    ) -> Option<f64> {
         effort.factorisations += 1;
         system.laws.evaluate(&state.flows);
         let System {
             laws,
             factor,
             live,
+            free,
+            draws,
             throttles,
             start_flow,
             ..
         } = system;
         factor.clear();
         self.conductance.fill(0.0);
+        self.imbalance.fill(0.0);
+        for (draw, unknown) in draws.iter().zip(free.iter()) {
+            if let Some(i) = *unknown {
+                self.imbalance[i as usize] = -draw;
+            }
+        }
+        let (mut worst, mut largest_flow): (f64, f64) = (0.0, 0.0);
         for live in live.iter().filter(|live| !state.shut[live.index()]) {
             let line = live.index();
             let q = state.flows[line];
+            let HeadLoss { head, slope } = laws.loss_at(line, q);
             let slope = if q == 0.0 && throttles.unit_of(line).is_some() {
                 // What is on the verge of opening is flat there: the resistance of an ordinary flow says more.
-                let law = laws.line(line);
-                (law.loss(start_flow[line]).head - law.loss(0.0).head) / start_flow[line]
+                (laws.line(line).loss(start_flow[line]).head - head) / start_flow[line]
             } else {
-                laws.loss_at(line, q).slope
+                slope
             };
             let y = 1.0 / slope.max(SLOPE_FLOOR);
+            let drop = live.drop(&state.heads);
+            let size = state.heads[live.from as usize].abs() + drop.abs();
+            let scale = HEAD.absolute + HEAD.relative * size + rounding(q, slope);
+            worst = worst.max((head - drop).abs() / scale);
+            largest_flow = largest_flow.max(q.abs());
             self.conductance[line] = y;
+            self.residual[line] = head - drop;
+            self.imbalance[live.from_unknown as usize] -= q;
+            self.imbalance[live.to_unknown as usize] += q;
             factor.join(live.from_unknown, live.to_unknown, live.slot, y);
         }
-        factor.factorise()
+        for unknown in free.iter().flatten() {
+            let off = self.imbalance[*unknown as usize].abs();
+            worst = worst.max(off / flow_tolerance(largest_flow));
+        }
+        factor.factorise().then_some(worst)
     }
 
     /// Sets the change of loss of a unit and of those that share it.
@@ -68,11 +108,18 @@ impl Response {
         }
     }
 
-    /// Works the response to [`Self::change`] out.
-    pub fn work_out(&mut self, system: &mut System) {
-        // dq = y (dh_from - dh_to - u), and no node gains or loses by it:
-        // sum_j y (dh_i - dh_other) = sum_out y u - sum_in y u
+    /// Works out the response to [`Self::change`] alone, or the `whole` one: to what does not balance yet too.
+    pub fn work_out(&mut self, system: &mut System, whole: bool) {
+        self.whole = whole;
         self.step.fill(0.0);
+        if whole {
+            self.step.copy_from_slice(&self.imbalance);
+            for live in &system.live {
+                let pull = self.conductance[live.index()] * self.residual[live.index()];
+                self.step[live.from_unknown as usize] += pull;
+                self.step[live.to_unknown as usize] -= pull;
+            }
+        }
         for (unit, &u) in self.change.iter().enumerate() {
             let line = system.throttles.lines[unit] as u32;
             if u == 0.0 {
@@ -94,17 +141,17 @@ impl Response {
         system.spread_to_leaves(&mut self.rise, extra);
     }
 
-    /// Change of the head difference along a line, its own further loss aside, m.
-    pub fn drop(&self, system: &System, line: usize) -> f64 {
-        let (from, to) = system.ends[line];
-        self.rise[from as usize] - self.rise[to as usize]
-    }
-
     /// Change of a line's flow, m3/s.
-    pub fn flow(&self, system: &System, line: usize) -> f64 {
+    fn flow(&self, system: &System, line: usize) -> f64 {
         let unit = system.throttles.unit_of(line);
         let change = unit.map_or(0.0, |unit| self.change[unit]);
-        self.conductance[line] * (self.drop(system, line) - change)
+        let residual = if self.whole { self.residual[line] } else { 0.0 };
+        let (from, to) = system.ends[line];
+        let drop = self.rise[from as usize] - self.rise[to as usize];
+        match self.conductance[line] {
+            0.0 => 0.0,
+            y => y * (drop - residual - change),
+        }
     }
 
     /// Change of what a part feels.
@@ -116,20 +163,13 @@ impl Response {
         }
     }
 
-    /// Takes heads and flows of `state` on to where the response foresees them.
+    /// Takes heads and flows of `state` on to where the response foresees them; flows may pass through the wrong sense.
     pub fn advance(&self, system: &System, state: &mut State) {
-        for (node, free) in system.free.iter().enumerate() {
-            if free.is_some() {
-                state.heads[node] += self.rise[node];
-            }
-        }
         for live in system.live.iter().filter(|live| !state.shut[live.index()]) {
-            let line = live.index();
-            let q = state.flows[line] + self.flow(system, line);
-            // What would turn round is left to the balance.
-            if live.sense * q >= 0.0 {
-                state.flows[line] = q;
-            }
+            state.flows[live.index()] += self.flow(system, live.index());
+        }
+        for (head, rise) in state.heads.iter_mut().zip(&self.rise) {
+            *head += rise;
         }
     }
 }

@@ -166,7 +166,10 @@ impl Throttles {
             let line = system.throttles.lines[unit];
             let slope = system.laws.line(line).loss(state.flows[line]).slope;
             // A slope of next to nothing would make any flow look small beside a head.
-            let steep = slope.max(1.0);
+            let ordinary = system.start_flow[line].abs();
+            let law = system.laws.line(line);
+            let rise = law.loss(ordinary).head - law.loss(0.0).head;
+            let steep = slope.max(rise / ordinary).max(1.0);
             (
                 steep,
                 HELD_FLOW.absolute + HELD_FLOW.relative * feeler.set.abs(),
