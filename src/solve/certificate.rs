@@ -95,7 +95,12 @@ fn certify_regulators(system: &System, state: &State) -> Result<(), SolveError> 
         let allowed = CERTIFIED_HELD * ruling.tolerance;
         let added = added_loss(system, state, unit);
         let no_loss = added <= CERTIFIED_HEAD.absolute;
-        let off = if system.stands_still(state, unit) {
+        let still = system.stands_still(state, unit);
+        if !still && added < -CERTIFIED_HEAD.absolute {
+            let line = LineId(system.throttles.lines[unit] as u32);
+            return Err(SolveError::LineUnbalanced { line, by: added });
+        }
+        let off = if still {
             if no_loss { 0.0 } else { ruling.value.max(0.0) }
         } else if no_loss {
             (-ruling.value).max(0.0)
@@ -117,7 +122,9 @@ fn certify_regulators(system: &System, state: &State) -> Result<(), SolveError> 
 pub(super) fn added_loss(system: &System, state: &State, unit: usize) -> f64 {
     let line = system.throttles.lines[unit];
     let q = state.flows[line];
-    system.drop(state, line) + system.throttles.extra[unit] - system.laws.line(line).loss(q).head
+    let (from, to) = system.ends[line];
+    let ends = state.heads[from as usize] - state.heads[to as usize];
+    ends + system.throttles.base[unit] - system.laws.line(line).loss(q).head
 }
 
 /// What a regulating part does, and the loss it adds.

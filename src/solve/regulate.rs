@@ -50,6 +50,9 @@ const ROUNDS: u32 = 30;
 /// Balances of the certain path before it is given up.
 const BALANCES: u32 = 5_000;
 
+/// A loss beyond this went astray, m.
+const ASTRAY: f64 = 1e6;
+
 /// Loss beyond the verge of opening that keeps a line shut while others move, m: more than heads move in one step.
 const FIRMLY: f64 = 1e3;
 
@@ -279,7 +282,10 @@ impl Regulating {
             let line = system.throttles.lines[unit];
             let backwards = state.flows[line] < 0.0;
             let extra = system.throttles.extra[unit];
-            let new = if backwards && extra > 0.0 {
+            let one_way = system.sense[line] != 0.0;
+            let new = if backwards && !one_way || !extra.is_finite() || extra.abs() > ASTRAY {
+                0.0
+            } else if backwards && extra > 0.0 {
                 extra + FIRMLY
             } else {
                 extra.max(0.0)

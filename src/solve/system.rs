@@ -194,7 +194,8 @@ impl<'n> System<'n> {
                     .above_surface(line, end, settings)
                     .unwrap_or(0.0)
             };
-            let lift = above(End::From) - above(End::To) - self.throttles.extra(line);
+            let base = above(End::From) - above(End::To);
+            let lift = self.throttles.lift(line, base);
             lifted |= lift != std::mem::replace(&mut self.lift[line.index()], lift);
             self.sense[line.index()] = match self.reach.direction(line) {
                 Direction::Both | Direction::Neither => 0.0,
@@ -332,7 +333,9 @@ impl<'n> System<'n> {
     /// Puts the further loss of a unit of regulating parts into its line.
     pub fn throttle(&mut self, unit: usize, extra: f64) {
         let line = self.throttles.lines[unit];
-        self.lift[line] -= extra - std::mem::replace(&mut self.throttles.extra[unit], extra);
+        self.throttles.extra[unit] = extra;
+        // Never by differences: a loss that went astray would leave its rounding behind.
+        self.lift[line] = self.throttles.base[unit] - extra;
         if let Ok(at) = self
             .live
             .binary_search_by_key(&(line as u32), |live| live.line)

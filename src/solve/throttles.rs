@@ -38,6 +38,8 @@ pub(super) struct Throttles {
     pub lines: Vec<usize>,
     /// Per unit: the further loss of its line, m.
     pub extra: Vec<f64>,
+    /// Per unit: what [`System::lift`] of its line would be without that loss, m.
+    pub base: Vec<f64>,
     /// Per unit: whether its line can carry a flow at all.
     pub acts: Vec<bool>,
     /// Per unit: the first unit that shares its loss.
@@ -52,6 +54,7 @@ impl Throttles {
         let mut throttles = Self {
             lines: Vec::new(),
             extra: Vec::new(),
+            base: Vec::new(),
             acts: Vec::new(),
             leader: Vec::new(),
             feelers: Vec::new(),
@@ -79,6 +82,7 @@ impl Throttles {
                 throttles.leader.push(throttles.lines.len());
                 throttles.lines.push(index);
                 throttles.extra.push(0.0);
+                throttles.base.push(0.0);
                 throttles.acts.push(false);
             }
         }
@@ -95,11 +99,16 @@ impl Throttles {
         self.extra.fill(0.0);
     }
 
-    /// The further loss of a line, m.
+    /// The lift of a line with its further loss, of that without, m.
     #[inline]
-    pub fn extra(&self, line: LineId) -> f64 {
-        self.unit_of(line.index())
-            .map_or(0.0, |unit| self.extra[unit])
+    pub fn lift(&mut self, line: LineId, base: f64) -> f64 {
+        match self.unit_of(line.index()) {
+            None => base,
+            Some(unit) => {
+                self.base[unit] = base;
+                base - self.extra[unit]
+            }
+        }
     }
 
     /// The unit of a line.
