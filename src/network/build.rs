@@ -4,12 +4,13 @@ use std::collections::HashSet;
 
 use super::{
     Bank, Direction, End, Limits, Line, LineFacts, LineId, Network, Node, NodeId, NodeKind,
-    PumpSetting, Settings, ValveSetting,
+    PumpSetting, RegulatorSetting, Settings, ValveSetting,
 };
 use crate::fluid::Fluid;
 use crate::part::pump::{Covers, Pump, PumpModel};
+use crate::part::regulator::{Regulates, Regulator};
 use crate::part::valve::Valve;
-use crate::part::{Part, PumpId, ValveId};
+use crate::part::{Part, PumpId, RegulatorId, ValveId};
 
 /// Why a network could not be built.
 #[derive(Clone, Debug, PartialEq)]
@@ -31,6 +32,8 @@ pub enum BuildError {
     },
     /// An id is not from this network, or a pump or valve stands in no line or in two.
     Foreign(String),
+    /// A regulating part is to hold the pressure of a node whose head is fixed.
+    NotHeld(String),
     /// No reservoir, tank or outlet holds a head.
     NoFixedHead,
     /// More than `u32::MAX` nodes or lines.
@@ -53,6 +56,10 @@ impl std::fmt::Display for BuildError {
             Self::Foreign(name) => write!(
                 f,
                 "`{name}` refers to something that is not in this network, or twice"
+            ),
+            Self::NotHeld(name) => write!(
+                f,
+                "`{name}` cannot hold the pressure of a node that is no point"
             ),
             Self::NoFixedHead => write!(f, "no reservoir, tank or outlet holds a head"),
             Self::TooLarge => write!(f, "the network is too large"),
@@ -91,11 +98,14 @@ impl NetworkBuilder {
                 nodes: Vec::new(),
                 lines: Vec::new(),
                 directions: Vec::new(),
+                held_one_way: Vec::new(),
                 banks: Vec::new(),
                 pumps: Vec::new(),
                 pump_lines: Vec::new(),
                 valve_lines: Vec::new(),
                 valves: Vec::new(),
+                regulators: Vec::new(),
+                regulator_lines: Vec::new(),
                 models: Vec::new(),
                 covers: Vec::new(),
                 settings: Settings::new(),
@@ -145,6 +155,43 @@ impl NetworkBuilder {
         self.network.valves.push(valve);
         self.network.settings.add_valve(setting);
         id
+    }
+
+    /// Adds a regulating part; put its id into one line as [`Part::Regulator`].
+    pub fn regulator(&mut self, regulator: Regulator, setting: RegulatorSetting) -> RegulatorId {
+        let id = RegulatorId(self.network.regulators.len() as u32);
+        self.network.regulators.push(regulator);
+        self.network.settings.add_regulator(setting);
+        id
+    }
+
+    /// Names the pump that a part with [`Regulates::MinimumFlow`] protects; lines may come in any order.
+    pub fn protect(&mut self, id: RegulatorId, pump: PumpId) {
+        if let Some(regulator) = self.network.regulators.get_mut(id.index()) {
+            regulator.regulates = Regulates::MinimumFlow { pump };
+        }
+    }
+
+    /// A pump added before, by its name.
+    pub fn find_pump(&self, name: &str) -> Option<PumpId> {
+        self.network.find_pump(name)
+    }
+
+    /// Names of the pumps added before.
+    pub fn pump_names(&self) -> impl Iterator<Item = &str> {
+        self.network.pumps.iter().map(|pump| pump.name.as_str())
+    }
+
+    /// Whether a pump stands in the line of that name.
+    pub fn stands_in(&self, pump: PumpId, line: &str) -> bool {
+        let line = self.network.lines.iter().find(|other| other.name == line);
+        line.is_some_and(|line| line.pumps().any(|other| other == pump))
+    }
+
+    /// Name and kind of a node added before.
+    pub fn named(&self, node: NodeId) -> (&str, &NodeKind) {
+        let node = self.network.node(node);
+        (&node.name, &node.kind)
     }
 
     /// Adds a line.
@@ -225,11 +272,18 @@ impl NetworkBuilder {
         self.check_nodes()?;
         self.check_lines()?;
         self.check_pumps()?;
+        self.check_regulators()?;
         let network = &mut self.network;
+        let one_way = |line: &Line| {
+            line.regulators()
+                .any(|id| network.regulators[id.index()].regulates.one_way())
+        };
+        network.held_one_way = network.lines.iter().map(one_way).collect();
         network.directions = network
             .lines
             .iter()
-            .map(|line| direction(line, &network.nodes))
+            .zip(&network.held_one_way)
+            .map(|(line, one_way)| direction(line, *one_way, &network.nodes))
             .collect();
         Ok(self.network)
     }
@@ -283,6 +337,7 @@ impl NetworkBuilder {
         let network = &mut self.network;
         let mut pump_lines = vec![None; network.pumps.len()];
         let mut valve_lines = vec![None; network.valves.len()];
+        let mut regulator_lines = vec![None; network.regulators.len()];
         for (index, line) in network.lines.iter().enumerate() {
             let foreign = || BuildError::Foreign(line.name.clone());
             if line.from.index().max(line.to.index()) >= network.nodes.len() {
@@ -311,6 +366,12 @@ impl NetworkBuilder {
                             return Err(foreign());
                         }
                     }
+                    Part::Regulator(id) => {
+                        let place = regulator_lines.get_mut(id.index()).ok_or_else(foreign)?;
+                        if place.replace(LineId(index as u32)).is_some() {
+                            return Err(foreign());
+                        }
+                    }
                     Part::Pipe(pipe) => {
                         above_zero(&line.name, "length", pipe.length)?;
                         above_zero(&line.name, "bore", pipe.bore)?;
@@ -324,6 +385,10 @@ impl NetworkBuilder {
         network.valve_lines = valve_lines
             .into_iter()
             .map(|line| line.ok_or_else(|| BuildError::Foreign("a valve".to_owned())))
+            .collect::<Result<_, _>>()?;
+        network.regulator_lines = regulator_lines
+            .into_iter()
+            .map(|line| line.ok_or_else(|| BuildError::Foreign("a regulating part".to_owned())))
             .collect::<Result<_, _>>()?;
         network.pump_lines = pump_lines
             .into_iter()
@@ -349,12 +414,40 @@ impl NetworkBuilder {
         }
         Ok(())
     }
+
+    /// Set values, and that what a regulating part holds or feels is there to be held.
+    fn check_regulators(&self) -> Result<(), BuildError> {
+        let network = &self.network;
+        for id in network.regulator_ids() {
+            let name = network.regulator_name(id);
+            let set = network.settings.regulator(id).set;
+            let line = network.line(network.line_of_regulator(id));
+            match network.regulator(id).regulates {
+                Regulates::Downstream if !network.is_point(line.to) => {
+                    return Err(BuildError::NotHeld(name));
+                }
+                Regulates::Upstream if !network.is_point(line.from) => {
+                    return Err(BuildError::NotHeld(name));
+                }
+                Regulates::Downstream | Regulates::Upstream => finite(&name, "pressure", set)?,
+                Regulates::Flow => above_zero(&name, "flow", set)?,
+                Regulates::MinimumFlow { pump } => {
+                    if pump.index() >= network.pumps.len() {
+                        return Err(BuildError::Foreign(name));
+                    }
+                    above_zero(&name, "flow", set)?;
+                }
+            }
+        }
+        Ok(())
+    }
 }
 
-/// Which way water can go, by check valves in the line and outlets at its ends.
-fn direction(line: &Line, nodes: &[Node]) -> Direction {
+/// Which way water can go, by check valves and regulating parts in the line and outlets at its ends.
+fn direction(line: &Line, held_one_way: bool, nodes: &[Node]) -> Direction {
     let outlet = |id: NodeId| matches!(nodes[id.index()].kind, NodeKind::Outlet { .. });
-    Direction::of(line.has_check_valve() || outlet(line.to), outlet(line.from))
+    let forward_only = held_one_way || line.has_check_valve() || outlet(line.to);
+    Direction::of(forward_only, outlet(line.from))
 }
 
 fn out_of_range(name: &str, figure: &'static str, value: f64) -> BuildError {

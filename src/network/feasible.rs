@@ -1,6 +1,6 @@
 //! Whether any flows at all can meet the draws and inflows, one-way lines respected and every law left aside.
 //!
-//! Laws do not limit how much a line can carry, so this is a question of topology: two largest flows with unlimited
+//! Laws do not limit how much a line can carry, but for parts that limit a flow, so this is a question of topology: two largest flows with unlimited
 //! lines. One sends the inflows to the draws and fixed heads, one brings the draws from the inflows and fixed heads. If each can
 //! be carried in full, so can both together (N. S. Mendelsohn, A. L. Dulmage, "Some generalizations of the problem of
 //! distinct representatives", Canadian J. Math. 10, 1958).
@@ -8,7 +8,19 @@
 use petgraph::algo::ford_fulkerson;
 use petgraph::graph::{DiGraph, NodeIndex};
 
-use super::{Network, NodeId, Passage, Reach, Settings, Unreachable};
+use super::{LineId, Network, NodeId, Passage, Reach, Settings, Unreachable};
+use crate::part::regulator::Regulates;
+
+const UNLIMITED: f64 = 1e30;
+
+/// The largest flow that a line can carry forward whatever the heads, m3/s.
+fn most_forward(network: &Network, line: LineId, settings: &Settings) -> f64 {
+    let limits = network.line(line).regulators().filter_map(|id| {
+        let limits = network.regulator(id).regulates == Regulates::Flow;
+        limits.then(|| settings.regulator(id).set)
+    });
+    limits.fold(UNLIMITED, f64::min)
+}
 
 impl Reach {
     /// A draw or inflow that no flows can satisfy, if there is one: the node of the largest remainder.
@@ -36,7 +48,6 @@ impl Reach {
         downstream: bool,
         amount: impl Fn(NodeId) -> f64,
     ) -> Option<NodeId> {
-        const UNLIMITED: f64 = 1e30;
         let lines = network.lines().len();
         let mut graph: DiGraph<(), f64> =
             DiGraph::with_capacity(network.nodes().len() + 2, 2 * lines);
@@ -56,7 +67,7 @@ impl Reach {
             let direction = self.direction(line);
             let (there, back) = if downstream { (from, to) } else { (to, from) };
             if direction.forward() {
-                graph.add_edge(there, back, UNLIMITED);
+                graph.add_edge(there, back, most_forward(network, line, settings));
             }
             if direction.backward() {
                 graph.add_edge(back, there, UNLIMITED);

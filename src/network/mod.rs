@@ -15,13 +15,16 @@ pub use build::{BuildError, NetworkBuilder};
 pub use limits::{LimitName, Limits, Measure};
 pub use need::{Need, Target};
 pub use reach::{Passage, Reach, Standing, Unreachable};
-pub use settings::{CheckCondition, PumpSetting, Settings, TankMode, ValveSetting};
+pub use settings::{
+    CheckCondition, PumpSetting, RegulatorSetting, Settings, TankMode, ValveSetting,
+};
 
 use crate::fluid::Fluid;
 use crate::part::friction::Pipe;
 use crate::part::pump::{Covers, Pump, PumpModel};
+use crate::part::regulator::Regulator;
 use crate::part::valve::Valve;
-use crate::part::{Part, PumpId, ValveId};
+use crate::part::{Part, PumpId, RegulatorId, ValveId};
 
 /// Which node of a network; handed out by the network alone.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
@@ -120,6 +123,14 @@ impl Line {
         self.parts
             .iter()
             .any(|part| matches!(part, Part::CheckValve(_)))
+    }
+
+    /// The regulating parts in the line, in order.
+    pub fn regulators(&self) -> impl Iterator<Item = RegulatorId> + '_ {
+        self.parts.iter().filter_map(|part| match part {
+            Part::Regulator(id) => Some(*id),
+            _ => None,
+        })
     }
 
     /// The pumps in the line, in order.
@@ -221,11 +232,15 @@ pub struct Network {
     nodes: Vec<Node>,
     lines: Vec<Line>,
     directions: Vec<Direction>,
+    /// Per line: a regulating part lets nothing back through it.
+    held_one_way: Vec<bool>,
     banks: Vec<Bank>,
     pumps: Vec<Pump>,
     pump_lines: Vec<LineId>,
     valve_lines: Vec<LineId>,
     valves: Vec<Valve>,
+    regulators: Vec<Regulator>,
+    regulator_lines: Vec<LineId>,
     models: Vec<PumpModel>,
     covers: Vec<Option<Covers>>,
     settings: Settings,
@@ -296,6 +311,32 @@ impl Network {
         &self.valves[id.index()]
     }
 
+    /// Regulating parts in order.
+    pub fn regulators(&self) -> &[Regulator] {
+        &self.regulators
+    }
+
+    /// A regulating part.
+    pub fn regulator(&self, id: RegulatorId) -> &Regulator {
+        &self.regulators[id.index()]
+    }
+
+    /// The line a regulating part stands in.
+    pub fn line_of_regulator(&self, id: RegulatorId) -> LineId {
+        self.regulator_lines[id.index()]
+    }
+
+    /// A regulating part as users call it: `LINE.PART`.
+    pub fn regulator_name(&self, id: RegulatorId) -> String {
+        let line = self.line(self.line_of_regulator(id));
+        format!("{}.{}", line.name, self.regulator(id).regulates.word())
+    }
+
+    /// All ids of regulating parts.
+    pub fn regulator_ids(&self) -> impl ExactSizeIterator<Item = RegulatorId> + use<> {
+        (0..self.regulators.len() as u32).map(RegulatorId)
+    }
+
     /// The falling stand-ins for a pump's head curve, if that droops.
     pub fn covers(&self, id: PumpId) -> Option<&Covers> {
         self.covers[self.pump(id).model].as_ref()
@@ -309,6 +350,12 @@ impl Network {
             (Part::Loss(a), Part::Loss(b)) | (Part::CheckValve(a), Part::CheckValve(b)) => a == b,
             (Part::Valve(a), Part::Valve(b)) => {
                 self.valve(*a) == self.valve(*b) && settings.valve(*a) == settings.valve(*b)
+            }
+            (Part::Regulator(a), Part::Regulator(b)) => {
+                let (what, other) = (self.regulator(*a), self.regulator(*b));
+                what.wide_open == other.wide_open
+                    && what.regulates.word() == other.regulates.word()
+                    && settings.regulator(*a) == settings.regulator(*b)
             }
             (Part::Pump(a), Part::Pump(b)) => {
                 self.pump(*a).model == self.pump(*b).model
@@ -329,7 +376,7 @@ impl Network {
         if !(stuck || from || to) {
             return standing;
         }
-        let checked = self.line(id).has_check_valve() && !stuck;
+        let checked = self.line(id).has_check_valve() && !stuck || self.held_one_way[id.index()];
         let outlet = |node: NodeId| matches!(self.node(node).kind, NodeKind::Outlet { .. });
         let ends = self.line(id);
         Direction::of(checked || outlet(ends.to) || to, outlet(ends.from) || from)

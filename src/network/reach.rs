@@ -8,6 +8,7 @@ use petgraph::visit::EdgeRef;
 
 use super::{CheckCondition, Direction, LineId, Network, NodeId, Settings};
 use crate::part::Part;
+use crate::part::regulator::Regulates;
 
 /// Whether water can pass a line at all, as the settings have it.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Default)]
@@ -339,6 +340,16 @@ impl Network {
                 Part::Valve(id) => {
                     let setting = settings.valve(*id);
                     if !setting.open || self.valve(*id).loss_at(setting.opening).is_none() {
+                        return Passage::Closed;
+                    }
+                }
+                Part::Regulator(id) => {
+                    // The recirculation line of a pump that stands stays shut.
+                    let stands = match self.regulator(*id).regulates {
+                        Regulates::MinimumFlow { pump } => !settings.pump(pump).running,
+                        _ => false,
+                    };
+                    if !settings.regulator(*id).open || stands {
                         return Passage::Closed;
                     }
                 }

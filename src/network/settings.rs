@@ -1,6 +1,7 @@
 //! What may change without rebuilding the network: which pumps run and how fast, valves, draws, levels.
 
 use super::{LineId, NodeId, PumpId, ValveId};
+use crate::part::RegulatorId;
 
 /// How a pump is run.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -47,6 +48,15 @@ impl ValveSetting {
     };
 }
 
+/// How a regulating part is set.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct RegulatorSetting {
+    /// Whether it works at all; else it is shut.
+    pub open: bool,
+    /// Its set value: gauge pressure (Pa) at the elevation of the node it holds, or flow (m3/s).
+    pub set: f64,
+}
+
 /// Whether a tank holds its head.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Default)]
 pub enum TankMode {
@@ -81,6 +91,7 @@ pub struct Settings {
     tank_modes: Vec<TankMode>,
     pumps: Vec<PumpSetting>,
     valves: Vec<ValveSetting>,
+    regulators: Vec<RegulatorSetting>,
     checks: Vec<CheckCondition>,
     /// Per line: a further loss, m at 1 m3/s.
     foulings: Vec<f64>,
@@ -95,6 +106,7 @@ impl Settings {
             tank_modes: Vec::new(),
             pumps: Vec::new(),
             valves: Vec::new(),
+            regulators: Vec::new(),
             checks: Vec::new(),
             foulings: Vec::new(),
         }
@@ -118,6 +130,10 @@ impl Settings {
 
     pub(super) fn add_valve(&mut self, setting: ValveSetting) {
         self.valves.push(setting);
+    }
+
+    pub(super) fn add_regulator(&mut self, setting: RegulatorSetting) {
+        self.regulators.push(setting);
     }
 
     /// Flow leaving the system at a node, m3/s.
@@ -193,6 +209,16 @@ impl Settings {
     /// How a valve stands.
     pub fn valve(&self, id: ValveId) -> &ValveSetting {
         &self.valves[id.index()]
+    }
+
+    /// How a regulating part is set.
+    pub fn regulator(&self, id: RegulatorId) -> &RegulatorSetting {
+        &self.regulators[id.index()]
+    }
+
+    /// Changes how a regulating part is set.
+    pub fn regulator_mut(&mut self, id: RegulatorId) -> &mut RegulatorSetting {
+        &mut self.regulators[id.index()]
     }
 
     /// Changes how a valve stands.

@@ -3,8 +3,9 @@
 use crate::network::{
     Direction, LineId, Network, NodeId, NodeKind, Passage, Reach, Settings, Standing, Target,
 };
-use crate::part::Part;
 use crate::part::character::US_SPECIFIC_SPEED;
+use crate::part::regulator::Regulates;
+use crate::part::{Part, RegulatorId};
 use crate::read::System;
 use crate::units::{Kind, UnitSet};
 
@@ -278,6 +279,7 @@ impl<'a> Describer<'a> {
             ),
             Part::Loss(_) => return None,
             Part::CheckValve(_) => "check valve".to_owned(),
+            Part::Regulator(id) => self.regulator(*id),
             Part::Valve(id) => {
                 let setting = self.settings.valve(*id);
                 match (setting.open, setting.opening) {
@@ -304,6 +306,24 @@ impl<'a> Describer<'a> {
                 text
             }
         })
+    }
+
+    fn regulator(&self, id: RegulatorId) -> String {
+        let setting = self.settings.regulator(id);
+        let pressure = || self.units.format(Kind::Pressure, setting.set);
+        let flow = || self.units.format(Kind::Flow, setting.set);
+        let text = match self.network.regulator(id).regulates {
+            Regulates::Downstream => format!("holds {} downstream", pressure()),
+            Regulates::Upstream => format!("holds {} upstream", pressure()),
+            Regulates::Flow => format!("limits its flow to {}", flow()),
+            Regulates::MinimumFlow { pump } => {
+                format!("keeps pump {} at {}", self.network.pump(pump).name, flow())
+            }
+        };
+        match setting.open {
+            true => text,
+            false => format!("{text} (shut)"),
+        }
     }
 
     /// Heads to be overcome between fixed heads on the two sides of pumps.

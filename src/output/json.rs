@@ -63,6 +63,7 @@ pub fn solve(
         "nodes": nodes(network, units, assessment),
         "lines": lines(network, units, assessment),
         "pumps": pumps,
+        "regulators": super::regulators::json(network, units, assessment),
         "needs": needs_of(needs, units, assessment),
         "limits": limits_of(&words, assessment),
         "mains": mains_of(&words, assessment),

@@ -6,6 +6,7 @@ pub mod duty;
 pub mod grid;
 pub mod json;
 pub mod limits;
+pub mod regulators;
 pub mod report;
 pub mod shift;
 pub mod sketch;

@@ -30,6 +30,7 @@ pub fn grids(
     if !network.pumps().is_empty() {
         grids.push(pumps(network, assessment, thresholds));
     }
+    grids.extend(super::regulators::grids(network, assessment));
     grids.push(lines(network, assessment));
     grids.push(nodes(network, assessment));
     let mains = mains::states(network, &assessment.lines, &assessment.pumps);

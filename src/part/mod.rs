@@ -11,6 +11,7 @@ mod logarithm;
 pub mod materials;
 pub mod pump;
 pub mod quadratic;
+pub mod regulator;
 pub mod surge;
 pub mod valve;
 
@@ -53,6 +54,8 @@ pub enum Part {
     CheckValve(quadratic::QuadraticLoss),
     /// A pump whose running and speed are settings.
     Pump(PumpId),
+    /// A part that throttles itself to hold a pressure or a flow; its set value is a setting.
+    Regulator(RegulatorId),
 }
 
 /// Which valve of a network; handed out by the network alone.
@@ -63,8 +66,19 @@ pub struct ValveId(pub(crate) u32);
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
 pub struct PumpId(pub(crate) u32);
 
+/// Which regulating part of a network; handed out by the network alone.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
+pub struct RegulatorId(pub(crate) u32);
+
 impl ValveId {
     /// Position among the network's valves.
+    pub fn index(self) -> usize {
+        self.0 as usize
+    }
+}
+
+impl RegulatorId {
+    /// Position among the network's regulating parts.
     pub fn index(self) -> usize {
         self.0 as usize
     }

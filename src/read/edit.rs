@@ -24,6 +24,9 @@ pub(super) fn part_keys(kind: &str) -> &'static [&'static str] {
         "valve" => &["k", "kv", "cv", "bore", "open", "opening", "characteristic"],
         "check_valve" => &["k", "kv", "cv", "bore", "opening", "characteristic"],
         "equipment" => &["loss", "at"],
+        "hold_downstream" | "hold_upstream" => &["pressure", "k", "kv", "cv", "bore", "open"],
+        "limit_flow" => &["flow", "k", "kv", "cv", "bore", "open"],
+        "minimum_flow" => &["pump", "flow", "k", "kv", "cv", "bore", "open"],
         _ => &[
             "model",
             "elevation",

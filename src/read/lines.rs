@@ -8,7 +8,18 @@ use super::yaml::{Key, Marked};
 use crate::diagnostic::{Diagnostic, Place};
 use crate::units::Kind;
 
-pub(super) const PARTS: [&str; 6] = ["pipe", "loss", "valve", "check_valve", "equipment", "pump"];
+pub(super) const PARTS: [&str; 10] = [
+    "pipe",
+    "loss",
+    "valve",
+    "check_valve",
+    "equipment",
+    "pump",
+    "hold_downstream",
+    "hold_upstream",
+    "limit_flow",
+    "minimum_flow",
+];
 const LINE_KEYS: [&str; 7] = [
     "from",
     "to",

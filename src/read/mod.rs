@@ -4,6 +4,44 @@
 //! bytes -yaml-> tree with places -changes-> tree -sections-> Spec (typed, SI) -lower-> Network, needs
 //! ```
 //!
+//! # Parts that regulate themselves
+//!
+//! Beside the parts with a law of their own, a line may hold parts that throttle themselves ([`crate::part::regulator`] has
+//! their law and their states, *regulating*, *wide open* and *shut*):
+//!
+//! ```yaml
+//! - hold_downstream: {pressure: 4 bar, k: 3, bore: 150 mm}      # pressure at the last node of its line: no more than this
+//! - hold_upstream: {pressure: 6 bar, k: 4, bore: 80 mm}         # pressure at the first node: opens above this, relieves it
+//! - limit_flow: {flow: 30 m3/h, k: 5, bore: 100 mm}             # no more than this passes forward
+//! - minimum_flow: {pump: duty.1, flow: 40 m3/h, k: 10, bore: 80 mm}   # in a line back to suction: opens below this pump flow
+//! ```
+//!
+//! | key | meaning |
+//! | --- | --- |
+//! | `pressure` | gauge pressure at the elevation of the node it holds, which must be a point; elsewhere heads are fixed |
+//! | `flow` | the flow of its line that is not passed, or the flow of the pump that is kept up |
+//! | `pump` | the pump that a `minimum_flow` protects; in a bank of lines, member k protects member k of a bank of pumps |
+//! | `k`, `kv` or `cv`, `bore` | the loss when wide open, as of a `valve` |
+//! | `open: false` | it is shut, whatever it feels |
+//!
+//! All but `limit_flow` let nothing back through their line. The line of a `minimum_flow` whose pump stands is shut. Several in
+//! one line act on one flow: the one that asks for less rules. Two lines that hold one node downstream must be set alike and
+//! then add the same loss; a node may have several `hold_upstream`, the lowest set opens first, but all above what feeds it.
+//! Results call such a part `LINE.PART`, as changes do: `--set reducer.hold_downstream.pressure="3 bar"`.
+//!
+//! ```
+//! let text = "
+//! nodes: {tower: {reservoir: 60 m}, zone: {point: {elevation: 2 m, draw: 20 m3/h}}}
+//! lines: {reducer: {from: tower, to: zone, hold_downstream: {pressure: 3 bar, k: 3, bore: 80 mm}}}
+//! ";
+//! let network = dutybank::read::system(text)?.network;
+//! let solution = dutybank::solve::Solver::new(&network).solve(network.settings())?.clone();
+//! let zone = network.find_node("zone").and_then(|zone| solution.head(zone)).unwrap_or(f64::NAN);
+//! let weight = network.fluid().density * network.gravity();
+//! assert!((zone - (2.0 + 3e5 / weight)).abs() < 1e-8);
+//! # Ok::<(), Box<dyn std::error::Error>>(())
+//! ```
+//!
 //! Touches no file: what a system file names is fetched by a function that the caller gives.
 
 mod changes;
@@ -20,6 +58,7 @@ mod nodes;
 mod over_time;
 mod parts;
 mod references;
+mod regulators;
 mod schedules;
 mod site;
 mod spec;

@@ -60,6 +60,10 @@ pub(super) fn part(
                 opening,
             }
         }
+        "hold_downstream" | "hold_upstream" | "limit_flow" | "minimum_flow" => {
+            let regulator = super::regulators::regulator(cx, site, line, kind, node)?;
+            PartKindSpec::Regulator(Box::new(regulator))
+        }
         "equipment" => PartKindSpec::Equipment(equipment(cx, site, &what, node)?),
         _ => PartKindSpec::Pump(Box::new(pump(cx, site, &what, node)?)),
     };
@@ -257,7 +261,12 @@ fn loss_coefficient(cx: &mut Context, fields: &Fields, what: &str) -> Option<f64
     sum
 }
 
-fn valve_loss(cx: &mut Context, site: &SiteSpec, fields: &Fields, what: &str) -> Option<LossSpec> {
+pub(super) fn valve_loss(
+    cx: &mut Context,
+    site: &SiteSpec,
+    fields: &Fields,
+    what: &str,
+) -> Option<LossSpec> {
     let key = only_one(cx, fields, what, &["k", "kv", "cv"], "k: 0.2")?;
     let node = fields.get(key)?;
     let label = format!("`{key}` of {what}");

@@ -120,6 +120,25 @@ pub(super) enum PartKindSpec {
     },
     Equipment(QuadraticLoss),
     Pump(Box<PumpSpec>),
+    Regulator(Box<RegulatorSpec>),
+}
+
+/// A part that throttles itself.
+#[derive(Clone, Debug)]
+pub(super) struct RegulatorSpec {
+    pub regulates: RegulatesSpec,
+    pub loss: LossSpec,
+    /// Pressure (Pa) or flow (m3/s), and where it stands.
+    pub set: Placed<f64>,
+    pub open: bool,
+}
+
+#[derive(Clone, Debug)]
+pub(super) enum RegulatesSpec {
+    Downstream,
+    Upstream,
+    Flow,
+    MinimumFlow(Placed<String>),
 }
 
 /// What a pipe says that its flow does not depend on.

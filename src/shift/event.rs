@@ -55,6 +55,10 @@ pub enum What {
     Shuts,
     /// It opened.
     Opens,
+    /// A regulating part began to throttle.
+    Regulates,
+    /// It stands wide open again.
+    WideOpen,
     /// A port came above the surface.
     PortUncovered,
     /// It went below it.
@@ -83,6 +87,8 @@ impl What {
             Self::Start => "start",
             Self::Shuts => "held shut",
             Self::Opens => "opens",
+            Self::Regulates => "regulates",
+            Self::WideOpen => "wide open",
             Self::PortUncovered => "port uncovered",
             Self::PortCovered => "port covered",
             Self::End => "end",
@@ -108,6 +114,8 @@ impl What {
             Self::Start => "started",
             Self::Shuts => "is held shut",
             Self::Opens => "opened",
+            Self::Regulates => "regulates",
+            Self::WideOpen => "stands wide open",
             Self::PortUncovered => "has a port above the surface",
             Self::PortCovered => "has its port covered again",
             Self::End => "ended",

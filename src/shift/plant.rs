@@ -10,6 +10,7 @@ use super::energy::shaft_power;
 use super::hold::Holding;
 use super::plan::{Follow, Shift, Varying};
 use crate::network::{End, LineId, Network, NodeId, Settings};
+use crate::part::regulator::RegulatorState;
 use crate::solve::{LineState, Solution, SolveError, Solver};
 
 /// Which of the solvers: the run's own; the one for reports, so that reporting does not touch the run; and the one for
@@ -319,6 +320,8 @@ impl<'a> Plant<'a> {
     pub const OPEN: u8 = 2;
     pub const FROM_ABOVE: u8 = 4;
     pub const TO_ABOVE: u8 = 8;
+    /// The first of the line's regulating parts that throttles, counted from one, times this.
+    pub const REGULATES: u8 = 16;
 
     /// What a line does and which of its ports stand above a surface, in one number.
     pub fn condition(&self, side: Side, line: LineId) -> u8 {
@@ -326,7 +329,7 @@ impl<'a> Plant<'a> {
             LineState::Checked => Self::SHUT,
             LineState::Open => Self::OPEN,
             LineState::Closed | LineState::Stopped => 0,
-        };
+        } | self.regulating(side, line);
         if self.network.line(line).ports == [None, None] {
             return state;
         }
@@ -335,6 +338,15 @@ impl<'a> Plant<'a> {
             None => 0,
         };
         state | above(End::From, Self::FROM_ABOVE) | above(End::To, Self::TO_ABOVE)
+    }
+
+    fn regulating(&self, side: Side, line: LineId) -> u8 {
+        let answer = self.solvers[side as usize].last();
+        let mut parts = self.network.line(line).regulators();
+        let throttles = |id| answer.regulation(id).state == RegulatorState::Regulating;
+        parts
+            .position(throttles)
+            .map_or(0, |place| (place as u8 + 1) * Self::REGULATES)
     }
 
     fn rate(&self, side: Side, t: f64, rates: &mut [f64]) {

@@ -1,10 +1,12 @@
 //! The certificate: balances and complementarity recomputed from the answer, with the plain laws.
 
+use super::solution::Regulation;
 use super::solver::SolveError;
 use super::system::{Role, State, System};
-use super::tolerance::{CERTIFIED_HEAD, certified_flow, rounding};
-use crate::network::{LineId, NodeId};
-use crate::part::HeadLoss;
+use super::tolerance::{CERTIFIED_HEAD, CERTIFIED_HELD, certified_flow, rounding};
+use crate::network::{LineId, NodeId, Passage};
+use crate::part::regulator::RegulatorState;
+use crate::part::{HeadLaw, HeadLoss};
 
 /// How good an answer is, and what it took.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
@@ -72,5 +74,89 @@ pub(super) fn certify(
             balance.worst_node = balance.worst_node.max(off);
         }
     }
+    certify_regulators(system, state)?;
     Ok(balance)
+}
+
+/// Recomputes what every regulating part has to do with: what it feels, and the loss that it adds.
+///
+/// ```text
+/// flowing:    added loss >= 0, room >= 0, and no room wherever it is above zero
+/// still:      no room, or too little head to flow
+/// ```
+fn certify_regulators(system: &System, state: &State) -> Result<(), SolveError> {
+    for unit in 0..system.throttles.lines.len() {
+        if !system.throttles.acts[unit] {
+            continue;
+        }
+        let Some(ruling) = system.throttles.ruling(system, state, unit) else {
+            continue;
+        };
+        let allowed = CERTIFIED_HELD * ruling.tolerance;
+        let added = added_loss(system, state, unit);
+        let no_loss = added <= CERTIFIED_HEAD.absolute;
+        let still = system.stands_still(state, unit);
+        if !still && added < -CERTIFIED_HEAD.absolute {
+            let line = LineId(system.throttles.lines[unit] as u32);
+            return Err(SolveError::LineUnbalanced { line, by: added });
+        }
+        let off = if still {
+            if no_loss { 0.0 } else { ruling.value.max(0.0) }
+        } else if no_loss {
+            (-ruling.value).max(0.0)
+        } else {
+            ruling.value.abs()
+        };
+        if off.is_nan() || off > allowed {
+            return Err(SolveError::NotHeld {
+                regulator: ruling.feeler.id,
+                off: ruling.value,
+            });
+        }
+    }
+    Ok(())
+}
+
+/// Head along a unit's line that its parts lose beyond their wide open loss: what the ends have less what the plain law
+/// takes, m.
+pub(super) fn added_loss(system: &System, state: &State, unit: usize) -> f64 {
+    let line = system.throttles.lines[unit];
+    let q = state.flows[line];
+    let (from, to) = system.ends[line];
+    let ends = state.heads[from as usize] - state.heads[to as usize];
+    ends + system.throttles.base[unit] - system.laws.line(line).loss(q).head
+}
+
+/// What a regulating part does, and the loss it adds.
+pub(super) fn regulation(system: &System, state: &State, unit: usize, part: usize) -> Regulation {
+    let line = system.throttles.lines[unit];
+    let feeler = &system.throttles.feelers(unit)[part];
+    if system.reach.passage(LineId(line as u32)) != Passage::Open {
+        return Regulation {
+            state: RegulatorState::Shut,
+            added: None,
+        };
+    }
+    let ruling = system.throttles.ruling(system, state, unit);
+    let rules = ruling.filter(|felt| felt.feeler.id == feeler.id);
+    let holds = rules.is_some_and(|felt| felt.value.abs() <= CERTIFIED_HELD * felt.tolerance);
+    let added = added_loss(system, state, unit).max(0.0);
+    let throttles = holds && added > CERTIFIED_HEAD.absolute;
+    let still = state.flows[line] == 0.0;
+    if throttles {
+        Regulation {
+            state: RegulatorState::Regulating,
+            added: Some(added),
+        }
+    } else if still && feeler.regulates.one_way() {
+        Regulation {
+            state: RegulatorState::Shut,
+            added: None,
+        }
+    } else {
+        Regulation {
+            state: RegulatorState::WideOpen,
+            added: Some(0.0),
+        }
+    }
 }

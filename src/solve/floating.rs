@@ -107,7 +107,10 @@ impl Floating {
             if !self.settled[self.set[upstream as usize] as usize] {
                 return None;
             }
-            let push = system.push(state, live.index());
+            let push = system.push_in(state, live.index());
+            if !push.is_finite() {
+                continue;
+            }
             shift = Some(shift.map_or(push, |most| most.max(push)));
         }
         shift

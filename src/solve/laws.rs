@@ -89,6 +89,7 @@ impl<'n> Laws<'n> {
                 }
             },
             Part::Loss(loss) | Part::CheckValve(loss) => self.fixed_r[line] += loss.r(),
+            Part::Regulator(id) => self.fixed_r[line] += network.regulator(*id).wide_open.r(),
             Part::Pump(id) => {
                 let law = PumpLaw {
                     head: &network.model(*id).head,
@@ -196,11 +197,12 @@ pub(crate) fn ordinary_flow(network: &Network, settings: &Settings, line: usize)
     })
 }
 
-/// Head lost in one part at flow `q`, m.
+/// Head lost in one part at flow `q`, m; in a regulating part, what it loses wide open.
 pub fn part_loss(network: &Network, settings: &Settings, part: &Part, q: f64) -> f64 {
     let loss = match part {
         Part::Pipe(pipe) => pipe.friction.loss(q),
         Part::Loss(loss) | Part::CheckValve(loss) => loss.loss(q),
+        Part::Regulator(id) => network.regulator(*id).wide_open.loss(q),
         Part::Valve(id) => {
             let open = network.valve(*id).loss_at(settings.valve(*id).opening);
             open.unwrap_or(QuadraticLoss::NONE).loss(q)

@@ -25,6 +25,7 @@
 //!
 //! This module knows no names, units, files or clock.
 
+mod bracket;
 mod certain;
 mod certificate;
 mod floating;
@@ -33,12 +34,17 @@ mod laws;
 mod linear;
 mod newton;
 pub mod operation;
+mod outskirts;
+mod paths;
+mod regulate;
+mod response;
 mod solution;
 mod solver;
 mod supernodal;
 mod system;
+mod throttles;
 mod tolerance;
 
 pub use certificate::Balance;
-pub use solution::{Balances, LineState, Solution};
+pub use solution::{Balances, LineState, Regulation, Solution};
 pub use solver::{SolveError, Solver};

@@ -4,7 +4,8 @@ pub use super::laws::part_loss;
 use super::{LineState, Solution};
 use crate::network::{LineId, Network, NodeId, Settings};
 use crate::part::pump::{PowerCurve, PumpModel};
-use crate::part::{Part, PumpId};
+use crate::part::regulator::{Regulates, RegulatorState};
+use crate::part::{Part, PumpId, RegulatorId};
 
 /// What a node does.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -25,6 +26,21 @@ pub struct LineOperation {
     /// Velocity in its narrowest pipe, m/s; none without a pipe.
     pub velocity: Option<f64>,
     /// Head at its first node less that at its last, m.
+    pub head_loss: Option<f64>,
+}
+
+/// What a regulating part does.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct RegulatorOperation {
+    /// Its state.
+    pub state: RegulatorState,
+    /// Its set value: pressure, Pa, or flow, m3/s.
+    pub set: f64,
+    /// What it feels, in the same unit: the pressure at the node it holds, the flow of its line, or that of its pump.
+    pub felt: Option<f64>,
+    /// Flow through it, m3/s.
+    pub flow: f64,
+    /// Head lost across it, m; none while it is shut.
     pub head_loss: Option<f64>,
 }
 
@@ -108,6 +124,50 @@ pub fn line(network: &Network, solution: &Solution, id: LineId) -> LineOperation
         velocity,
         head_loss,
     }
+}
+
+/// What a regulating part does.
+pub fn regulator(
+    network: &Network,
+    settings: &Settings,
+    solution: &Solution,
+    id: RegulatorId,
+) -> RegulatorOperation {
+    let regulation = solution.regulation(id);
+    let line = network.line_of_regulator(id);
+    let ends = network.line(line);
+    let flow = solution.flow(line);
+    let pressure = |at| node(network, settings, solution, at).pressure;
+    let regulates = network.regulator(id).regulates;
+    RegulatorOperation {
+        state: regulation.state,
+        set: settings.regulator(id).set,
+        felt: match regulates {
+            Regulates::Downstream => pressure(ends.to),
+            Regulates::Upstream => pressure(ends.from),
+            Regulates::Flow => Some(flow),
+            Regulates::MinimumFlow { pump } => Some(solution.flow(network.line_of(pump))),
+        },
+        flow,
+        head_loss: regulation
+            .added
+            .map(|_| loss_in(network, settings, solution, &Part::Regulator(id), flow)),
+    }
+}
+
+/// Head lost in one part of a solved network at the flow `q` of its line, m; what a regulating part adds included.
+pub fn loss_in(
+    network: &Network,
+    settings: &Settings,
+    solution: &Solution,
+    part: &Part,
+    q: f64,
+) -> f64 {
+    let added = match part {
+        Part::Regulator(id) => solution.regulation(*id).added.unwrap_or(0.0),
+        _ => 0.0,
+    };
+    part_loss(network, settings, part, q) + added
 }
 
 /// What a pump does.
@@ -224,7 +284,7 @@ fn inlet_head(
         .iter()
         .take_while(|part| !matches!(part, Part::Pump(pump) if *pump == id));
     let lost: f64 = before
-        .map(|part| part_loss(network, settings, part, flow))
+        .map(|part| loss_in(network, settings, solution, part, flow))
         .sum();
     // A fouled strainer stands before everything else.
     let fouled = settings.fouling(line_id) * flow * flow.abs();

@@ -2,6 +2,8 @@
 
 use super::certificate::Balance;
 use crate::network::{LineId, NodeId};
+use crate::part::RegulatorId;
+use crate::part::regulator::RegulatorState;
 
 /// What a line does.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Default)]
@@ -17,12 +19,22 @@ pub enum LineState {
     Open,
 }
 
+/// What a regulating part does.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct Regulation {
+    /// Its state.
+    pub state: RegulatorState,
+    /// Head that it loses beyond its wide open loss, m; none while it is shut.
+    pub added: Option<f64>,
+}
+
 /// A solved network. Exists only if its balances, recomputed from the answer, met the tolerance.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Solution {
     pub(super) heads: Vec<f64>,
     pub(super) flows: Vec<f64>,
     pub(super) states: Vec<LineState>,
+    pub(super) regulations: Vec<Regulation>,
     pub(super) balance: Balance,
 }
 
@@ -41,6 +53,11 @@ impl Solution {
     /// What a line does.
     pub fn state(&self, line: LineId) -> LineState {
         self.states[line.index()]
+    }
+
+    /// What a regulating part does.
+    pub fn regulation(&self, id: RegulatorId) -> Regulation {
+        self.regulations[id.index()]
     }
 
     /// Flows of all lines, one per line, m3/s.

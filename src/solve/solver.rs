@@ -1,13 +1,15 @@
 //! The solver: the two paths in their order, and the answer that comes of them.
 
-use super::certain::Certain;
-use super::certificate::{Balance, certify};
-use super::floating::Floating;
-use super::newton::{Effort, Newton, OneWay, Outcome};
-use super::solution::{Balances, LineState, Solution};
+use super::certificate::{Balance, certify, regulation};
+use super::newton::Effort;
+use super::paths::Paths;
+use super::regulate::Regulating;
+use super::solution::{Balances, LineState, Regulation, Solution};
 use super::system::{Role, State, System};
 use crate::network::{LineId, Network, NodeId, Passage, Settings, Standing, Unreachable};
+use crate::part::RegulatorId;
 use crate::part::curve::Cover;
+use crate::part::regulator::Regulates;
 
 /// Why there is no answer.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -34,6 +36,13 @@ pub enum SolveError {
         node: NodeId,
         /// By how much, m3/s.
         by: f64,
+    },
+    /// A regulating part cannot do what it is set to, whatever it adds.
+    NotHeld {
+        /// Which.
+        regulator: RegulatorId,
+        /// The room that it has, m of head or m3/s; negative beyond its set value.
+        off: f64,
     },
 }
 
@@ -73,6 +82,28 @@ impl SolveError {
                     network.node(node).name
                 )
             }
+            Self::NotHeld { regulator, off } => {
+                let name = network.regulator_name(regulator);
+                let off = off.abs();
+                let line = network.line(network.line_of_regulator(regulator));
+                match network.regulator(regulator).regulates {
+                    Regulates::Downstream => format!(
+                        "`{name}` cannot hold its pressure: with all that it can add, node `{}` stays {off:.4} m off",
+                        network.node(line.to).name
+                    ),
+                    Regulates::Upstream => format!(
+                        "`{name}` cannot hold its pressure: what is drawn beyond it keeps node `{}` {off:.4} m off",
+                        network.node(line.from).name
+                    ),
+                    Regulates::Flow => format!(
+                        "`{name}` cannot limit its flow: what is drawn beyond it takes {off:.6} m3/s more"
+                    ),
+                    Regulates::MinimumFlow { pump } => format!(
+                        "`{name}` cannot hold the flow of pump `{}`: it stays {off:.6} m3/s off",
+                        network.pump(pump).name
+                    ),
+                }
+            }
         }
     }
 }
@@ -95,22 +126,21 @@ impl std::fmt::Display for SolveError {
             Self::NodeUnbalanced { node, by } => {
                 write!(f, "node {} is off balance by {by:e} m3/s", node.index())
             }
+            Self::NotHeld { regulator, off } => {
+                write!(f, "regulating part {} is off by {off:e}", regulator.index())
+            }
         }
     }
 }
 
 impl std::error::Error for SolveError {}
 
-/// One-way lines changed one by one before that is given up.
-const CHANGES: u32 = 100;
-
 /// Solves one network again and again. Everything that depends on the network alone is done in [`Solver::new`]; a solve
 /// writes numbers only and allocates nothing.
 pub struct Solver<'n> {
     system: System<'n>,
-    newton: Newton,
-    certain: Certain,
-    floating: Floating,
+    paths: Paths,
+    regulating: Regulating,
     state: State,
     solution: Solution,
     scratch: Vec<f64>,
@@ -124,14 +154,14 @@ impl<'n> Solver<'n> {
         let state = system.state();
         let (n, m) = (state.heads.len(), state.flows.len());
         Self {
-            newton: Newton::new(&system),
-            certain: Certain::new(&system),
-            floating: Floating::new(&system),
+            paths: Paths::new(&system),
+            regulating: Regulating::new(&system),
             state,
             solution: Solution {
                 heads: vec![f64::NAN; n],
                 flows: vec![0.0; m],
                 states: vec![LineState::Open; m],
+                regulations: vec![Regulation::default(); network.regulators().len()],
                 balance: Balance::default(),
             },
             scratch: vec![0.0; n],
@@ -156,6 +186,7 @@ impl<'n> Solver<'n> {
     /// See [`SolveError`].
     pub fn solve(&mut self, settings: &Settings) -> Result<&Solution, SolveError> {
         self.solved = false;
+        self.system.throttles.reset();
         self.run(settings)
     }
 
@@ -208,6 +239,7 @@ impl<'n> Solver<'n> {
 
     /// Solves with falling stand-ins for drooping curves first, then from there with the plain curves.
     fn through_cover(&mut self, settings: &Settings, cover: Cover) -> Result<Solution, SolveError> {
+        self.system.throttles.reset();
         self.prepare(settings)?;
         self.solved = false;
         self.system.cold_start(&mut self.state);
@@ -237,42 +269,25 @@ impl<'n> Solver<'n> {
         self.finish(settings, Effort::default())
     }
 
-    /// Fast path, and where that stalls the certain one; true if the certain one was needed.
+    /// Balances the network, and lets what regulates find its place; true if the certain path was needed.
     fn iterate(&mut self, effort: &mut Effort) -> bool {
         let Self {
             system,
-            newton,
-            certain,
-            floating,
+            paths,
+            regulating,
             state,
             ..
         } = self;
-        if newton.solve(system, state, OneWay::Free, effort) == Outcome::Converged {
-            return false;
+        if system.throttles.is_empty() {
+            paths.balance(system, state, effort)
+        } else {
+            regulating.settle(paths, system, state, effort)
         }
-        system.cold_start(state);
-        certain.approach(system, state, effort);
-        // The states are known now, but for lines whose flow is lost in the rounding of the heads. Change those one at a
-        // time, the first in order at each balance: that cannot cycle where every law rises (K. G. Murty, "Note on a
-        // Bard-type scheme for solving the complementarity problem", Opsearch 11, 1974).
-        for _ in 0..CHANGES {
-            if newton.solve(system, state, OneWay::Frozen, effort) == Outcome::Stalled {
-                break;
-            }
-            floating.settle(system, state);
-            match system.first_not_complementary(state) {
-                None => return true,
-                Some(line) => system.turn(state, line),
-            }
-        }
-        newton.solve(system, state, OneWay::Free, effort);
-        true
     }
 
     fn finish(&mut self, settings: &Settings, mut effort: Effort) -> Result<&Solution, SolveError> {
         let certain_path = self.iterate(&mut effort);
-        self.floating.settle(&self.system, &mut self.state);
-        self.system.settle(&mut self.state);
+        self.paths.settle(&self.system, &mut self.state);
         let balance = certify(&mut self.system, &self.state, &mut self.scratch)
             .map_err(|error| self.explain(settings, error))?;
         self.solved = true;
@@ -293,6 +308,9 @@ impl<'n> Solver<'n> {
         if let Some(at) = self.system.reach.unsatisfiable(network, settings) {
             return SolveError::Unreachable(at);
         }
+        if let Some(error) = self.not_held(error) {
+            return error;
+        }
         let size = |node: &NodeId| self.state.heads[node.index()].abs();
         match network
             .node_ids()
@@ -304,6 +322,23 @@ impl<'n> Solver<'n> {
             },
             _ => error,
         }
+    }
+
+    /// The regulating part behind a state that does not balance: one that closed without end and still lets too much pass.
+    fn not_held(&self, error: SolveError) -> Option<SolveError> {
+        const WITHOUT_END: f64 = 1e4;
+        if let SolveError::NotHeld { .. } = error {
+            return Some(error);
+        }
+        let throttles = &self.system.throttles;
+        let worst = (0..throttles.lines.len())
+            .filter(|unit| throttles.acts[*unit] && throttles.extra[*unit] > WITHOUT_END)
+            .find(|unit| !self.system.stands_still(&self.state, *unit))?;
+        let ruling = throttles.ruling(&self.system, &self.state, worst)?;
+        Some(SolveError::NotHeld {
+            regulator: ruling.feeler.id,
+            off: ruling.value,
+        })
     }
 
     /// Puts the state into the answer: heads that mean nothing are left out, states are named.
@@ -329,6 +364,11 @@ impl<'n> Solver<'n> {
             };
         }
         solution.flows.copy_from_slice(&state.flows);
+        for unit in 0..system.throttles.lines.len() {
+            for (part, feeler) in system.throttles.feelers(unit).iter().enumerate() {
+                solution.regulations[feeler.id.index()] = regulation(system, state, unit, part);
+            }
+        }
         for (line, line_state) in network.line_ids().zip(&mut solution.states) {
             let i = line.index();
             *line_state = match system.reach.passage(line) {

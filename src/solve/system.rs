@@ -7,10 +7,10 @@
 
 use super::laws::{Laws, ordinary_flow};
 use super::linear::{Factor, Slot};
+use super::throttles::Throttles;
 use super::tolerance::{HEAD, flow_tolerance};
 use crate::network::{
-    Direction, End, LineId, Network, NodeId, NodeKind, Passage, Reach, Settings, Standing,
-    Unreachable,
+    Direction, End, LineId, Network, NodeId, NodeKind, Reach, Settings, Unreachable,
 };
 use crate::part::{HeadLaw, HeadLoss};
 
@@ -27,10 +27,10 @@ pub(super) enum Role {
 
 /// A node settled by continuity: one line, whose other end is nearer to the unknowns.
 #[derive(Clone, Copy, Debug)]
-struct Leaf {
-    node: u32,
-    line: u32,
-    parent: u32,
+pub(super) struct Leaf {
+    pub node: u32,
+    pub line: u32,
+    pub parent: u32,
 }
 
 /// A live line, with all that an iteration asks of it side by side.
@@ -88,8 +88,8 @@ pub(super) struct System<'n> {
     /// Per line: 0 both ways, 1 forward only, -1 backward only.
     pub sense: Vec<f64>,
     /// Per line: head at its `from` end less that at its `to` end, beyond the heads of the nodes there (ports above a
-    /// tank's surface), m.
-    lift: Vec<f64>,
+    /// tank's surface, and what a regulating part adds), m.
+    pub lift: Vec<f64>,
     pub roles: Vec<Role>,
     /// The live lines, ascending.
     pub live: Vec<Live>,
@@ -109,10 +109,11 @@ pub(super) struct System<'n> {
     pub start_flow: Vec<f64>,
     /// Per line, its off-diagonal entry.
     pub slots: Vec<Option<Slot>>,
-    leaves: Vec<Leaf>,
+    pub leaves: Vec<Leaf>,
     degree: Vec<u32>,
     queue: Vec<u32>,
     was_live: Vec<bool>,
+    pub throttles: Throttles,
 }
 
 impl<'n> System<'n> {
@@ -164,6 +165,7 @@ impl<'n> System<'n> {
             degree: vec![0; n],
             queue: Vec::with_capacity(n),
             was_live: vec![false; m],
+            throttles: Throttles::new(network),
         }
     }
 
@@ -192,7 +194,8 @@ impl<'n> System<'n> {
                     .above_surface(line, end, settings)
                     .unwrap_or(0.0)
             };
-            let lift = above(End::From) - above(End::To);
+            let base = above(End::From) - above(End::To);
+            let lift = self.throttles.lift(line, base);
             lifted |= lift != std::mem::replace(&mut self.lift[line.index()], lift);
             self.sense[line.index()] = match self.reach.direction(line) {
                 Direction::Both | Direction::Neither => 0.0,
@@ -230,6 +233,9 @@ impl<'n> System<'n> {
             self.gather_live();
         }
         self.fold_leaves(state);
+        if !self.throttles.is_empty() {
+            self.set_throttles(settings);
+        }
         for (line, start) in self.start_flow.iter_mut().enumerate() {
             let flow = ordinary_flow(self.network, settings, line);
             *start = if self.sense[line] < 0.0 { -flow } else { flow };
@@ -324,6 +330,20 @@ impl<'n> System<'n> {
         }
     }
 
+    /// Puts the further loss of a unit of regulating parts into its line.
+    pub fn throttle(&mut self, unit: usize, extra: f64) {
+        let line = self.throttles.lines[unit];
+        self.throttles.extra[unit] = extra;
+        // Never by differences: a loss that went astray would leave its rounding behind.
+        self.lift[line] = self.throttles.base[unit] - extra;
+        if let Ok(at) = self
+            .live
+            .binary_search_by_key(&(line as u32), |live| live.line)
+        {
+            self.live[at].lift = self.lift[line];
+        }
+    }
+
     /// Number of unknowns of the matrix; those of held heads and leaves have no entries.
     pub fn unknowns(&self) -> usize {
         self.factor.unknowns()
@@ -395,6 +415,15 @@ impl<'n> System<'n> {
         self.sense[line] * (self.drop(state, line) - self.loss(line, 0.0).head)
     }
 
+    /// As [`Self::push`], for a way into a set that nothing else joins to a held head: no regulating part lets more in than
+    /// it would at flow.
+    pub fn push_in(&self, state: &State, line: usize) -> f64 {
+        match self.throttles.unit_of(line) {
+            None => self.push(state, line),
+            Some(unit) => self.throttles.push_in(self, state, unit),
+        }
+    }
+
     /// The first one-way line that flows against its sense, or is shut though the head along it would open it. Flows
     /// that stand still but for rounding are set to zero on the way.
     pub fn first_not_complementary(&self, state: &mut State) -> Option<usize> {
@@ -427,72 +456,5 @@ impl<'n> System<'n> {
     /// Whether a node belongs to a set that no fixed head is joined to.
     pub fn floats(&self, node: NodeId) -> bool {
         self.reach.floats(node)
-    }
-
-    /// Heads of the leaves, from the unknowns outwards, and of blind sets, from what holds them.
-    pub fn settle(&self, state: &mut State) {
-        self.settle_leaves(state);
-        // A blind set was solved relative to its first node. Its head is the highest that a way in can hold; a set fed
-        // by another follows it, so go round until nothing moves.
-        let blind = |node: NodeId| self.reach.standing(node) == Standing::Blind;
-        for _ in 0..self.reach.floating().filter(|n| blind(*n)).count() {
-            let mut moved = false;
-            for first in self.reach.floating().filter(|n| blind(*n)) {
-                moved |= self.lift(state, first);
-            }
-            if !moved {
-                break;
-            }
-        }
-    }
-
-    fn settle_leaves(&self, state: &mut State) {
-        for leaf in self.leaves.iter().rev() {
-            let line = leaf.line as usize;
-            let loss = self.loss(line, state.flows[line]).head;
-            let towards = self.ends[line].1 == leaf.node;
-            // h(from) - h(to) = g(q), less the lift of the ends
-            let loss = loss - self.lift[line];
-            let fall = if towards { -loss } else { loss };
-            state.heads[leaf.node as usize] = state.heads[leaf.parent as usize] + fall;
-        }
-    }
-
-    /// Whether an idle line is the one whose head at no flow holds a blind set up: open, though nothing moves.
-    pub fn holds_blind(&self, state: &State, line: usize) -> bool {
-        let (from, to) = self.ends[line];
-        let downstream = NodeId(if self.sense[line] > 0.0 { to } else { from });
-        let blind = self.reach.standing(downstream) == Standing::Blind && self.sense[line] != 0.0;
-        blind && self.push(state, line).abs() <= 1e-9
-    }
-
-    /// Shifts a blind set to the highest head that a line into it can hold at no flow; true if that moved it.
-    fn lift(&self, state: &mut State, first: NodeId) -> bool {
-        let component = self.reach.component(first);
-        let inside = |node: u32| self.reach.component(NodeId(node)) == component;
-        let mut shift = f64::NEG_INFINITY;
-        for (line, &(from, to)) in self.ends.iter().enumerate() {
-            let open = self.reach.passage(LineId(line as u32)) == Passage::Open;
-            if !open || self.sense[line] == 0.0 || inside(from) == inside(to) {
-                continue;
-            }
-            let (upstream, downstream) = if self.sense[line] > 0.0 {
-                (from, to)
-            } else {
-                (to, from)
-            };
-            if inside(downstream) && self.reach.standing(NodeId(upstream)) != Standing::Unserved {
-                shift = shift.max(self.push(state, line));
-            }
-        }
-        if !shift.is_finite() || shift.abs() <= 1e-13 * (1.0 + state.heads[first.index()].abs()) {
-            return false;
-        }
-        for node in 0..self.held.len() as u32 {
-            if inside(node) {
-                state.heads[node as usize] += shift;
-            }
-        }
-        true
     }
 }

@@ -29,6 +29,28 @@ pub(super) fn rounding(q: f64, slope: f64) -> f64 {
     4.0 * f64::EPSILON * (q * slope).abs()
 }
 
+/// A tolerance on what a regulating part holds, in its unit: `absolute + relative x (set value)`.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct HeldTolerance {
+    pub absolute: f64,
+    pub relative: f64,
+}
+
+/// Iterations go on until held heads (m) are this good.
+pub(super) const HELD_HEAD: HeldTolerance = HeldTolerance {
+    absolute: 1e-9,
+    relative: 1e-13,
+};
+
+/// The same of held flows, m3/s.
+pub(super) const HELD_FLOW: HeldTolerance = HeldTolerance {
+    absolute: 1e-12,
+    relative: 1e-9,
+};
+
+/// How many times as much as the iterations ask for is good enough for the certificate.
+pub(super) const CERTIFIED_HELD: f64 = 10.0;
+
 /// Smallest slope (m per m3/s) that the iterations reckon with. The laws themselves stay as they are.
 pub(super) const SLOPE_FLOOR: f64 = 1e-7;
 

@@ -6,7 +6,9 @@ use super::caution::{self, Caution};
 use super::limit::{self, Limit};
 use crate::network::{Need, Network, NodeId, Settings, Target};
 use crate::part::{Part, PumpId};
-use crate::solve::operation::{self, LineOperation, NodeOperation, PumpOperation};
+use crate::solve::operation::{
+    self, LineOperation, NodeOperation, PumpOperation, RegulatorOperation,
+};
 use crate::solve::{Balance, Balances, Solution};
 
 /// A solved state and what is to be said of it.
@@ -18,6 +20,8 @@ pub struct Assessment {
     pub lines: Vec<LineOperation>,
     /// One per pump.
     pub pumps: Vec<PumpOperation>,
+    /// One per regulating part.
+    pub regulators: Vec<RegulatorOperation>,
     /// One per need.
     pub needs: Vec<NeedValue>,
     /// Every limit that can be judged, pump by pump and then line by line.
@@ -61,6 +65,10 @@ pub fn assess(
         .pump_ids()
         .map(|id| operation::pump(network, settings, solution, id))
         .collect();
+    let regulators = network
+        .regulator_ids()
+        .map(|id| operation::regulator(network, settings, solution, id))
+        .collect();
     let need_values: Vec<NeedValue> = needs
         .iter()
         .map(|need| {
@@ -79,6 +87,7 @@ pub fn assess(
         nodes,
         lines,
         pumps,
+        regulators,
         needs: need_values,
         limits,
         cautions,
@@ -173,7 +182,7 @@ fn friction_share(
         for part in &network.line(id).parts {
             let is_running = |pump: PumpId| settings.pump(pump).running;
             if !matches!(part, Part::Pump(pump) if is_running(*pump)) {
-                dissipated += q * operation::part_loss(network, settings, part, q);
+                dissipated += q * operation::loss_in(network, settings, solution, part, q);
             }
         }
     }

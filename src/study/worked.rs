@@ -73,6 +73,8 @@ pub enum What {
     Valve(f64),
     /// A check valve, r in s2/m5.
     CheckValve(f64),
+    /// A regulating part as it stands, r in s2/m5.
+    Regulator(f64),
     /// A pump.
     Pump(PumpId),
 }
@@ -156,7 +158,7 @@ fn steps(network: &Network, settings: &Settings, solution: &Solution, id: LineId
         .parts
         .iter()
         .map(|part| {
-            let loss = operation::part_loss(network, settings, part, flow);
+            let loss = operation::loss_in(network, settings, solution, part, flow);
             Step {
                 line: id,
                 what: what(network, part, flow, loss),
@@ -209,6 +211,7 @@ fn what(network: &Network, part: &Part, flow: f64, loss: f64) -> What {
         Part::Loss(_) => What::Loss(r),
         Part::Valve(_) => What::Valve(r),
         Part::CheckValve(_) => What::CheckValve(r),
+        Part::Regulator(_) => What::Regulator(r),
         Part::Pump(pump) => What::Pump(*pump),
     }
 }

@@ -5,13 +5,15 @@ use std::collections::HashMap;
 
 use dutybank::fluid::Fluid;
 use dutybank::network::{
-    LineId, Network, NetworkBuilder, NodeId, NodeKind, PumpSetting, Settings, ValveSetting,
+    LineId, Network, NetworkBuilder, NodeId, NodeKind, PumpSetting, RegulatorSetting, Settings,
+    ValveSetting,
 };
 use dutybank::part::friction::Pipe;
 use dutybank::part::pump::{Pump, PumpLaw, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
+use dutybank::part::regulator::{Regulates, Regulator};
 use dutybank::part::valve::Valve;
-use dutybank::part::{HeadLaw, Part};
+use dutybank::part::{HeadLaw, Part, RegulatorId};
 
 #[derive(Clone)]
 pub struct Node {
@@ -38,6 +40,8 @@ pub enum Piece {
     Check(QuadraticLoss),
     Valve(Valve, ValveSetting),
     Pump(PumpModel, Pump, PumpSetting),
+    /// With the name of the pump that it protects.
+    Regulator(Regulator, RegulatorSetting, Option<String>),
 }
 
 impl Piece {
@@ -46,7 +50,7 @@ impl Piece {
         match self {
             Self::Pipe(_) | Self::Loss(_) | Self::Valve(..) => true,
             Self::Pump(_, _, setting) => !setting.running,
-            Self::Check(_) => false,
+            Self::Check(_) | Self::Regulator(..) => false,
         }
     }
 }
@@ -67,6 +71,14 @@ impl Description {
             Part::Loss(loss) => Piece::Loss(*loss),
             Part::CheckValve(loss) => Piece::Check(*loss),
             Part::Valve(id) => Piece::Valve(*network.valve(*id), *settings.valve(*id)),
+            Part::Regulator(id) => {
+                let regulator = *network.regulator(*id);
+                let pump = match regulator.regulates {
+                    Regulates::MinimumFlow { pump } => Some(network.pump(pump).name.clone()),
+                    _ => None,
+                };
+                Piece::Regulator(regulator, *settings.regulator(*id), pump)
+            }
             Part::Pump(id) => Piece::Pump(
                 network.model(*id).clone(),
                 network.pump(*id).clone(),
@@ -101,6 +113,7 @@ impl Description {
             .map(|node| net.node(&node.name, node.kind, node.draw, node.level))
             .collect();
         let mut models: HashMap<String, usize> = HashMap::new();
+        let mut protected: Vec<(RegulatorId, &String)> = Vec::new();
         for line in &self.lines {
             let mut parts = Vec::new();
             for piece in &line.parts {
@@ -109,6 +122,11 @@ impl Description {
                     Piece::Loss(loss) => Part::Loss(*loss),
                     Piece::Check(loss) => Part::CheckValve(*loss),
                     Piece::Valve(valve, setting) => Part::Valve(net.valve(*valve, *setting)),
+                    Piece::Regulator(regulator, setting, pump) => {
+                        let id = net.regulator(*regulator, *setting);
+                        protected.extend(pump.iter().map(|pump| (id, pump)));
+                        Part::Regulator(id)
+                    }
                     Piece::Pump(model, pump, setting) => {
                         let model = *models
                             .entry(model.name.clone())
@@ -122,6 +140,10 @@ impl Description {
                 });
             }
             net.line(&line.name, nodes[line.from], nodes[line.to], parts);
+        }
+        for (id, pump) in protected {
+            let pump = net.find_pump(pump).unwrap();
+            net.protect(id, pump);
         }
         net.build().unwrap()
     }
@@ -139,6 +161,7 @@ pub fn line_loss(network: &Network, settings: &Settings, line: LineId, q: f64) -
                 .loss_at(settings.valve(*id).opening)
                 .unwrap_or(QuadraticLoss::NONE)
                 .loss(q),
+            Part::Regulator(id) => network.regulator(*id).wide_open.loss(q),
             Part::Pump(id) => {
                 let setting = settings.pump(*id);
                 let law = PumpLaw {

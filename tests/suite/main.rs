@@ -18,6 +18,7 @@ mod random;
 mod readme;
 mod reference;
 mod reference_over_time;
+mod regulating;
 mod report;
 mod shift_closed_forms;
 mod shift_meadow;

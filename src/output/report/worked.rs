@@ -72,6 +72,9 @@ fn working(words: &Words, step: &Step) -> String {
         } => format!("pipe, q {q:.5}, L {length:.1}, D {bore:.4}: v = {velocity:.4}"),
         What::Loss(r) => format!("loss, h = r q2 with r = {r:.3}, q {q:.5}"),
         What::Valve(r) => format!("valve, h = r q2 with r = {r:.3}, q {q:.5}"),
+        What::Regulator(r) => {
+            format!("regulating part, h = r q2 with r = {r:.3} as it stands, q {q:.5}")
+        }
         What::CheckValve(r) => format!("check valve, h = r q2 with r = {r:.3}, q {q:.5}"),
         What::Pump(pump) => format!(
             "pump {} at q {q:.5}, from its curve",

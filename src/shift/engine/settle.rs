@@ -187,6 +187,14 @@ impl Engine<'_> {
             if first {
                 continue;
             }
+            if has(new, open) && has(old, open) && old / Plant::REGULATES != new / Plant::REGULATES
+            {
+                let what = match new / Plant::REGULATES {
+                    0 => What::WideOpen,
+                    _ => What::Regulates,
+                };
+                self.tell(what, Who::Line(line), Why::Balance);
+            }
             for port in [Plant::FROM_ABOVE, Plant::TO_ABOVE] {
                 if has(new, port) != has(old, port) {
                     let what = if has(new, port) {
