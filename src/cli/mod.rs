@@ -7,6 +7,7 @@ mod duty;
 mod files;
 mod shift;
 mod solve;
+mod tolerance;
 
 use std::process::ExitCode;
 
@@ -38,6 +39,7 @@ pub fn run() -> ExitCode {
         Command::Duty(options) => duty::duty(options),
         Command::Shift(options) => shift::shift(options),
         Command::Compare(options) => compare::compare(options),
+        Command::Tolerance(options) => tolerance::tolerance(options),
     };
     match outcome {
         Ok(()) | Err(Failure::PipeClosed) => ExitCode::SUCCESS,

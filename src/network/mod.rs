@@ -5,14 +5,18 @@
 
 mod build;
 mod feasible;
+mod figure;
 mod need;
 mod reach;
 mod settings;
+mod spread;
 
 pub use build::{BuildError, NetworkBuilder};
+pub use figure::{Figure, PartFigure, Varied};
 pub use need::{Need, Target};
 pub use reach::{Passage, Reach, Standing, Unreachable};
-pub use settings::{CheckCondition, PumpSetting, Settings, TankMode, ValveSetting};
+pub use settings::{AsBuilt, CheckCondition, PumpSetting, Settings, TankMode, ValveSetting};
+pub use spread::{Shape, Spread};
 
 use crate::fluid::Fluid;
 use crate::part::pump::{Covers, Pump, PumpModel};
@@ -42,7 +46,7 @@ impl LineId {
 }
 
 /// A node: where lines meet, or where the system ends.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Node {
     /// The user's name for it.
     pub name: String,
@@ -72,8 +76,19 @@ pub enum NodeKind {
     },
 }
 
+impl Node {
+    /// Elevation of a point or outlet, or of a tank's floor, m; a reservoir has none but its surface.
+    pub fn elevation(&self) -> Option<f64> {
+        match self.kind {
+            NodeKind::Point { elevation } | NodeKind::Outlet { elevation } => Some(elevation),
+            NodeKind::Tank { floor } => Some(floor),
+            NodeKind::Reservoir => None,
+        }
+    }
+}
+
 /// A line: one flow between two nodes through its parts, in order.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Line {
     /// The user's name for it; a member of a bank is `bank.k`.
     pub name: String,
@@ -126,7 +141,7 @@ pub enum End {
 }
 
 /// A bank: equal lines side by side.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Bank {
     /// The user's name for it.
     pub name: String,
@@ -171,7 +186,7 @@ impl Direction {
 
 /// A network: names unique, each line joins two of its nodes and has a part, every figure finite and in range.
 /// Immutable; what may change is in [`Settings`].
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Network {
     nodes: Vec<Node>,
     lines: Vec<Line>,

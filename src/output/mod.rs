@@ -6,6 +6,7 @@ pub mod grid;
 pub mod json;
 pub mod shift;
 pub mod solve;
+pub mod tolerance;
 pub mod words;
 
 /// Stands at the foot of results.

@@ -5,7 +5,7 @@ use super::quadratic::QuadraticLoss;
 use super::{HeadLaw, HeadLoss};
 
 /// A pump model: the curves of its data sheet at its own speed and full impeller.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct PumpModel {
     /// The user's name for it.
     pub name: String,
@@ -28,7 +28,7 @@ pub struct PumpModel {
 }
 
 /// What the data sheet gives for power.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub enum PowerCurve {
     /// Neither power nor efficiency.
     Unknown,
@@ -133,7 +133,7 @@ pub struct PumpLaw<'a> {
     pub head: &'a Curve,
     /// Speed ratio times trim ratio.
     pub ratio: f64,
-    /// Share of the head lost to wear, 0 to below 1.
+    /// Share of the head lost to wear, below 1; negative for a head above the curve.
     pub wear: f64,
 }
 
@@ -152,7 +152,7 @@ impl HeadLaw for PumpLaw<'_> {
 }
 
 /// A pump in its line: what does not change while the network stands.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Pump {
     /// The user's name for it.
     pub name: String,
@@ -167,7 +167,7 @@ pub struct Pump {
 }
 
 /// The falling stand-ins of a drooping head curve; see [`Curve::falling_cover`].
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Covers {
     upper: Curve,
     lower: Curve,

@@ -430,6 +430,7 @@ impl Lowering<'_> {
             speed,
             trim,
             wear: pump.wear,
+            ..PumpSetting::NEW
         };
         let pump = Pump {
             name,

@@ -7,6 +7,7 @@
 
 use super::laws::{Laws, ordinary_flow};
 use super::linear::{Factor, Slot};
+pub(super) use super::state::State;
 use super::tolerance::{HEAD, flow_tolerance};
 use crate::network::{
     Direction, End, LineId, Network, NodeId, NodeKind, Passage, Reach, Settings, Standing,
@@ -27,10 +28,10 @@ pub(super) enum Role {
 
 /// A node settled by continuity: one line, whose other end is nearer to the unknowns.
 #[derive(Clone, Copy, Debug)]
-struct Leaf {
-    node: u32,
-    line: u32,
-    parent: u32,
+pub(super) struct Leaf {
+    pub node: u32,
+    pub line: u32,
+    pub parent: u32,
 }
 
 /// A live line, with all that an iteration asks of it side by side.
@@ -65,19 +66,6 @@ impl Live {
     }
 }
 
-/// Heads, flows and shut one-way lines: what the iterations write.
-#[derive(Clone, Debug)]
-pub(super) struct State {
-    /// Per node, m.
-    pub heads: Vec<f64>,
-    /// Per line, m3/s.
-    pub flows: Vec<f64>,
-    /// Per line: a live one-way line that is held shut.
-    pub shut: Vec<bool>,
-    /// Nothing is known of the flows in passive lines: what stands there is a size without a direction.
-    pub cold: bool,
-}
-
 pub(super) struct System<'n> {
     pub network: &'n Network,
     pub laws: Laws<'n>,
@@ -89,7 +77,7 @@ pub(super) struct System<'n> {
     pub sense: Vec<f64>,
     /// Per line: head at its `from` end less that at its `to` end, beyond the heads of the nodes there (ports above a
     /// tank's surface), m.
-    lift: Vec<f64>,
+    pub lift: Vec<f64>,
     pub roles: Vec<Role>,
     /// The live lines, ascending.
     pub live: Vec<Live>,
@@ -109,10 +97,12 @@ pub(super) struct System<'n> {
     pub start_flow: Vec<f64>,
     /// Per line, its off-diagonal entry.
     pub slots: Vec<Option<Slot>>,
-    leaves: Vec<Leaf>,
+    pub leaves: Vec<Leaf>,
     degree: Vec<u32>,
     queue: Vec<u32>,
     was_live: Vec<bool>,
+    /// Counts the changes of roles and lifts.
+    pub layout: u64,
 }
 
 impl<'n> System<'n> {
@@ -164,6 +154,7 @@ impl<'n> System<'n> {
             degree: vec![0; n],
             queue: Vec::with_capacity(n),
             was_live: vec![false; m],
+            layout: 0,
         }
     }
 
@@ -178,20 +169,22 @@ impl<'n> System<'n> {
         }
     }
 
-    /// Lays the equations out for these settings and puts what is known into `state`. Allocates nothing.
+    /// Lays the equations out for these settings and puts what is known into `state`. Allocates nothing. `network` is
+    /// the system's own, or one of the same nodes, lines and parts with other figures.
     ///
     /// # Errors
     /// A draw or inflow that no flow can satisfy.
-    pub fn prepare(&mut self, settings: &Settings, state: &mut State) -> Result<(), Unreachable> {
-        let changed = self.reach.update(self.network, settings)?;
-        self.laws.set(self.network, settings, None);
+    pub fn prepare(
+        &mut self,
+        network: &Network,
+        settings: &Settings,
+        state: &mut State,
+    ) -> Result<(), Unreachable> {
+        let changed = self.reach.update(network, settings)?;
+        self.laws.set(self.network, network, settings, None);
         let mut lifted = false;
         for line in self.network.line_ids() {
-            let above = |end| {
-                self.network
-                    .above_surface(line, end, settings)
-                    .unwrap_or(0.0)
-            };
+            let above = |end| network.above_surface(line, end, settings).unwrap_or(0.0);
             let lift = above(End::From) - above(End::To);
             lifted |= lift != std::mem::replace(&mut self.lift[line.index()], lift);
             self.sense[line.index()] = match self.reach.direction(line) {
@@ -201,7 +194,7 @@ impl<'n> System<'n> {
             };
         }
         for node in self.network.node_ids() {
-            let head = self.network.fixed_head(node, settings);
+            let head = network.fixed_head(node, settings);
             self.held[node.index()] = head.is_some();
             self.fixed[node.index()] = head.is_some();
             let draw = if head.is_some() {
@@ -227,6 +220,7 @@ impl<'n> System<'n> {
             self.strip_leaves(state);
         }
         if changed || lifted {
+            self.layout += 1;
             self.gather_live();
         }
         self.fold_leaves(state);

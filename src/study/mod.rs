@@ -5,3 +5,4 @@ pub mod duty;
 pub mod gain;
 pub mod ranking;
 pub mod sets;
+pub mod tolerance;
