@@ -41,6 +41,7 @@ pub(super) fn tolerance(options: &ToleranceOptions) -> Result<(), Failure> {
         inputs: &tolerances.inputs,
         as_is: &as_is,
         seed,
+        graded: tolerances.graded,
     };
     let request = Request {
         responses: &responses,

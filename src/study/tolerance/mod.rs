@@ -18,6 +18,6 @@ mod tally;
 pub use draw::Draw;
 pub use influence::{Influence, Share, Way};
 pub use measure::{Measure, Point, measures};
-pub use response::{Effect, Input, ResponseError, Responses};
+pub use response::{Effect, Input, Reading, ResponseError, Responses};
 pub use run::{Case, Request, Study, run};
 pub use tally::{About, Band, Broken, Needs};

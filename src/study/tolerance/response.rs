@@ -46,6 +46,9 @@ pub enum Effect {
     Percent(Vec<Figure>),
 }
 
+/// Gives the network with each input at a place between its limits.
+pub type Reading<'r, E> = dyn Fn(&[f64]) -> Result<Network, E> + 'r;
+
 /// Why no responses could be found.
 #[derive(Clone, Debug, PartialEq)]
 pub enum ResponseError<E> {
@@ -117,10 +120,7 @@ impl Responses {
     ///
     /// # Errors
     /// [`ResponseError`].
-    pub fn find<E>(
-        inputs: Vec<Input>,
-        read: &dyn Fn(&[f64]) -> Result<Network, E>,
-    ) -> Result<Self, ResponseError<E>> {
+    pub fn find<E>(inputs: Vec<Input>, read: &Reading<E>) -> Result<Self, ResponseError<E>> {
         let at = |places: &[f64]| read(places).map_err(ResponseError::Read);
         let mut places = vec![0.5; inputs.len()];
         let file_middle = at(&places)?;
@@ -168,7 +168,7 @@ impl Responses {
             inputs,
             figures: figures.into_values().collect(),
         };
-        responses.try_together(&file_middle, &at)?;
+        responses.try_together(&file_middle, read)?;
         Ok(responses)
     }
 
@@ -188,7 +188,7 @@ impl Responses {
     fn try_together<E>(
         &self,
         file_middle: &Network,
-        at: &dyn Fn(&[f64]) -> Result<Network, ResponseError<E>>,
+        read: &Reading<E>,
     ) -> Result<(), ResponseError<E>> {
         let shared: Vec<&Followed> = self
             .figures
@@ -206,7 +206,7 @@ impl Responses {
                 .zip(&places)
                 .map(|(input, place)| Draw::at(&input.spread, *place))
                 .collect();
-            let network = at(&places)?;
+            let network = read(&places).map_err(ResponseError::Read)?;
             let (first, _) = shared[0].courses[0];
             let read: BTreeMap<Figure, f64> = figures_of(file_middle, &network, first)?
                 .into_iter()
