@@ -38,6 +38,9 @@ pub(crate) enum Command {
     /// Write a calculation note as one HTML page that a reviewer can check
     #[command(after_help = REPORT_EXAMPLES)]
     Report(ReportOptions),
+    /// Draw what is not known exactly (`tolerances` of the file) many times: bands, shares of cases, what matters most
+    #[command(after_help = TOLERANCE_EXAMPLES)]
+    Tolerance(ToleranceOptions),
 }
 
 const SOLVE_EXAMPLES: &str = "\
@@ -83,6 +86,13 @@ Examples:
   dutybank report networks/meadow_lift_station.yaml --out note.html --job \"Second duty pump, for review\" --cases as-is,storm
 
 Exit codes: 0 the page was written; 2 bad input, or a run that broke";
+const TOLERANCE_EXAMPLES: &str = "\
+Examples:
+  dutybank tolerance networks/mill_pond_transfer.yaml
+  dutybank tolerance networks/mill_pond_transfer.yaml --running transfer.1 --samples 100000
+  dutybank tolerance networks/mill_pond_transfer.yaml --case 'full tank' --seed 7 --csv drawn.csv
+
+Exit codes: 0 the cases were drawn, needs met or not; 2 bad input, or a run that broke";
 
 #[derive(Args)]
 pub(crate) struct FileOption {
@@ -234,4 +244,27 @@ impl ReportOptions {
             fail_unmet: false,
         }
     }
+}
+
+#[derive(Args)]
+pub(crate) struct ToleranceOptions {
+    #[command(flatten)]
+    pub input: FileOption,
+    #[command(flatten)]
+    pub changes: ChangeOptions,
+    /// How many cases to draw; else what the file says, or 10000
+    #[arg(long, value_name = "NUMBER")]
+    pub samples: Option<usize>,
+    /// What the draws start from: the same seed draws the same cases; else what the file says, or 1
+    #[arg(long, value_name = "NUMBER")]
+    pub seed: Option<u64>,
+    /// Threads to work with; the figures are the same for any number
+    #[arg(long, value_name = "NUMBER")]
+    pub threads: Option<usize>,
+    /// Print one JSON object instead of tables
+    #[arg(long)]
+    pub json: bool,
+    /// Write every case to this CSV file: what was drawn, and what came of it
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
 }

@@ -8,6 +8,7 @@ mod files;
 mod report;
 mod shift;
 mod solve;
+mod tolerance;
 
 use std::process::ExitCode;
 
@@ -40,6 +41,7 @@ pub fn run() -> ExitCode {
         Command::Shift(options) => shift::shift(options),
         Command::Compare(options) => compare::compare(options),
         Command::Report(options) => report::report(options),
+        Command::Tolerance(options) => tolerance::tolerance(options),
     };
     match outcome {
         Ok(()) | Err(Failure::PipeClosed) => ExitCode::SUCCESS,

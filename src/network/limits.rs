@@ -218,7 +218,7 @@ struct Given {
 }
 
 /// The limits of a system: what its file sets, and the defaults for the rest.
-#[derive(Clone, Debug, Default)]
+#[derive(Clone, Debug, Default, PartialEq)]
 pub struct Limits {
     given: [Option<Given>; TABLE.len()],
 }

@@ -11,6 +11,7 @@ pub mod report;
 pub mod shift;
 pub mod sketch;
 pub mod solve;
+pub mod tolerance;
 pub mod words;
 
 /// Stands at the foot of results.

@@ -135,6 +135,18 @@ pub struct DarcyWeisbach {
     blend: [f64; 4],
 }
 
+/// The three figures that make a Darcy–Weisbach law. Each is a product of powers of length, bore, roughness, viscosity and
+/// gravity, so that changes of several of these multiply.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(crate) struct DarcyCoefficients {
+    /// L/D / (2 g area2), m per (m3/s)2 at a friction factor of 1.
+    pub resistance: f64,
+    /// Re / q, s/m3.
+    pub reynolds_per_flow: f64,
+    /// Re / q x e/D / (3.7 2.51 k), s/m3; see [`colebrook`].
+    pub rough_per_flow: f64,
+}
+
 const LAMINAR_END: f64 = 2000.0;
 const TURBULENT_START: f64 = 4000.0;
 /// 2 / ln 10.
@@ -144,10 +156,23 @@ impl DarcyWeisbach {
     fn new(length: f64, bore: f64, roughness: f64, viscosity: f64, gravity: f64) -> Self {
         let a = area(bore);
         let reynolds_per_flow = bore / (a * viscosity);
-        let c = length / bore / (2.0 * gravity * a * a);
-        let mut law = Self {
+        Self::of(DarcyCoefficients {
+            resistance: length / bore / (2.0 * gravity * a * a),
             reynolds_per_flow,
             rough_per_flow: reynolds_per_flow * (roughness / bore) / (3.7 * 2.51 * TWO_OVER_LN10),
+        })
+    }
+
+    /// From the three figures that make the law.
+    pub(crate) fn of(coefficients: DarcyCoefficients) -> Self {
+        let DarcyCoefficients {
+            resistance: c,
+            reynolds_per_flow,
+            rough_per_flow,
+        } = coefficients;
+        let mut law = Self {
+            reynolds_per_flow,
+            rough_per_flow,
             c,
             laminar: 64.0 * c / reynolds_per_flow,
             blend: [0.0; 4],
@@ -174,6 +199,15 @@ impl DarcyWeisbach {
     /// Roughness over bore.
     pub fn relative_roughness(&self) -> f64 {
         self.rough_per_flow / self.reynolds_per_flow * (3.7 * 2.51 * TWO_OVER_LN10)
+    }
+
+    /// The three figures that make the law.
+    pub(crate) fn coefficients(&self) -> DarcyCoefficients {
+        DarcyCoefficients {
+            resistance: self.c,
+            reynolds_per_flow: self.reynolds_per_flow,
+            rough_per_flow: self.rough_per_flow,
+        }
     }
 
     /// Colebrook–White at flow `q` > 0.
@@ -298,6 +332,13 @@ impl DarcyWeisbachBatch {
         self.rough_per_flow.push(law.rough_per_flow);
         self.root_f.push(0.0);
         self.share.push(0.0);
+    }
+
+    /// Gives pipe `i` another law.
+    pub fn replace(&mut self, i: usize, law: DarcyWeisbach) {
+        self.laws[i] = law;
+        self.reynolds_per_flow[i] = law.reynolds_per_flow;
+        self.rough_per_flow[i] = law.rough_per_flow;
     }
 
     /// Number of pipes.

@@ -7,6 +7,7 @@ pub mod character;
 pub mod curve;
 pub mod fittings;
 pub mod friction;
+pub mod grades;
 mod logarithm;
 pub mod materials;
 pub mod pump;
@@ -42,7 +43,7 @@ pub trait HeadLaw {
 }
 
 /// One part of a line, in the order in which the water meets them.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub enum Part {
     /// A straight pipe; its minor losses are a [`Part::Loss`] of the same bore.
     Pipe(friction::Pipe),

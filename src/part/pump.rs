@@ -5,7 +5,7 @@ use super::quadratic::QuadraticLoss;
 use super::{HeadLaw, HeadLoss};
 
 /// A pump model: the curves of its data sheet at its own speed and full impeller.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct PumpModel {
     /// The user's name for it.
     pub name: String,
@@ -45,7 +45,7 @@ pub struct MakerLimits {
 }
 
 /// What the data sheet gives for power.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub enum PowerCurve {
     /// Neither power nor efficiency.
     Unknown,
@@ -150,7 +150,7 @@ pub struct PumpLaw<'a> {
     pub head: &'a Curve,
     /// Speed ratio times trim ratio.
     pub ratio: f64,
-    /// Share of the head lost to wear, 0 to below 1.
+    /// Share of the head lost to wear, below 1; negative for a head above the curve.
     pub wear: f64,
 }
 
@@ -169,7 +169,7 @@ impl HeadLaw for PumpLaw<'_> {
 }
 
 /// A pump in its line: what does not change while the network stands.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Pump {
     /// The user's name for it.
     pub name: String,
@@ -184,7 +184,7 @@ pub struct Pump {
 }
 
 /// The falling stand-ins of a drooping head curve; see [`Curve::falling_cover`].
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Covers {
     upper: Curve,
     lower: Curve,

@@ -65,12 +65,14 @@ mod spec;
 mod staging;
 mod table;
 mod tanks;
+mod tolerances;
 mod yaml;
 
 pub use changes::Change;
 pub use needs::Case;
 pub use over_time::OverTime;
 pub use table::Load;
+pub use tolerances::{ActsOn, Tolerance, Tolerances};
 pub use yaml::LARGEST;
 
 use crate::diagnostic::{Diagnostic, Diagnostics, Severity};
@@ -82,7 +84,7 @@ use spec::{Names, Placed, Spec};
 use yaml::{Form, Marked};
 
 /// Sections of a system file.
-const SECTIONS: [&str; 15] = [
+const SECTIONS: [&str; 16] = [
     "title",
     "units",
     "fluid",
@@ -98,6 +100,7 @@ const SECTIONS: [&str; 15] = [
     "staging",
     "faults",
     "tariff",
+    "tolerances",
 ];
 
 /// A system: the network and what is asked of it, in the user's terms.
@@ -256,6 +259,11 @@ impl Document {
             all.add_errors(&diagnostics);
             Vec::new()
         });
+        if let (Some(system), true) = (&system, self.has_tolerances())
+            && let Err(diagnostics) = self.tolerances(system, &[], load)
+        {
+            all.add_errors(&diagnostics);
+        }
         for case in cases {
             if all.is_full() {
                 break;

@@ -80,6 +80,8 @@ struct Stiffness {
     count: u32,
     /// h times the size of the fastest rate in the last implicit step.
     fastest: f64,
+    /// Steps for which the implicit method is not tried.
+    left_for: u32,
 }
 
 struct Engine<'a> {
@@ -97,6 +99,8 @@ struct Engine<'a> {
     /// Error of the last step that stood, over its tolerance.
     last_error: f64,
     tolerance: f64,
+    /// Factor on it.
+    slack: f64,
     stiffness: Stiffness,
     watches: Vec<Watch>,
     figure_watches: Vec<FigureWatch>,
@@ -146,6 +150,7 @@ impl<'a> Engine<'a> {
             length: shift.lasts,
             last_error: 1e-2,
             tolerance: shift.tolerance.unwrap_or(TOLERANCE),
+            slack: 1.0,
             stiffness: Stiffness::default(),
             watches: Vec::new(),
             figure_watches: Vec::new(),

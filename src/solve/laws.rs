@@ -107,8 +107,44 @@ impl<'n> Laws<'n> {
         }
     }
 
-    /// Writes the numbers for these settings. With a `cover`, drooping head curves are replaced by that falling one.
-    pub fn set(&mut self, network: &'n Network, settings: &Settings, cover: Option<Cover>) {
+    /// Writes the numbers of all fixed parts again, from a network of the same parts with other figures.
+    pub fn set_parts(&mut self, network: &Network) {
+        let mut pipe = 0;
+        for (index, line) in network.lines().iter().enumerate() {
+            let mut fixed = 0.0;
+            let mut term = self.first_term[index] as usize;
+            for part in &line.parts {
+                match part {
+                    Part::Pipe(of) => match of.friction {
+                        Friction::DarcyWeisbach(law) => {
+                            self.pipes.replace(pipe, law);
+                            pipe += 1;
+                        }
+                        Friction::FixedFactor { r } => fixed += r,
+                        Friction::HazenWilliams { .. } => {
+                            self.terms[term] = Term::HazenWilliams(of.friction);
+                            term += 1;
+                        }
+                    },
+                    Part::Loss(loss) | Part::CheckValve(loss) => fixed += loss.r(),
+                    Part::Pump(_) => term += 1,
+                    Part::Regulator(id) => fixed += network.regulator(*id).wide_open.r(),
+                    Part::Valve(_) => {}
+                }
+            }
+            self.fixed_r[index] = fixed;
+        }
+    }
+
+    /// Writes the numbers for these settings. With a `cover`, drooping head curves are replaced by that falling one. The
+    /// head curves are those of `curves`; `network` has the same parts, perhaps with other figures.
+    pub fn set(
+        &mut self,
+        curves: &'n Network,
+        network: &Network,
+        settings: &Settings,
+        cover: Option<Cover>,
+    ) {
         for ((r, fixed), line) in self.r.iter_mut().zip(&self.fixed_r).zip(network.line_ids()) {
             *r = fixed + settings.fouling(line);
         }
@@ -122,13 +158,9 @@ impl<'n> Laws<'n> {
                 self.r[network.line_of(id).index()] += standing.r();
             }
             let head = cover
-                .and_then(|cover| network.covers(id).map(|covers| covers.get(cover)))
-                .unwrap_or(&network.model(id).head);
-            let law = PumpLaw {
-                head,
-                ratio: setting.ratio(),
-                wear: setting.wear,
-            };
+                .and_then(|cover| curves.covers(id).map(|covers| covers.get(cover)))
+                .unwrap_or(&curves.model(id).head);
+            let law = setting.law(head);
             self.terms[self.pump_terms[id.index()] as usize] = Term::Pump {
                 law,
                 running: setting.running,
@@ -210,13 +242,7 @@ pub fn part_loss(network: &Network, settings: &Settings, part: &Part, q: f64) ->
         Part::Pump(id) => {
             let setting = settings.pump(*id);
             if setting.running {
-                let head = &network.model(*id).head;
-                PumpLaw {
-                    head,
-                    ratio: setting.ratio(),
-                    wear: setting.wear,
-                }
-                .loss(q)
+                setting.law(&network.model(*id).head).loss(q)
             } else {
                 network
                     .pump(*id)

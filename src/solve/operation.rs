@@ -163,17 +163,27 @@ pub fn loss_in(
     part: &Part,
     q: f64,
 ) -> f64 {
-    let added = match part {
+    part_loss(network, settings, part, q) + added(solution, part)
+}
+
+/// Head that a regulating part adds to the loss of its open body, m.
+fn added(solution: &Solution, part: &Part) -> f64 {
+    match part {
         Part::Regulator(id) => solution.regulation(*id).added.unwrap_or(0.0),
         _ => 0.0,
-    };
-    part_loss(network, settings, part, q) + added
+    }
+}
+
+/// The parts that water meets before a pump of its line.
+fn before(network: &Network, id: PumpId) -> impl Iterator<Item = &Part> {
+    let parts = network.line(network.line_of(id)).parts.iter();
+    parts.take_while(move |part| !matches!(part, Part::Pump(pump) if *pump == id))
 }
 
 /// What a pump does.
 ///
 /// With s = speed ratio x trim ratio: head (1-wear) s2 H(q/s), NPSH required s2 N(q/s), shaft power s3 P(q/s) whatever the
-/// wear, efficiency = density g q head / shaft power. NPSH available = (barometer - vapour pressure)/(density g) + head
+/// wear, efficiency = density g q head / shaft power; what a pump as built changes of it is in [`crate::network::AsBuilt`]. NPSH available = (barometer - vapour pressure)/(density g) + head
 /// at its inlet - its elevation.
 pub fn pump(
     network: &Network,
@@ -181,10 +191,25 @@ pub fn pump(
     solution: &Solution,
     id: PumpId,
 ) -> PumpOperation {
+    let line = network.line_of(id);
+    let added: f64 = before(network, id).map(|part| added(solution, part)).sum();
+    let head = solution.head(network.line(line).from);
+    let head = head.map(|head| head - added);
+    pump_at(network, settings, id, solution.flow(line), head)
+}
+
+/// What a pump does at a flow (m3/s) when its line's first node has this head (m), less what regulating parts before it take;
+/// [`pump`] for any state.
+pub fn pump_at(
+    network: &Network,
+    settings: &Settings,
+    id: PumpId,
+    flow: f64,
+    first_head: Option<f64>,
+) -> PumpOperation {
     let setting = settings.pump(id);
     let model = network.model(id);
-    let flow = solution.flow(network.line_of(id));
-    let suction_head = inlet_head(network, settings, solution, id);
+    let suction_head = first_head.map(|head| head - lost_before(network, settings, id, flow));
     let weight = network.fluid().density * network.gravity();
     let elevation = network.pump(id).elevation;
     let suction_pressure = suction_head.map(|head| weight * (head - elevation));
@@ -206,11 +231,12 @@ pub fn pump(
         };
     }
     let s = setting.ratio();
-    let q = flow / s;
-    let head = (1.0 - setting.wear) * s * s * model.head.at(q).value;
+    let built = setting.built;
+    let q = flow / setting.flow_ratio();
+    let head = (1.0 - setting.wear) * built.head * s * s * model.head.at(q).value;
     let shaft_power = model
         .shaft_power(q, network.fluid().density, network.gravity())
-        .map(|power| s.powi(3) * power);
+        .map(|power| s.powi(3) * built.power() * power);
     let air_head = |vapour: f64| (network.barometer() - vapour) / weight;
     let npsh_available = suction_head
         .zip(network.fluid().vapour_pressure)
@@ -220,7 +246,13 @@ pub fn pump(
         speed_ratio: s,
         flow,
         head: Some(head),
-        efficiency: efficiency(model, q, weight * flow * head, shaft_power, setting.wear),
+        efficiency: efficiency(
+            model,
+            q,
+            weight * flow * head,
+            shaft_power,
+            (1.0 - setting.wear) * built.efficiency,
+        ),
         shaft_power,
         electrical_power: shaft_power
             .and_then(|power| model.electrical_power(power, setting.speed)),
@@ -256,12 +288,12 @@ fn efficiency(
     q: f64,
     hydraulic_power: f64,
     shaft_power: Option<f64>,
-    wear: f64,
+    kept: f64,
 ) -> Option<f64> {
     match &model.power {
         PowerCurve::Unknown => None,
         PowerCurve::Efficiency(curve) => {
-            Some((1.0 - wear) * curve.at(q).value).filter(|efficiency| *efficiency >= 0.0)
+            Some(kept * curve.at(q).value).filter(|efficiency| *efficiency >= 0.0)
         }
         PowerCurve::Shaft(_) => shaft_power
             .filter(|power| *power > 0.0)
@@ -269,24 +301,21 @@ fn efficiency(
     }
 }
 
-/// Total head at a pump's inlet: that of its line's first node less what is lost on the way.
-fn inlet_head(
-    network: &Network,
-    settings: &Settings,
-    solution: &Solution,
-    id: PumpId,
-) -> Option<f64> {
+/// Head lost between a line's first node and a pump's inlet at this flow, m.
+fn lost_before(network: &Network, settings: &Settings, id: PumpId, flow: f64) -> f64 {
     let line_id = network.line_of(id);
-    let line = network.line(line_id);
-    let flow = solution.flow(line_id);
-    let before = line
-        .parts
-        .iter()
-        .take_while(|part| !matches!(part, Part::Pump(pump) if *pump == id));
-    let lost: f64 = before
-        .map(|part| loss_in(network, settings, solution, part, flow))
+    let lost: f64 = before(network, id)
+        .map(|part| part_loss(network, settings, part, flow))
         .sum();
     // A fouled strainer stands before everything else.
-    let fouled = settings.fouling(line_id) * flow * flow.abs();
-    Some(solution.head(line.from)? - lost - fouled)
+    lost + settings.fouling(line_id) * flow * flow.abs()
+}
+
+/// Head lost along a whole line at this flow, its pumps' heads taken off, m.
+pub fn line_loss(network: &Network, settings: &Settings, id: LineId, flow: f64) -> f64 {
+    let parts = network.line(id).parts.iter();
+    let lost: f64 = parts
+        .map(|part| part_loss(network, settings, part, flow))
+        .sum();
+    lost + settings.fouling(id) * flow * flow.abs()
 }

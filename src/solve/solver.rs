@@ -1,6 +1,7 @@
 //! The solver: the two paths in their order, and the answer that comes of them.
 
 use super::certificate::{Balance, certify, regulation};
+use super::near::Start;
 use super::newton::Effort;
 use super::paths::Paths;
 use super::regulate::Regulating;
@@ -138,13 +139,17 @@ impl std::error::Error for SolveError {}
 /// Solves one network again and again. Everything that depends on the network alone is done in [`Solver::new`]; a solve
 /// writes numbers only and allocates nothing.
 pub struct Solver<'n> {
-    system: System<'n>,
+    pub(super) system: System<'n>,
     paths: Paths,
     regulating: Regulating,
-    state: State,
-    solution: Solution,
+    pub(super) state: State,
+    pub(super) solution: Solution,
     scratch: Vec<f64>,
-    solved: bool,
+    pub(super) solved: bool,
+    /// Whether the laws hold figures of a varied network.
+    pub(super) varied: bool,
+    /// Where near states are solved from.
+    pub(super) start: Option<Start>,
 }
 
 impl<'n> Solver<'n> {
@@ -167,6 +172,8 @@ impl<'n> Solver<'n> {
             scratch: vec![0.0; n],
             system,
             solved: false,
+            varied: false,
+            start: None,
         }
     }
 
@@ -244,16 +251,21 @@ impl<'n> Solver<'n> {
         self.solved = false;
         self.system.cold_start(&mut self.state);
         let mut effort = Effort::default();
+        let network = self.system.network;
         self.system
             .laws
-            .set(self.system.network, settings, Some(cover));
+            .set(network, network, settings, Some(cover));
         self.iterate(&mut effort);
-        self.system.laws.set(self.system.network, settings, None);
+        self.system.laws.set(network, network, settings, None);
         self.finish(settings, effort).cloned()
     }
 
     fn prepare(&mut self, settings: &Settings) -> Result<(), SolveError> {
-        let prepared = self.system.prepare(settings, &mut self.state);
+        let network = self.system.network;
+        if std::mem::take(&mut self.varied) {
+            self.system.laws.set_parts(network);
+        }
+        let prepared = self.system.prepare(network, settings, &mut self.state);
         // What was solved before no longer fits the layout if this failed half-way.
         self.solved &= prepared.is_ok();
         prepared.map_err(SolveError::Unreachable)
@@ -285,7 +297,11 @@ impl<'n> Solver<'n> {
         }
     }
 
-    fn finish(&mut self, settings: &Settings, mut effort: Effort) -> Result<&Solution, SolveError> {
+    pub(super) fn finish(
+        &mut self,
+        settings: &Settings,
+        mut effort: Effort,
+    ) -> Result<&Solution, SolveError> {
         let certain_path = self.iterate(&mut effort);
         self.paths.settle(&self.system, &mut self.state);
         let balance = certify(&mut self.system, &self.state, &mut self.scratch)

@@ -7,6 +7,7 @@
 
 use super::laws::{Laws, ordinary_flow};
 use super::linear::{Factor, Slot};
+pub(super) use super::state::State;
 use super::throttles::Throttles;
 use super::tolerance::{HEAD, flow_tolerance};
 use crate::network::{
@@ -65,19 +66,6 @@ impl Live {
     }
 }
 
-/// Heads, flows and shut one-way lines: what the iterations write.
-#[derive(Clone, Debug)]
-pub(super) struct State {
-    /// Per node, m.
-    pub heads: Vec<f64>,
-    /// Per line, m3/s.
-    pub flows: Vec<f64>,
-    /// Per line: a live one-way line that is held shut.
-    pub shut: Vec<bool>,
-    /// Nothing is known of the flows in passive lines: what stands there is a size without a direction.
-    pub cold: bool,
-}
-
 pub(super) struct System<'n> {
     pub network: &'n Network,
     pub laws: Laws<'n>,
@@ -114,6 +102,8 @@ pub(super) struct System<'n> {
     queue: Vec<u32>,
     was_live: Vec<bool>,
     pub throttles: Throttles,
+    /// Counts the changes of roles and lifts.
+    pub layout: u64,
 }
 
 impl<'n> System<'n> {
@@ -166,6 +156,7 @@ impl<'n> System<'n> {
             queue: Vec::with_capacity(n),
             was_live: vec![false; m],
             throttles: Throttles::new(network),
+            layout: 0,
         }
     }
 
@@ -180,20 +171,22 @@ impl<'n> System<'n> {
         }
     }
 
-    /// Lays the equations out for these settings and puts what is known into `state`. Allocates nothing.
+    /// Lays the equations out for these settings and puts what is known into `state`. Allocates nothing. `network` is
+    /// the system's own, or one of the same nodes, lines and parts with other figures.
     ///
     /// # Errors
     /// A draw or inflow that no flow can satisfy.
-    pub fn prepare(&mut self, settings: &Settings, state: &mut State) -> Result<(), Unreachable> {
-        let changed = self.reach.update(self.network, settings)?;
-        self.laws.set(self.network, settings, None);
+    pub fn prepare(
+        &mut self,
+        network: &Network,
+        settings: &Settings,
+        state: &mut State,
+    ) -> Result<(), Unreachable> {
+        let changed = self.reach.update(network, settings)?;
+        self.laws.set(self.network, network, settings, None);
         let mut lifted = false;
         for line in self.network.line_ids() {
-            let above = |end| {
-                self.network
-                    .above_surface(line, end, settings)
-                    .unwrap_or(0.0)
-            };
+            let above = |end| network.above_surface(line, end, settings).unwrap_or(0.0);
             let base = above(End::From) - above(End::To);
             let lift = self.throttles.lift(line, base);
             lifted |= lift != std::mem::replace(&mut self.lift[line.index()], lift);
@@ -204,7 +197,7 @@ impl<'n> System<'n> {
             };
         }
         for node in self.network.node_ids() {
-            let head = self.network.fixed_head(node, settings);
+            let head = network.fixed_head(node, settings);
             self.held[node.index()] = head.is_some();
             self.fixed[node.index()] = head.is_some();
             let draw = if head.is_some() {
@@ -230,6 +223,7 @@ impl<'n> System<'n> {
             self.strip_leaves(state);
         }
         if changed || lifted {
+            self.layout += 1;
             self.gather_live();
         }
         self.fold_leaves(state);

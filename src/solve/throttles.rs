@@ -111,6 +111,12 @@ impl Throttles {
         }
     }
 
+    /// The first line to whose loss a part adds; none if all parts stand wide open or shut.
+    pub fn first_that_adds(&self) -> Option<LineId> {
+        let adds = self.extra.iter().position(|extra| *extra > 0.0)?;
+        Some(LineId(self.lines[adds] as u32))
+    }
+
     /// The unit of a line.
     #[inline]
     pub fn unit_of(&self, line: usize) -> Option<usize> {

@@ -12,4 +12,5 @@ pub mod sets;
 pub mod shutoff;
 pub mod starts;
 pub mod threshold;
+pub mod tolerance;
 pub mod worked;

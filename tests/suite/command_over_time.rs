@@ -173,3 +173,31 @@ fn what_cannot_be_run_is_told() {
     let (code, _, why) = dutybank(&["compare", MEADOW, "--weights", "luck=1"]);
     assert!(code == Some(2) && why.contains("spilled"), "{why}");
 }
+
+/// Two tanks joined by a wide pipe come level and stay so for a day: no explicit step rests there. Invented.
+#[test]
+fn tanks_that_have_come_level_stay_level() {
+    let file = r#"
+nodes:
+  a: {tank: {floor: 0 m, depth: 5 m, area: 20 m2, level: 4 m, inflow: 20 m3/h}}
+  b: {tank: {floor: 0 m, depth: 5 m, area: 5 m2, level: 1 m}}
+  out: {outlet: 0 m}
+lines:
+  link: {from: a, to: b, pipe: {length: 5 m, bore: 500 mm, roughness: 0.1 mm}}
+  drain: {from: b, to: out, pipe: {length: 50 m, bore: 60 mm, roughness: 0.1 mm}}
+shift: {starts: "00:00", lasts: 24 h}
+"#;
+    let output = assert_cmd::Command::cargo_bin("dutybank")
+        .unwrap()
+        .args(["shift", "-", "--json"])
+        .write_stdin(file)
+        .output()
+        .unwrap();
+    assert!(output.status.success());
+    let told: serde_json::Value = serde_json::from_slice(&output.stdout).unwrap();
+    let level = |tank: &str| told["tanks"][tank]["end_level"].as_f64().unwrap();
+    assert!((level("a") - level("b")).abs() < 1e-4);
+    // highest of b: nothing overshoots the level that both come to
+    assert!(told["tanks"]["b"]["highest"].as_f64().unwrap() < 3.9);
+    assert!(told["balance"]["volume_error"].as_f64().unwrap() < 1e-9);
+}

@@ -346,6 +346,7 @@ impl Maker {
             } else {
                 random.between(0.0, 0.3)
             },
+            ..PumpSetting::NEW
         };
         let when_stopped = random
             .chance(stopped_open)

@@ -113,6 +113,10 @@ fn files(folder: &str, endings: &[&str]) -> Vec<Source> {
         };
         for entry in entries {
             let path = entry.unwrap().path();
+            // what the browser tests install is not ours
+            if path.ends_with("node_modules") {
+                continue;
+            }
             if path.is_dir() {
                 folders.push(path);
             } else if path

@@ -91,6 +91,7 @@ impl Lowering<'_> {
             speed,
             trim,
             wear: pump.wear,
+            ..PumpSetting::NEW
         };
         let pump = Pump {
             name,
