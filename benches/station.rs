@@ -8,6 +8,7 @@ use dutybank::network::{Network, NetworkBuilder, NodeKind, PumpSetting};
 use dutybank::part::Part;
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
+use dutybank::part::pump::performance::Scaling;
 use dutybank::part::pump::{PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 
@@ -47,6 +48,7 @@ pub fn station() -> Network {
         best_efficiency_flow: Some(0.07),
         motor: None,
         drive: None,
+        scaling: Scaling::default(),
     });
     for (k, &d) in d.iter().enumerate() {
         let setting = PumpSetting {

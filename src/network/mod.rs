@@ -15,6 +15,7 @@ pub use reach::{Passage, Reach, Standing, Unreachable};
 pub use settings::{CheckCondition, PumpSetting, Settings, TankMode, ValveSetting};
 
 use crate::fluid::Fluid;
+use crate::part::pump::performance::{Condition, Performance};
 use crate::part::pump::{Covers, Pump, PumpModel};
 use crate::part::valve::Valve;
 use crate::part::{Part, PumpId, ValveId};
@@ -233,6 +234,18 @@ impl Network {
     /// A pump's model.
     pub fn model(&self, id: PumpId) -> &PumpModel {
         &self.models[self.pump(id).model]
+    }
+
+    /// What a pump does when it runs under these settings, as a function of its flow.
+    pub fn performance(&self, id: PumpId, settings: &Settings) -> Performance<'_> {
+        let setting = settings.pump(id);
+        let condition = Condition {
+            speed: setting.speed,
+            trim: setting.trim,
+            wear: setting.wear,
+            leakage: setting.leakage,
+        };
+        Performance::new(self.model(id), condition, self.fluid.kinematic_viscosity)
     }
 
     /// The line a pump stands in.

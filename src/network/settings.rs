@@ -13,6 +13,8 @@ pub struct PumpSetting {
     pub trim: f64,
     /// Share of the head lost to wear, 0 to below 1.
     pub wear: f64,
+    /// Flow that runs back inside at best efficiency, over best-efficiency flow, 0 to below 1.
+    pub leakage: f64,
 }
 
 impl PumpSetting {
@@ -22,6 +24,7 @@ impl PumpSetting {
         speed: 1.0,
         trim: 1.0,
         wear: 0.0,
+        leakage: 0.0,
     };
 
     /// Speed ratio times trim ratio: the one ratio of the affinity laws.

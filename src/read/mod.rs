@@ -7,6 +7,7 @@
 //! Touches no file: what a system file names is fetched by a function that the caller gives.
 
 mod changes;
+mod condition;
 mod context;
 mod edit;
 mod known;
@@ -19,6 +20,7 @@ mod nodes;
 mod over_time;
 mod parts;
 mod references;
+mod scaling;
 mod schedules;
 mod site;
 mod spec;

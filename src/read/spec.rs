@@ -3,6 +3,7 @@
 use crate::diagnostic::Place;
 use crate::fluid::Fluid;
 use crate::part::curve::Curve;
+use crate::part::pump::performance::Scaling;
 use crate::part::pump::{Efficiency, Motor, PowerCurve};
 use crate::part::quadratic::QuadraticLoss;
 use crate::part::valve::Characteristic;
@@ -140,6 +141,7 @@ pub(super) struct PumpSpec {
     pub speed: Option<Placed<SpeedValue>>,
     pub impeller: Option<Placed<f64>>,
     pub wear: f64,
+    pub leakage: Option<Placed<f64>>,
     pub running: bool,
     pub when_stopped: Option<LossSpec>,
 }
@@ -155,6 +157,7 @@ pub(super) struct ModelSpec {
     pub best_efficiency_flow: Option<f64>,
     pub motor: Option<Motor>,
     pub drive: Option<Efficiency>,
+    pub scaling: Scaling,
 }
 
 #[derive(Clone, Debug)]

@@ -270,10 +270,9 @@ fn pump_cautions(
         return;
     }
     let model = network.model(id);
-    let ratio = pump.speed_ratio;
     match pump.place {
         Place::PastEnd => {
-            let end = ratio * model.end_of_curve();
+            let end = pump.end_of_curve;
             cautions.push(Caution::PastCurve {
                 pump: id,
                 flow: pump.flow,
@@ -281,7 +280,7 @@ fn pump_cautions(
             });
         }
         Place::BeforeStart => {
-            let start = ratio * model.start_of_curve();
+            let start = pump.start_of_curve;
             cautions.push(Caution::BeforeCurve {
                 pump: id,
                 flow: pump.flow,
@@ -404,7 +403,7 @@ pub fn binding_limit(network: &Network, assessment: &Assessment) -> Option<Limit
                 (1.0 - share / high).min(share / low - 1.0),
             );
         }
-        let end = pump.flow / (pump.speed_ratio * network.model(id).end_of_curve());
+        let end = pump.flow / pump.end_of_curve;
         // Past the end nothing else said of the pump is certain: that comes first.
         let beyond = if end > 1.0 + 1e-9 { -10.0 } else { 0.0 };
         add(LimitKind::EndOfCurve(end), 1.0 - end + beyond);

@@ -113,10 +113,7 @@ fn end_flow(
     line: LineId,
 ) -> Option<f64> {
     let network = solver.network();
-    let shutoff = |id: &PumpId| {
-        let setting = stopped.pump(*id);
-        (1.0 - setting.wear) * setting.ratio().powi(2) * network.model(*id).shutoff_head()
-    };
+    let shutoff = |id: &PumpId| network.performance(*id, &stopped).head(0.0);
     let shutoff = pumps.iter().map(shutoff).fold(0.0, f64::max);
     let (from, to) = (network.line(line).from, network.line(line).to);
     if !network.is_point(from) && !network.is_point(to) {

@@ -7,6 +7,7 @@ use dutybank::network::{Network, NetworkBuilder, NodeId, NodeKind, PumpSetting, 
 use dutybank::part::Part;
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
+use dutybank::part::pump::performance::Scaling;
 use dutybank::part::pump::{Efficiency, Motor, PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::valve::{Characteristic, Valve};
@@ -327,6 +328,7 @@ impl Maker {
                 efficiency: Some(Efficiency::Fixed(0.92)),
             }),
             drive: None,
+            scaling: Scaling::default(),
         })
     }
 
@@ -345,6 +347,7 @@ impl Maker {
             } else {
                 random.between(0.0, 0.3)
             },
+            leakage: 0.0,
         };
         let when_stopped = random
             .chance(stopped_open)

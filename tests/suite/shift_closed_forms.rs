@@ -5,6 +5,7 @@ use dutybank::fluid::Fluid;
 use dutybank::network::{Network, NetworkBuilder, NodeId, NodeKind, PumpSetting};
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
+use dutybank::part::pump::performance::Scaling;
 use dutybank::part::pump::{PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::{Part, PumpId};
@@ -195,6 +196,7 @@ fn parabolic(net: &mut NetworkBuilder, shutoff: f64, c: f64, end: f64) -> PumpId
         best_efficiency_flow: None,
         motor: None,
         drive: None,
+        scaling: Scaling::default(),
     });
     let pump = Pump {
         name: "pump".to_owned(),
@@ -248,6 +250,7 @@ fn sump(inflow: f64) -> (Network, Shift, Plan) {
         best_efficiency_flow: None,
         motor: None,
         drive: None,
+        scaling: Scaling::default(),
     });
     let pump = Pump {
         name: "pump".to_owned(),
