@@ -2,6 +2,7 @@
 
 use crate::network::Network;
 use crate::part::PumpId;
+use crate::part::pump::viscous::HIGHEST_B;
 use crate::study::assessment::{Caution, Limit, LimitKind, NPSH_MARGIN, PREFERRED_REGION};
 use crate::study::gain::Gain;
 use crate::units::{Kind, UnitSet};
@@ -40,7 +41,8 @@ impl Words<'_> {
             | Caution::Overloaded { pump, .. }
             | Caution::NpshShort { pump, .. }
             | Caution::NpshThin { pump, .. }
-            | Caution::OutsidePreferred { pump, .. } => self.pump(*pump),
+            | Caution::OutsidePreferred { pump, .. }
+            | Caution::ViscousRange { pump, .. } => self.pump(*pump),
             Caution::BelowVapour { node, .. } | Caution::NoHead { node } => {
                 &self.network.node(*node).name
             }
@@ -136,6 +138,11 @@ impl Words<'_> {
                     self.network.node(node).name
                 )
             }
+            Caution::ViscousRange { pump, b } => format!(
+                "the liquid is too thick for {} at this speed: B = {b:.0}, and the correction for viscous liquids is known to {HIGHEST_B:.0} \
+                 (ANSI/HI 9.6.7 as quoted in the trade). Its figures are a guess",
+                self.pump(pump)
+            ),
         }
     }
 

@@ -3,6 +3,7 @@
 //! The one place where figures become a judgement; every command uses it.
 
 use crate::network::{Need, Network, NodeId, NodeKind, Settings, Target};
+use crate::part::pump::viscous::HIGHEST_B;
 use crate::part::{Part, PumpId};
 use crate::solve::operation::{self, LineOperation, NodeOperation, Place, PumpOperation};
 use crate::solve::{Balance, Balances, LineState, Solution};
@@ -89,6 +90,8 @@ pub enum Caution {
     SecondBalance { delivered: f64 },
     /// No fixed head reaches a node.
     NoHead { node: NodeId },
+    /// The liquid is too thick for a pump at this speed: B is past the end of the method.
+    ViscousRange { pump: PumpId, b: f64 },
 }
 
 impl Caution {
@@ -107,6 +110,7 @@ impl Caution {
             Self::BelowVapour { .. } => "below-vapour",
             Self::SecondBalance { .. } => "second-balance",
             Self::NoHead { .. } => "no-head",
+            Self::ViscousRange { .. } => "viscous-range",
         }
     }
 }
@@ -261,6 +265,12 @@ fn pump_cautions(
     }
     if !pump.running {
         return;
+    }
+    if let Some(correction) = pump.viscous.filter(|found| found.b > HIGHEST_B) {
+        cautions.push(Caution::ViscousRange {
+            pump: id,
+            b: correction.b,
+        });
     }
     if pump.flow.abs() <= still {
         cautions.push(match solution.state(network.line_of(id)) {
