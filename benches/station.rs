@@ -8,6 +8,7 @@ use dutybank::network::{Network, NetworkBuilder, NodeKind, PumpSetting};
 use dutybank::part::Part;
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
+use dutybank::part::pump::performance::Scaling;
 use dutybank::part::pump::{PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 
@@ -48,6 +49,7 @@ pub fn station() -> Network {
         motor: None,
         drive: None,
         maker: dutybank::part::pump::MakerLimits::default(),
+        scaling: Scaling::default(),
     });
     for (k, &d) in d.iter().enumerate() {
         let setting = PumpSetting {

@@ -230,12 +230,9 @@ impl NetworkBuilder {
         self.network.limits = limits;
     }
 
-    /// Speed (revolutions per second) and full impeller (m) of a model added before.
-    pub fn model_size(&self, model: usize) -> (Option<f64>, Option<f64>) {
-        self.network
-            .models
-            .get(model)
-            .map_or((None, None), |model| (model.speed, model.impeller))
+    /// A model added before, by its position.
+    pub fn model_at(&self, model: usize) -> Option<&PumpModel> {
+        self.network.models.get(model)
     }
 
     /// Elevation (m) of a node added before; a reservoir's is its surface, a tank's its floor.
@@ -410,6 +407,11 @@ impl NetworkBuilder {
             above_zero(&pump.name, "impeller", setting.trim)?;
             if !(0.0..1.0).contains(&setting.wear) {
                 return Err(out_of_range(&pump.name, "wear", setting.wear));
+            }
+            // Where head rises with flow, so may the leakage, faster than the flow: then no one flow inside fits.
+            let falls = network.covers(id).is_none();
+            if !(0.0..1.0).contains(&setting.leakage) || setting.leakage > 0.0 && !falls {
+                return Err(out_of_range(&pump.name, "leakage", setting.leakage));
             }
         }
         Ok(())

@@ -14,6 +14,7 @@ mod reach;
 mod settings;
 mod spread;
 
+pub use crate::part::pump::performance::AsBuilt;
 pub use build::{BuildError, NetworkBuilder};
 pub use figure::{Figure, PartFigure, Varied};
 pub use limits::{LimitName, Limits, Measure};
@@ -21,11 +22,12 @@ pub use line::{Bell, Line, LineFacts};
 pub use need::{Need, Target};
 pub use reach::{Passage, Reach, Standing, Unreachable};
 pub use settings::{
-    AsBuilt, CheckCondition, PumpSetting, RegulatorSetting, Settings, TankMode, ValveSetting,
+    CheckCondition, PumpSetting, RegulatorSetting, Settings, TankMode, ValveSetting,
 };
 pub use spread::{Shape, Spread};
 
 use crate::fluid::Fluid;
+use crate::part::pump::performance::{Condition, Performance};
 use crate::part::pump::{Covers, Pump, PumpModel};
 use crate::part::regulator::Regulator;
 use crate::part::valve::Valve;
@@ -217,6 +219,29 @@ impl Network {
     /// A pump's model.
     pub fn model(&self, id: PumpId) -> &PumpModel {
         &self.models[self.pump(id).model]
+    }
+
+    /// What a pump does when it runs under these settings, as a function of its flow.
+    pub fn performance(&self, id: PumpId, settings: &Settings) -> Performance<'_> {
+        self.performance_in(id, settings, self.fluid.kinematic_viscosity)
+    }
+
+    /// [`Self::performance`] in a liquid of this kinematic viscosity, m2/s.
+    pub fn performance_in(
+        &self,
+        id: PumpId,
+        settings: &Settings,
+        viscosity: f64,
+    ) -> Performance<'_> {
+        let setting = settings.pump(id);
+        let condition = Condition {
+            speed: setting.speed,
+            trim: setting.trim,
+            wear: setting.wear,
+            leakage: setting.leakage,
+            built: setting.built,
+        };
+        Performance::new(self.model(id), condition, viscosity)
     }
 
     /// The line a pump stands in.

@@ -2,34 +2,7 @@
 
 use super::{LineId, NodeId, PumpId, ValveId};
 use crate::part::RegulatorId;
-use crate::part::curve::Curve;
-use crate::part::pump::PumpLaw;
-
-/// How a pump as built differs from the sheet of its model. With x = q/(flow s): head = head s2 H(x), efficiency = efficiency
-/// E(x), and so shaft power = head flow / efficiency s3 P(x). NPSH required is s2 N(x).
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct AsBuilt {
-    /// Head over that of the sheet, above zero.
-    pub head: f64,
-    /// Flow over that of the sheet, above zero.
-    pub flow: f64,
-    /// Efficiency over that of the sheet, above zero.
-    pub efficiency: f64,
-}
-
-impl AsBuilt {
-    /// As its sheet says.
-    pub const AS_SHEET: Self = Self {
-        head: 1.0,
-        flow: 1.0,
-        efficiency: 1.0,
-    };
-
-    /// Shaft power over that of the sheet.
-    pub fn power(&self) -> f64 {
-        self.head * self.flow / self.efficiency
-    }
-}
+use crate::part::pump::performance::AsBuilt;
 
 /// How a pump is run.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -44,6 +17,8 @@ pub struct PumpSetting {
     pub wear: f64,
     /// How it was built.
     pub built: AsBuilt,
+    /// Flow that runs back inside at best efficiency, over best-efficiency flow, 0 to below 1.
+    pub leakage: f64,
 }
 
 impl PumpSetting {
@@ -54,32 +29,12 @@ impl PumpSetting {
         trim: 1.0,
         wear: 0.0,
         built: AsBuilt::AS_SHEET,
+        leakage: 0.0,
     };
 
     /// Speed ratio times trim ratio: the one ratio of the affinity laws.
     pub fn ratio(&self) -> f64 {
         self.speed * self.trim
-    }
-
-    /// The ratio by which the flows of its curves are scaled: that of the affinity laws times that of its making.
-    pub fn flow_ratio(&self) -> f64 {
-        self.ratio() * self.built.flow
-    }
-
-    /// The law of a pump of this head curve, run like this.
-    pub fn law<'a>(&self, head: &'a Curve) -> PumpLaw<'a> {
-        let AsBuilt { head: f, flow, .. } = self.built;
-        // h = -(1-w) f s2 H(q/(k s)) is the plain law at ratio k s with 1 - w' = (1-w) f/k2
-        let wear = if self.built == AsBuilt::AS_SHEET {
-            self.wear
-        } else {
-            1.0 - (1.0 - self.wear) * f / (flow * flow)
-        };
-        PumpLaw {
-            head,
-            ratio: self.flow_ratio(),
-            wear,
-        }
     }
 }
 

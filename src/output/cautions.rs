@@ -1,6 +1,7 @@
 //! Cautions in sentences.
 
 use super::words::Words;
+use crate::part::pump::viscous::HIGHEST_B;
 use crate::study::caution::{Caution, Heat};
 use crate::study::limit::{About, Limit, LimitKind};
 use crate::units::Kind;
@@ -14,7 +15,8 @@ impl Words<'_> {
             | Caution::Backflow { pump, .. }
             | Caution::BeforeCurve { pump, .. }
             | Caution::FlatCurve { pump, .. }
-            | Caution::Hunting { pump, .. } => self.pump(*pump),
+            | Caution::Hunting { pump, .. }
+            | Caution::ViscousRange { pump, .. } => self.pump(*pump),
             Caution::Beyond(limit) => self.name_of(limit.about),
             Caution::BelowVapour { node, .. } | Caution::NoHead { node } => {
                 &self.network.node(*node).name
@@ -79,6 +81,11 @@ impl Words<'_> {
                 self.pump(pump),
                 flow(q),
                 flow(below)
+            ),
+            Caution::ViscousRange { pump, b } => format!(
+                "the liquid is too thick for {} at this speed: B = {b:.0}, and the correction for viscous liquids is known to {HIGHEST_B:.0} \
+                 (ANSI/HI 9.6.7 as quoted in the trade). Its figures are a guess",
+                self.pump(pump)
             ),
             Caution::BelowVapour { node, pressure } => format!(
                 "pressure at {} is {}: below vapour pressure, where the water column parts and this answer does not hold",

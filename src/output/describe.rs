@@ -300,6 +300,9 @@ impl<'a> Describer<'a> {
                 if setting.wear > 0.0 {
                     text.push_str(&format!(" worn {:.1} %", 100.0 * setting.wear));
                 }
+                if setting.leakage > 0.0 {
+                    text.push_str(&format!(" leaking {:.1} %", 100.0 * setting.leakage));
+                }
                 if !setting.running {
                     text.push_str(" (stopped)");
                 }

@@ -1,5 +1,8 @@
 //! Centrifugal pumps: a model's curves, and what they become at another speed, trim and wear.
 
+pub mod performance;
+pub mod viscous;
+
 use super::curve::{Cover, Curve, CurvePoint};
 use super::quadratic::QuadraticLoss;
 use super::{HeadLaw, HeadLoss};
@@ -25,6 +28,8 @@ pub struct PumpModel {
     pub motor: Option<Motor>,
     /// Efficiency of a variable-speed drive over the speed ratio; none: no drive.
     pub drive: Option<Efficiency>,
+    /// How the curves carry over to other speeds, impellers and liquids.
+    pub scaling: performance::Scaling,
     /// Limits that the maker states.
     pub maker: MakerLimits,
 }
@@ -230,6 +235,7 @@ mod tests {
             }),
             drive: over(&[0.6, 0.8, 1.0], &[0.93, 0.96, 0.97]),
             maker: MakerLimits::default(),
+            scaling: performance::Scaling::default(),
         };
         let power = model.electrical_power(10e3, 0.8).unwrap();
         assert!((power - 10e3 / (0.9 * 0.96)).abs() < 1e-9);

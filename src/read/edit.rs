@@ -33,6 +33,7 @@ pub(super) fn part_keys(kind: &str) -> &'static [&'static str] {
             "speed",
             "impeller",
             "wear",
+            "leakage",
             "running",
             "when_stopped",
         ],

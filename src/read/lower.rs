@@ -136,6 +136,7 @@ impl Lowering<'_> {
                 motor: model.motor,
                 drive: model.drive,
                 maker: model.maker,
+                scaling: model.scaling,
             });
             self.models.insert(model.name, position);
         }

@@ -45,6 +45,7 @@
 //! Touches no file: what a system file names is fetched by a function that the caller gives.
 
 mod changes;
+mod condition;
 mod context;
 mod edit;
 mod known;
@@ -59,6 +60,7 @@ mod over_time;
 mod parts;
 mod references;
 mod regulators;
+mod scaling;
 mod schedules;
 mod site;
 mod spec;

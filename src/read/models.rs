@@ -2,11 +2,13 @@
 
 use super::context::{Bound, Context, Fields, found};
 use super::limits::MAKER_KEYS;
+use super::scaling;
 use super::spec::{ModelSpec, SiteSpec};
 use super::table::{self, Load};
 use super::yaml::{Form, Key, Marked};
 use crate::diagnostic::{Diagnostic, Place};
 use crate::part::curve::{Curve, Polynomial};
+use crate::part::pump::performance::Scaling;
 use crate::part::pump::{Efficiency, Motor, PowerCurve};
 use crate::units::{Kind, SpeedValue};
 
@@ -64,7 +66,8 @@ fn model(
 ) -> Option<ModelSpec> {
     super::names::check(cx, key, "pump model");
     let what = format!("pump model `{}`", key.name);
-    let fields = cx.map(node, &what, &MODEL_KEYS)?;
+    let keys: Vec<&str> = MODEL_KEYS.into_iter().chain(scaling::KEYS).collect();
+    let fields = cx.map(node, &what, &keys)?;
     let speed = fields.get("speed").map(|node| speed(cx, node, &what));
     let impeller = fields.get("impeller").map(|node| {
         cx.quantity(
@@ -97,7 +100,7 @@ fn model(
         &what,
     );
     let best_efficiency_flow = best_efficiency_flow(&columns, &head, site);
-    Some(ModelSpec {
+    let mut model = ModelSpec {
         name: key.name.clone(),
         speed: speed.flatten(),
         impeller: impeller.flatten(),
@@ -108,7 +111,10 @@ fn model(
         motor: motor.flatten(),
         drive: drive.flatten(),
         maker,
-    })
+        scaling: Scaling::default(),
+    };
+    model.scaling = scaling::scaling(cx, site, &fields, &model, key.place)?;
+    Some(model)
 }
 
 fn speed(cx: &mut Context, node: &Marked, what: &str) -> Option<f64> {

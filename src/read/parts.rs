@@ -372,6 +372,7 @@ fn pump(cx: &mut Context, site: &SiteSpec, what: &str, node: &Marked) -> Option<
         "speed",
         "impeller",
         "wear",
+        "leakage",
         "running",
         "name",
         "when_stopped",
@@ -412,6 +413,13 @@ fn pump(cx: &mut Context, site: &SiteSpec, what: &str, node: &Marked) -> Option<
         ),
         None => Some(0.0),
     };
+    let leakage = fields.get("leakage").map(|node| {
+        let label = format!("`leakage` of {what}");
+        Some(Placed {
+            value: cx.quantity(node, &label, Kind::Percent, Bound::ShareBelowOne)?,
+            place: node.place,
+        })
+    });
     let running = match fields.get("running") {
         Some(node) => cx.boolean(node, format_args!("`running` of {what}")),
         None => Some(true),
@@ -447,6 +455,7 @@ fn pump(cx: &mut Context, site: &SiteSpec, what: &str, node: &Marked) -> Option<
         speed: transposed(speed)?,
         impeller: transposed(impeller)?,
         wear: wear?,
+        leakage: transposed(leakage)?,
         running: running?,
         when_stopped: transposed(when_stopped)?,
     })

@@ -68,9 +68,19 @@ pub(super) fn site(cx: &mut Context, fluid: Option<&Marked>, site: Option<&Marke
     if let Some(found) = fluid.and_then(|node| read_fluid(cx, node)) {
         spec.fluid = found;
     }
-    let Some(node) = site else { return spec };
+    if let Some(node) = site {
+        place(cx, &mut spec, node);
+    }
+    if let Some(node) = fluid {
+        judge_liquid(cx, &spec, node);
+    }
+    spec
+}
+
+/// `site`: gravity and air pressure.
+fn place(cx: &mut Context, spec: &mut SiteSpec, node: &Marked) {
     let Some(fields) = cx.map(node, "`site`", &["elevation", "barometer", "gravity"]) else {
-        return spec;
+        return;
     };
     if let Some(node) = fields.get("gravity") {
         let gravity = cx.quantity(node, "`gravity`", Kind::Acceleration, Bound::Positive);
@@ -108,7 +118,38 @@ pub(super) fn site(cx: &mut Context, fluid: Option<&Marked>, site: Option<&Marke
         }
         (None, None) => {}
     }
-    spec
+}
+
+/// Densities (kg/m3) between which every ordinary liquid lies, from liquefied petroleum gas to mercury: common practice, no source.
+const DENSITIES: (f64, f64) = (400.0, 14_000.0);
+
+/// A liquid that looks like a slip of the pen, and one that boils where it stands open to the air.
+fn judge_liquid(cx: &mut Context, spec: &SiteSpec, node: &Marked) {
+    let fluid = &spec.fluid;
+    if !(DENSITIES.0..=DENSITIES.1).contains(&fluid.density) {
+        let density = cx.units.format(Kind::Density, fluid.density);
+        let message = format!("a liquid of {density} is unlike any in ordinary use");
+        let help = "check the number and its unit, for example `density: 870 kg/m3`";
+        cx.push(Diagnostic::caution("unlikely-density", node.place, message).help(help));
+    }
+    match fluid.vapour_pressure {
+        None => {
+            let message = "the liquid has no `vapour_pressure`: neither NPSH available nor boiling can be judged";
+            let help = "add the absolute vapour pressure at its temperature, for example `vapour_pressure: 2 kPa`";
+            cx.push(Diagnostic::caution("no-vapour-pressure", node.place, message).help(help));
+        }
+        Some(vapour) if vapour >= spec.barometer => {
+            let pressure = |p| cx.units.format(Kind::Pressure, p);
+            let message = format!(
+                "the liquid boils where it is open to the air: vapour pressure {}, air pressure {}",
+                pressure(vapour),
+                pressure(spec.barometer)
+            );
+            let help = "reservoirs and tanks must then be closed and under pressure; both pressures are absolute";
+            cx.push(Diagnostic::caution("boils", node.place, message).help(help));
+        }
+        Some(_) => {}
+    }
 }
 
 fn read_fluid(cx: &mut Context, node: &Marked) -> Option<Fluid> {

@@ -4,6 +4,7 @@ use crate::diagnostic::Place;
 use crate::fluid::Fluid;
 use crate::network::{Bell, Limits};
 use crate::part::curve::Curve;
+use crate::part::pump::performance::Scaling;
 use crate::part::pump::{Efficiency, MakerLimits, Motor, PowerCurve};
 use crate::part::quadratic::QuadraticLoss;
 use crate::part::valve::Characteristic;
@@ -170,6 +171,7 @@ pub(super) struct PumpSpec {
     pub speed: Option<Placed<SpeedValue>>,
     pub impeller: Option<Placed<f64>>,
     pub wear: f64,
+    pub leakage: Option<Placed<f64>>,
     pub running: bool,
     pub when_stopped: Option<LossSpec>,
 }
@@ -186,6 +188,7 @@ pub(super) struct ModelSpec {
     pub motor: Option<Motor>,
     pub drive: Option<Efficiency>,
     pub maker: MakerLimits,
+    pub scaling: Scaling,
 }
 
 #[derive(Clone, Debug)]

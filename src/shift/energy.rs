@@ -5,24 +5,17 @@ use crate::network::{Network, Settings};
 use crate::part::PumpId;
 
 /// Shaft power of a running pump at flow `q` (m3/s) in its line, W; 0 when it stands.
-///
-/// P = s3 P(q/s), s = speed ratio x trim ratio; wear leaves it as it is.
 pub(super) fn shaft_power(
     network: &Network,
     settings: &Settings,
     id: PumpId,
     q: f64,
 ) -> Option<f64> {
-    let setting = settings.pump(id);
-    if !setting.running {
+    if !settings.pump(id).running {
         return Some(0.0);
     }
-    let s = setting.ratio();
-    let fluid = network.fluid();
-    let power = network
-        .model(id)
-        .shaft_power(q / s, fluid.density, network.gravity())?;
-    Some(s.powi(3) * power)
+    let performance = network.performance(id, settings);
+    performance.shaft_power(q, network.fluid().density, network.gravity())
 }
 
 /// What electricity costs.

@@ -86,8 +86,7 @@ impl Tally {
             }
         }
         for pump in plant.network.pump_ids() {
-            let setting = plant.settings.pump(pump);
-            if !setting.running {
+            if !plant.settings.pump(pump).running {
                 continue;
             }
             let tally = &mut self.pumps[pump.index()];
@@ -98,7 +97,11 @@ impl Tally {
             let model = plant.network.model(pump);
             let place = plant.books.pumped(pump.index());
             let (a, b) = (step.first()[place], step.last()[place]);
-            let (a, b) = (a / setting.ratio(), (a + theta * (b - a)) / setting.ratio());
+            let performance = plant.network.performance(pump, &plant.settings);
+            let (a, b) = (
+                performance.on_curve(a),
+                performance.on_curve(a + theta * (b - a)),
+            );
             // At the end but for rounding is on the curve.
             let end = model.end_of_curve() * (1.0 + 1e-9);
             tally.past_end += length * share_above(a, b, end);

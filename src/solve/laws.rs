@@ -3,7 +3,7 @@
 use crate::network::{Network, Settings};
 use crate::part::curve::Cover;
 use crate::part::friction::{DarcyWeisbachBatch, Friction};
-use crate::part::pump::PumpLaw;
+use crate::part::pump::performance::Performance;
 use crate::part::quadratic::QuadraticLoss;
 use crate::part::{HeadLaw, HeadLoss, Part};
 
@@ -11,7 +11,7 @@ use crate::part::{HeadLaw, HeadLoss, Part};
 #[derive(Clone, Copy, Debug)]
 enum Term<'n> {
     HazenWilliams(Friction),
-    Pump { law: PumpLaw<'n>, running: bool },
+    Pump { law: Performance<'n>, running: bool },
 }
 
 /// The laws of all lines of a network under one set of settings.
@@ -91,11 +91,7 @@ impl<'n> Laws<'n> {
             Part::Loss(loss) | Part::CheckValve(loss) => self.fixed_r[line] += loss.r(),
             Part::Regulator(id) => self.fixed_r[line] += network.regulator(*id).wide_open.r(),
             Part::Pump(id) => {
-                let law = PumpLaw {
-                    head: &network.model(*id).head,
-                    ratio: 1.0,
-                    wear: 0.0,
-                };
+                let law = network.performance(*id, network.settings());
                 self.pump_terms[id.index()] = self.terms.len() as u32;
                 self.terms.push(Term::Pump {
                     law,
@@ -157,10 +153,11 @@ impl<'n> Laws<'n> {
             if let (false, Some(standing)) = (setting.running, network.pump(id).when_stopped) {
                 self.r[network.line_of(id).index()] += standing.r();
             }
-            let head = cover
-                .and_then(|cover| curves.covers(id).map(|covers| covers.get(cover)))
-                .unwrap_or(&curves.model(id).head);
-            let law = setting.law(head);
+            let viscosity = network.fluid().kinematic_viscosity;
+            let mut law = curves.performance_in(id, settings, viscosity);
+            if let Some((cover, covers)) = cover.zip(curves.covers(id)) {
+                law = law.with_head(covers.get(cover));
+            }
             self.terms[self.pump_terms[id.index()] as usize] = Term::Pump {
                 law,
                 running: setting.running,
@@ -219,10 +216,10 @@ pub(crate) fn ordinary_flow(network: &Network, settings: &Settings, line: usize)
     let line = &network.lines()[line];
     if let Some(id) = line.pumps().find(|id| settings.pump(*id).running) {
         let model = network.model(id);
-        return settings.pump(id).ratio()
-            * model
-                .best_efficiency_flow
-                .unwrap_or(0.7 * model.end_of_curve());
+        let ordinary = model
+            .best_efficiency_flow
+            .unwrap_or(0.7 * model.end_of_curve());
+        return network.performance(id, settings).delivered(ordinary);
     }
     line.narrowest_bore().map_or(FLOW, |bore| {
         VELOCITY * std::f64::consts::FRAC_PI_4 * bore * bore
@@ -242,7 +239,7 @@ pub fn part_loss(network: &Network, settings: &Settings, part: &Part, q: f64) ->
         Part::Pump(id) => {
             let setting = settings.pump(*id);
             if setting.running {
-                setting.law(&network.model(*id).head).loss(q)
+                network.performance(*id, settings).loss(q)
             } else {
                 network
                     .pump(*id)

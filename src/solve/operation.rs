@@ -3,7 +3,8 @@
 pub use super::laws::part_loss;
 use super::{LineState, Solution};
 use crate::network::{LineId, Network, NodeId, Settings};
-use crate::part::pump::{PowerCurve, PumpModel};
+use crate::part::pump::PumpModel;
+use crate::part::pump::viscous::Correction;
 use crate::part::regulator::{Regulates, RegulatorState};
 use crate::part::{Part, PumpId, RegulatorId};
 
@@ -73,6 +74,12 @@ pub struct PumpOperation {
     pub share_of_bep: Option<f64>,
     /// Where on its curve it runs.
     pub place: Place,
+    /// Flow delivered at the start of its curve, m3/s.
+    pub start_of_curve: f64,
+    /// Flow delivered at the end of its curve, m3/s.
+    pub end_of_curve: f64,
+    /// What the liquid does to its curves; none where it does nothing.
+    pub viscous: Option<Correction>,
 }
 
 /// Where a pump stands relative to the flows its curve was given for.
@@ -182,8 +189,8 @@ fn before(network: &Network, id: PumpId) -> impl Iterator<Item = &Part> {
 
 /// What a pump does.
 ///
-/// With s = speed ratio x trim ratio: head (1-wear) s2 H(q/s), NPSH required s2 N(q/s), shaft power s3 P(q/s) whatever the
-/// wear, efficiency = density g q head / shaft power; what a pump as built changes of it is in [`crate::network::AsBuilt`]. NPSH available = (barometer - vapour pressure)/(density g) + head
+/// Head, power, efficiency and NPSH required as in [`crate::part::pump::performance::Performance`]; NPSH available =
+/// (barometer - vapour pressure)/(density g) + head
 /// at its inlet - its elevation.
 pub fn pump(
     network: &Network,
@@ -213,6 +220,9 @@ pub fn pump_at(
     let weight = network.fluid().density * network.gravity();
     let elevation = network.pump(id).elevation;
     let suction_pressure = suction_head.map(|head| weight * (head - elevation));
+    let performance = network.performance(id, settings);
+    let start_of_curve = performance.delivered(model.start_of_curve());
+    let end_of_curve = performance.delivered(model.end_of_curve());
     if !setting.running {
         return PumpOperation {
             running: false,
@@ -228,31 +238,24 @@ pub fn pump_at(
             npsh_required: None,
             share_of_bep: None,
             place: Place::OnCurve,
+            start_of_curve,
+            end_of_curve,
+            viscous: None,
         };
     }
-    let s = setting.ratio();
-    let built = setting.built;
-    let q = flow / setting.flow_ratio();
-    let head = (1.0 - setting.wear) * built.head * s * s * model.head.at(q).value;
-    let shaft_power = model
-        .shaft_power(q, network.fluid().density, network.gravity())
-        .map(|power| s.powi(3) * built.power() * power);
+    let (density, gravity) = (network.fluid().density, network.gravity());
+    let on_curve = performance.on_curve(flow);
+    let shaft_power = performance.shaft_power(flow, density, gravity);
     let air_head = |vapour: f64| (network.barometer() - vapour) / weight;
     let npsh_available = suction_head
         .zip(network.fluid().vapour_pressure)
         .map(|(head, vapour)| air_head(vapour) + head - elevation);
     PumpOperation {
         running: true,
-        speed_ratio: s,
+        speed_ratio: setting.ratio(),
         flow,
-        head: Some(head),
-        efficiency: efficiency(
-            model,
-            q,
-            weight * flow * head,
-            shaft_power,
-            (1.0 - setting.wear) * built.efficiency,
-        ),
+        head: Some(performance.head(flow)),
+        efficiency: performance.efficiency(flow, density, gravity),
         shaft_power,
         electrical_power: shaft_power
             .and_then(|power| model.electrical_power(power, setting.speed)),
@@ -261,12 +264,12 @@ pub fn pump_at(
             .map(|(power, motor)| power / motor.rated),
         suction_pressure,
         npsh_available,
-        npsh_required: model
-            .npsh_required
-            .as_ref()
-            .map(|curve| s * s * curve.at(q).value),
-        share_of_bep: model.best_efficiency_flow.map(|bep| q / bep),
-        place: place(model, q),
+        npsh_required: performance.npsh_required(flow),
+        share_of_bep: model.best_efficiency_flow.map(|bep| on_curve / bep),
+        place: place(model, on_curve),
+        start_of_curve,
+        end_of_curve,
+        viscous: performance.correction().copied(),
     }
 }
 
@@ -279,25 +282,6 @@ fn place(model: &PumpModel, q: f64) -> Place {
         Place::BeforeStart
     } else {
         Place::OnCurve
-    }
-}
-
-/// Efficiency from its own column, worn; or from the power column, as hydraulic over shaft power.
-fn efficiency(
-    model: &PumpModel,
-    q: f64,
-    hydraulic_power: f64,
-    shaft_power: Option<f64>,
-    kept: f64,
-) -> Option<f64> {
-    match &model.power {
-        PowerCurve::Unknown => None,
-        PowerCurve::Efficiency(curve) => {
-            Some(kept * curve.at(q).value).filter(|efficiency| *efficiency >= 0.0)
-        }
-        PowerCurve::Shaft(_) => shaft_power
-            .filter(|power| *power > 0.0)
-            .map(|power| hydraulic_power / power),
     }
 }
 

@@ -3,6 +3,7 @@
 use super::limit::{Limit, LimitKind, STILL};
 use crate::network::{LimitName, Network, NodeId, NodeKind};
 use crate::part::PumpId;
+use crate::part::pump::viscous::HIGHEST_B;
 use crate::solve::operation::{NodeOperation, Place, PumpOperation};
 use crate::solve::{LineState, Solution};
 
@@ -23,6 +24,8 @@ pub enum Caution {
     FlatCurve { pump: PumpId, rise: f64, asked: f64 },
     /// A pump beside others in the range where its drooping curve gives the same head at two flows.
     Hunting { pump: PumpId, flow: f64, below: f64 },
+    /// The liquid is too thick for a pump at this speed: B is past the end of the correction for viscous liquids.
+    ViscousRange { pump: PumpId, b: f64 },
     /// Pressure below vapour pressure: the water column parts, and the answer does not hold.
     BelowVapour { node: NodeId, pressure: f64 },
     /// Another balance exists near this one.
@@ -59,6 +62,7 @@ impl Caution {
             Self::Beyond(limit) => limit.kind.code(),
             Self::FlatCurve { .. } => "flat-curve",
             Self::Hunting { .. } => "hunting",
+            Self::ViscousRange { .. } => "viscous-range",
             Self::BelowVapour { .. } => "below-vapour",
             Self::SecondBalance { .. } => "second-balance",
             Self::NoHead { .. } => "no-head",
@@ -94,6 +98,12 @@ fn of_pump(
     found: &mut Vec<Caution>,
 ) {
     let flow = pump.flow;
+    if let Some(correction) = pump.viscous.filter(|correction| correction.b > HIGHEST_B) {
+        found.push(Caution::ViscousRange {
+            pump: id,
+            b: correction.b,
+        });
+    }
     if flow < -STILL {
         found.push(Caution::Backflow { pump: id, flow });
     } else if pump.running && flow <= STILL {
@@ -103,7 +113,7 @@ fn of_pump(
             _ => Caution::DeadHeaded { pump: id, heat },
         });
     } else if pump.running && pump.place == Place::BeforeStart {
-        let start = pump.speed_ratio * network.model(id).start_of_curve();
+        let start = pump.start_of_curve;
         found.push(Caution::BeforeCurve {
             pump: id,
             flow,

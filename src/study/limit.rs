@@ -251,7 +251,7 @@ fn running_pump(network: &Network, id: PumpId, pump: &PumpOperation, judge: &mut
     judge.add(
         LimitKind::EndOfCurve,
         pump.flow,
-        s * model.end_of_curve(),
+        pump.end_of_curve,
         Says::Curve,
     );
     if let Some(least) = network.minimum_flow(id) {

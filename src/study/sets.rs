@@ -28,7 +28,7 @@ fn interchangeable(network: &Network, settings: &Settings, a: PumpId, b: PumpId)
     let one_pump = |line| network.line(line).pumps().count() == 1;
     let same_setting = {
         let (a, b) = (settings.pump(a), settings.pump(b));
-        (a.speed, a.trim, a.wear) == (b.speed, b.trim, b.wear)
+        (a.speed, a.trim, a.wear, a.leakage) == (b.speed, b.trim, b.wear, b.leakage)
     };
     bank.is_some_and(|bank| bank.lines.contains(&line_b))
         && one_pump(line_a)

@@ -107,6 +107,53 @@ class Pump:
         return -kept * self.ratio**2 * value, -kept * self.ratio * slope
 
 
+class Viscosity:
+    """Factors for a viscous liquid by ANSI/HI 9.6.7, ISO/TR 17766: nu m2/s, at best efficiency q m3/s, h m a stage, n rpm, npsh m or None."""
+
+    def __init__(self, nu, q, h, n, npsh, a):
+        q *= 3600
+        b = 16.5 * sqrt(nu * 1e6) * h**0.0625 / (q**0.375 * n**0.25)
+        self.q = 2.71 ** (-0.165 * log10(b) ** 3.15) if b > 1 else 1.0
+        self.eta = b ** (-0.0547 * b**0.69) if b > 1 else 1.0
+        self.npsh = 1 + a * (1 / self.q - 1) * 274000 * npsh / (q**0.667 * n**1.33) if npsh is not None else 1.0
+
+    def head(self, x):
+        """C_H and its slope at a share x of best-efficiency flow; below 2 % x^0.75 is rounded off as the program documents it."""
+        if x < 0.02:
+            t = x / 0.02
+            return 1 - (1 - self.q) * 0.02**0.75 * (1.25 - 0.25 * t) * t, -(1 - self.q) * 0.02**-0.25 * (1.25 - 0.5 * t)
+        return 1 - (1 - self.q) * x**0.75, -0.75 * (1 - self.q) * x**-0.25
+
+
+class AlteredPump:
+    """At flow x of the model's curves: h = (1 - wear) s2 C_H H(x), out go q = F C_Q x - leak sqrt(h / h_best), h above 0."""
+
+    def __init__(self, head, ratio, wear, flow_ratio, factors, best, leakage):
+        self.head, self.ratio, self.wear, self.factors = head, ratio, wear, factors
+        self.flow = flow_ratio * factors.q
+        self.power = flow_ratio * ratio**2
+        self.best = best
+        self.leak = leakage * best / sqrt(head.at(best)[0])
+
+    def over(self, x):
+        end = min(max(x, 0.0), self.head.high)
+        value, slope = self.head.at(end)
+        factor, bend = self.factors.head(end / self.best)
+        kept = (1 - self.wear) * self.ratio**2
+        slope = kept * (factor * slope + bend / self.best * value)
+        return kept * factor * value + slope * (x - end), slope
+
+    def inside(self, q):
+        root = lambda h: copysign(sqrt(abs(h)), h)
+        out = lambda x: self.flow * x - self.leak * root(self.over(x)[0]) - q
+        x = q / self.flow
+        return x if self.leak == 0 else brentq(out, x - 9 * self.best, x + 9 * self.best, xtol=1e-16, rtol=1e-15)
+
+    def loss(self, q):
+        h, slope = self.over(self.inside(q))
+        return -h, -slope / (self.flow - 0.5 * self.leak / sqrt(abs(h)) * slope)
+
+
 def minor(k, bore, gravity):
     return Quadratic(k / (2 * gravity * (pi * bore**2 / 4) ** 2))
 

@@ -40,7 +40,7 @@ KEYS = {
     "valve": {"k", "kv", "cv", "bore", "open", "opening", "characteristic"},
     "check_valve": {"k", "kv", "cv", "bore", "opening", "characteristic"},
     "equipment": {"loss", "at"},
-    "pump": {"model", "elevation", "speed", "impeller", "wear", "running", "name", "when_stopped"},
+    "pump": {"model", "elevation", "speed", "impeller", "wear", "leakage", "running", "name", "when_stopped"},
 }
 WALL = ("roughness", "material", "c_factor", "friction_factor")
 
@@ -113,8 +113,9 @@ class System:
         """`NAME.key`, `NAME.PART.key`; NAME a node, line, bank, member, pump, model, `fluid` or `site`."""
         *path, key = target
         if path[0] in ("fluid", "site"):
+            fluid = self.file.get("fluid", {"water": "20 C"})
             if path[0] == "fluid":
-                self.file["fluid"] = {key: value}
+                self.file["fluid"] = {key: value} if "water" in fluid or key == "water" else {**fluid, key: value}
             else:
                 self.file.setdefault("site", {})[key] = value
             return

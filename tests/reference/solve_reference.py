@@ -106,11 +106,37 @@ class Line:
             if name in curve
         }
         wear = system.number(body.get("wear", 0), "share")
+        leakage = system.number(body.get("leakage", 0), "share")
         law = laws.Pump(head, ratio, wear)
+        if model.get("viscous") == "corrected" or leakage or "trim_exponent" in model:
+            law = self.altered(body, model, law, columns, flow[int(np.argmax(curve["efficiency"]))], leakage)
         name = System.pump_name(self.name, spec, body)
         elevation = system.number(body["elevation"], "length") if "elevation" in body else None
         self.pumps.append((len(self.parts), name, law, columns, elevation, (flow, curve)))
         self.parts.append(law)
+
+    def altered(self, body, model, plain, columns, best, leakage):
+        """A pump in a viscous liquid, leaking inside, trimmed or slowed by other rules than the plain ones."""
+        system = self.system
+        speed = system.number(body["speed"], "share") if "speed" in body else 1.0
+        trim = plain.ratio / speed
+        flow = speed * trim ** model.get("trim_exponent", 1)
+        npsh = columns["npsh_required"].at(best)[0] * plain.ratio**2 if "npsh_required" in columns else None
+        viscous = model.get("viscous") == "corrected"
+        factors = laws.Viscosity(
+            system.viscosity if viscous else 0.0,
+            flow * best,
+            plain.ratio**2 * plain.head.at(best)[0] / model.get("stages", 1),
+            speed * system.number(model["speed"], "speed"),
+            npsh,
+            dict(end=0.1, side=0.5)[model.get("inlet", "end")],
+        )
+        law = laws.AlteredPump(plain.head, plain.ratio, plain.wear, flow, factors, best, leakage)
+        law.gain = 1.0
+        if model.get("efficiency_with_speed") == "scaled":
+            e = columns["efficiency"].at(best)[0]
+            law.gain = (1 - (1 - e) * (1 / speed) ** 0.1) / e
+        return law
 
     def loss(self, q, parts=None):
         pairs = [part.loss(q) for part in (self.parts if parts is None else parts)]
@@ -273,6 +299,15 @@ def operation(system, line, pump, q, heads):
         height = elevation(system, system.file["nodes"][line.ends[0]])
     inlet = None if start is None else start - lost_before - height
     figures = dict(flow=out(q, "flow"), head=out(head, "length"))
+    if isinstance(law, laws.AlteredPump):
+        x, factors = law.inside(q), law.factors
+        e = columns["efficiency"].at(x)[0]
+        water = density * g * x * law.head.at(x)[0] / e * law.power / law.gain
+        shaft = water * factors.q * factors.head(min(max(x, 0.0), law.head.high) / law.best)[0] / factors.eta
+        figures.update(efficiency=100 * density * g * q * head / shaft, shaft_power=out(shaft, "power"), share_of_bep=x / law.best)
+        figures["npsh_required"] = out(factors.npsh * s**2 * columns["npsh_required"].at(x)[0], "length")
+        figures["npsh_available"] = out((system.barometer - system.vapour_pressure) / (density * g) + inlet, "length")
+        return figures
     new_head = s**2 * law.head.at(q / s)[0]
     if "efficiency" in columns:
         e, slope = columns["efficiency"].at(q / s)

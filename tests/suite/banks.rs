@@ -5,6 +5,7 @@ use dutybank::network::{LineId, Network, NetworkBuilder, NodeId, NodeKind, PumpS
 use dutybank::part::Part;
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
+use dutybank::part::pump::performance::Scaling;
 use dutybank::part::pump::{PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::solve::Solver;
@@ -73,6 +74,7 @@ impl Maker {
             motor: None,
             drive: None,
             maker: dutybank::part::pump::MakerLimits::default(),
+            scaling: Scaling::default(),
         });
         let pump = Pump {
             name: name.into(),

@@ -9,6 +9,7 @@ use dutybank::fluid::Fluid;
 use dutybank::network::{Network, NetworkBuilder, NodeKind, PumpSetting};
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
+use dutybank::part::pump::performance::Scaling;
 use dutybank::part::pump::{Efficiency, Motor, PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::{Part, PumpId};
@@ -75,6 +76,7 @@ impl Sheet<'_> {
             }),
             drive: None,
             maker: dutybank::part::pump::MakerLimits::default(),
+            scaling: Scaling::default(),
         }
     }
 }

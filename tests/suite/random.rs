@@ -7,6 +7,7 @@ use dutybank::network::{Network, NetworkBuilder, NodeId, NodeKind, PumpSetting, 
 use dutybank::part::Part;
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
+use dutybank::part::pump::performance::Scaling;
 use dutybank::part::pump::{Efficiency, Motor, PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::valve::{Characteristic, Valve};
@@ -328,6 +329,7 @@ impl Maker {
             }),
             drive: None,
             maker: dutybank::part::pump::MakerLimits::default(),
+            scaling: Scaling::default(),
         })
     }
 

@@ -5,6 +5,7 @@ use dutybank::fluid::Fluid;
 use dutybank::network::{Network, NetworkBuilder, NodeId, NodeKind, PumpSetting};
 use dutybank::part::curve::Curve;
 use dutybank::part::friction::{Friction, Pipe};
+use dutybank::part::pump::performance::Scaling;
 use dutybank::part::pump::{PowerCurve, Pump, PumpModel};
 use dutybank::part::quadratic::QuadraticLoss;
 use dutybank::part::{Part, PumpId};
@@ -196,6 +197,7 @@ fn parabolic(net: &mut NetworkBuilder, shutoff: f64, c: f64, end: f64) -> PumpId
         motor: None,
         drive: None,
         maker: dutybank::part::pump::MakerLimits::default(),
+        scaling: Scaling::default(),
     });
     let pump = Pump {
         name: "pump".to_owned(),
@@ -250,6 +252,7 @@ fn sump(inflow: f64) -> (Network, Shift, Plan) {
         motor: None,
         drive: None,
         maker: dutybank::part::pump::MakerLimits::default(),
+        scaling: Scaling::default(),
     });
     let pump = Pump {
         name: "pump".to_owned(),

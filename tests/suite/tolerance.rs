@@ -242,7 +242,10 @@ fn a_pump_as_built_scales_its_curve() {
         },
         ..PumpSetting::NEW
     };
-    let law = setting.law(head);
+    let pump = system.network.pump_ids().next().unwrap();
+    let mut settings = system.network.settings().clone();
+    *settings.pump_mut(pump) = setting;
+    let law = system.network.performance(pump, &settings);
     for q in [-0.01, 0.0, 0.013, 0.035, 0.06, 0.09] {
         let expected = 0.96 * 1.05 * 0.81 * head.at(q / (0.93 * 0.9)).value;
         assert!((law.loss(q).head + expected).abs() < 1e-12);

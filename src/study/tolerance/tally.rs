@@ -44,7 +44,8 @@ impl About {
             | Caution::Backflow { pump, .. }
             | Caution::BeforeCurve { pump, .. }
             | Caution::FlatCurve { pump, .. }
-            | Caution::Hunting { pump, .. } => Self::Pump(pump),
+            | Caution::Hunting { pump, .. }
+            | Caution::ViscousRange { pump, .. } => Self::Pump(pump),
             Caution::Beyond(limit) => match limit.about {
                 limit::About::Pump(pump) => Self::Pump(pump),
                 limit::About::Line(line) => Self::Line(line),
