@@ -35,6 +35,9 @@ pub(crate) enum Command {
     /// Run several staging plans over the same shift and put them in order
     #[command(after_help = COMPARE_EXAMPLES)]
     Compare(CompareOptions),
+    /// Draw what the pumps give against what the system asks for: head, efficiency, power and NPSH over flow
+    #[command(after_help = CURVES_EXAMPLES)]
+    Curves(CurvesOptions),
 }
 
 const SOLVE_EXAMPLES: &str = "\
@@ -73,6 +76,16 @@ Examples:
   dutybank compare networks/meadow_lift_station.yaml --weights spilled=1000,starts=0.2,energy=0.1
 
 Exit codes: 0 the runs were made; 2 bad input, or a run that broke";
+
+const CURVES_EXAMPLES: &str = "\
+Examples:
+  dutybank curves networks/mill_pond_transfer.yaml --svg curves.svg
+  dutybank curves networks/mill_pond_transfer.yaml --cases 'as-is,low level,old pipe' --svg curves.svg --csv curves.csv
+  dutybank curves networks/two_lift_high_reservoir.yaml --bank upper_lift > upper.svg
+
+Without --svg and --csv the SVG goes to standard output where that is a file or a pipe; a terminal gets the operating points.
+
+Exit codes: 0 the curves were drawn; 2 bad input, or a run that broke";
 
 #[derive(Args)]
 pub(crate) struct FileOption {
@@ -192,4 +205,25 @@ pub(crate) struct CompareOptions {
     /// Print a JSON list of runs instead of tables
     #[arg(long)]
     pub json: bool,
+}
+
+#[derive(Args)]
+pub(crate) struct CurvesOptions {
+    #[command(flatten)]
+    pub input: FileOption,
+    /// Look from the headers of this bank, line or pump; if not given, those of most pumps, and what is in series with them
+    #[arg(long, value_name = "NAME")]
+    pub bank: Option<String>,
+    /// Only these cases; `as-is` is the file as it stands
+    #[arg(long, value_name = "NAME,..", value_delimiter = ',')]
+    pub cases: Option<Vec<String>>,
+    /// Switch only these pumps or banks; the others stay as the file has them
+    #[arg(long, value_name = "PUMP,..", value_delimiter = ',')]
+    pub pumps: Option<Vec<String>>,
+    /// Write the picture to this SVG file; `-` is standard output
+    #[arg(long, value_name = "FILE")]
+    pub svg: Option<PathBuf>,
+    /// Write all plotted points to this CSV file; `-` is standard output
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
 }

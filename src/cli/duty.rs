@@ -15,7 +15,7 @@ use crate::study::duty::{Combination, MOST_SETS, combinations};
 use crate::study::gain::{Gain, gains};
 
 /// What `--cases` calls the file as it stands.
-const AS_IS: &str = "as-is";
+pub(super) const AS_IS: &str = "as-is";
 
 /// A case that has been solved.
 struct Solved {
@@ -84,7 +84,7 @@ fn can_meet(case: &Solved) -> bool {
 }
 
 /// Whether a case changes nothing but which pumps run.
-fn only_switches(case: &Case) -> bool {
+pub(super) fn only_switches(case: &Case) -> bool {
     let mut changes = case.changes.iter();
     changes.all(|change| change.path().ends_with(".running"))
 }

@@ -3,6 +3,7 @@
 mod args;
 mod check;
 mod compare;
+mod curves;
 mod duty;
 mod files;
 mod shift;
@@ -38,6 +39,7 @@ pub fn run() -> ExitCode {
         Command::Duty(options) => duty::duty(options),
         Command::Shift(options) => shift::shift(options),
         Command::Compare(options) => compare::compare(options),
+        Command::Curves(options) => curves::curves(options),
     };
     match outcome {
         Ok(()) | Err(Failure::PipeClosed) => ExitCode::SUCCESS,

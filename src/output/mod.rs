@@ -1,5 +1,7 @@
 //! Finished figures put into a form: tables, CSV, JSON, sentences. Computes nothing.
 
+pub mod chart;
+pub mod curves;
 pub mod describe;
 pub mod duty;
 pub mod grid;
