@@ -100,7 +100,7 @@ fn systems(
         .map_err(|diagnostics| input.rejected(&diagnostics))?;
     let chosen = options.cases.is_some();
     let mut names: Vec<String> = match &options.cases {
-        Some(names) => names.iter().map(|name| name.trim().to_owned()).collect(),
+        Some(words) => rejoined(words, &all),
         None => std::iter::once(AS_IS.to_owned())
             .chain(
                 all.into_iter()
@@ -121,6 +121,20 @@ fn systems(
     };
     let systems = names.into_iter().map(system).collect::<Result<_, Failure>>()?;
     Ok((systems, left_out))
+}
+
+/// Names that hold commas themselves are put together again: the longest that fits a case counts.
+fn rejoined(words: &[String], cases: &[crate::read::Case]) -> Vec<String> {
+    let mut names = Vec::new();
+    let mut rest = words;
+    while !rest.is_empty() {
+        let joined = |n: &usize| rest[..*n].join(",").trim().to_owned();
+        let is_case = |n: &usize| cases.iter().any(|case| case.name == joined(n));
+        let taken = (1..=rest.len()).rev().find(is_case).unwrap_or(1);
+        names.push(joined(&taken));
+        rest = &rest[taken..];
+    }
+    names
 }
 
 /// The error in the user's names, with what would fit.

@@ -16,10 +16,12 @@ const EDGE: f64 = 3.0;
 const LEFT: f64 = 19.0;
 /// Right of them: labels of curves that end there.
 const RIGHT: f64 = 33.0;
-const BETWEEN: f64 = 4.0;
+const BETWEEN: f64 = 5.0;
 const TITLE: f64 = 4.2;
 const SMALL: f64 = 2.45;
 const LINE: f64 = 3.9;
+/// Length of a sample in the key.
+const SAMPLE: f64 = 9.0;
 
 /// Draws a figure.
 ///
@@ -129,11 +131,11 @@ fn panes(out: &mut Markup, figure: &Figure, mut y: f64) -> f64 {
 
 fn key(out: &mut Markup, columns: &[KeyColumn], y: f64) -> f64 {
     let columns: Vec<&KeyColumn> = columns.iter().filter(|column| !column.entries.is_empty()).collect();
-    let count = columns.len().max(1) as f64;
-    let room = (WIDTH - 2.0 * EDGE) / count;
     let mut lowest = y;
-    for (k, column) in columns.iter().enumerate() {
-        let left = EDGE + room * k as f64;
+    let mut next = EDGE;
+    for (column, room) in columns.iter().zip(key_widths(&columns)) {
+        let left = next;
+        next += room;
         let mut y = y + LABEL;
         out.text([left, y], &shortened(&column.heading, LABEL, room - 2.0), Type::of(LABEL).bold());
         for entry in &column.entries {
@@ -145,8 +147,39 @@ fn key(out: &mut Markup, columns: &[KeyColumn], y: f64) -> f64 {
     if columns.is_empty() { y } else { lowest + BETWEEN + 1.0 }
 }
 
+/// What each column needs; the widest give way where that is too much.
+fn key_widths(columns: &[&KeyColumn]) -> Vec<f64> {
+    const APART: f64 = 5.0;
+    let need = |entry: &KeyEntry| SAMPLE + 2.7 + width(&entry.tag, LABEL).max(2.6) + width(&entry.text, LABEL);
+    let mut widths: Vec<f64> = columns
+        .iter()
+        .map(|column| {
+            let entries = column.entries.iter().map(need);
+            APART + entries.fold(width(&column.heading, LABEL), f64::max)
+        })
+        .collect();
+    shrink(&mut widths, |_| true, WIDTH - 2.0 * EDGE);
+    widths
+}
+
+/// Narrows the widest of those that may be narrowed until all fit the room, or none has much left.
+fn shrink(widths: &mut [f64], may: impl Fn(usize) -> bool, room: f64) {
+    const STEP: f64 = 2.0;
+    const LEAST: f64 = 8.0;
+    loop {
+        let over = widths.iter().sum::<f64>() - room;
+        let free = (0..widths.len()).filter(|i| may(*i) && widths[*i] > LEAST);
+        let Some(widest) = free.max_by(|a, b| widths[*a].total_cmp(&widths[*b])) else {
+            return;
+        };
+        if over <= 0.0 {
+            return;
+        }
+        widths[widest] -= over.min(STEP);
+    }
+}
+
 fn entry(out: &mut Markup, entry: &KeyEntry, [left, y]: [f64; 2], room: f64) {
-    const SAMPLE: f64 = 9.0;
     let middle = y - 0.36 * LABEL;
     let (from, to) = ([left, middle], [left + SAMPLE, middle]);
     if entry.underlaid {
@@ -179,17 +212,7 @@ fn table(out: &mut Markup, table: &Table, mut y: f64) -> f64 {
     }
     // Words give way where the table is too wide, the widest first.
     let room = WIDTH - 2.0 * EDGE - GAP * columns.saturating_sub(1) as f64;
-    let words: Vec<usize> = (0..columns).filter(|i| table.columns[*i].1 == Align::Left).collect();
-    for _ in 0..200 {
-        let over = widths.iter().sum::<f64>() - room;
-        let Some(widest) = words.iter().copied().max_by(|a, b| widths[*a].total_cmp(&widths[*b])) else {
-            break;
-        };
-        if over <= 0.0 || widths[widest] <= 8.0 {
-            break;
-        }
-        widths[widest] -= over.min(2.0);
-    }
+    shrink(&mut widths, |i| table.columns[i].1 == Align::Left, room);
     y += LABEL;
     out.text([EDGE, y], &table.title, Type::of(LABEL).bold());
     y += 1.2;

@@ -11,6 +11,8 @@ pub(super) const LABEL: f64 = 2.55;
 /// Size of an axis' name, mm.
 pub(super) const NAME: f64 = 2.75;
 const MARK: f64 = 1.15;
+/// Room for labels above a plot.
+const ABOVE: f64 = 3.4;
 
 /// Where a pane stands, and the margin beside it that labels may use.
 #[derive(Clone, Copy, Debug)]
@@ -70,7 +72,7 @@ impl Drawn<'_> {
 
     fn axes(&self, out: &mut Markup, marked: &[f64]) {
         let Area { left, right, top, bottom } = self.frame.area;
-        let rows = ((bottom - top) / 9.0).round().clamp(2.0, 10.0) as usize;
+        let rows = ((bottom - top) / 6.0).round().clamp(2.0, 10.0) as usize;
         let levels = ticks(self.plot.y.range, self.plot.y.kind, rows);
         let words = written(&levels, self.plot.y.kind);
         out.open(" class=\"axis\"");
@@ -169,7 +171,7 @@ impl Drawn<'_> {
         let Area { left, right, top, bottom } = self.frame.area;
         let mut places = Places::new(Area {
             left: left + 0.4,
-            top: top - 1.0,
+            top: top - ABOVE,
             right: right + self.frame.margin,
             bottom: bottom - 0.3,
         });

@@ -76,19 +76,6 @@ fn nice(about: f64) -> f64 {
     fits.unwrap_or(10.0) * power
 }
 
-/// The range opened to marked values at both ends.
-pub(super) fn opened(range: (f64, f64), count: usize) -> (f64, f64) {
-    let (low, high) = range;
-    let about = (high - low) / count.max(1) as f64;
-    if !(about > 0.0 && about.is_finite()) {
-        return (low - 0.5, low + 0.5);
-    }
-    let step = nice(about);
-    let down = (low / step + 1e-9).floor() * step;
-    let up = (high / step - 1e-9).ceil() * step;
-    (down, up)
-}
-
 /// How the marks of an axis are written, alike for all of them.
 pub(super) fn written(marks: &[f64], kind: AxisKind) -> Vec<String> {
     let step = marks.windows(2).map(|pair| pair[1] - pair[0]).fold(f64::INFINITY, f64::min);
@@ -132,7 +119,6 @@ mod tests {
         assert_eq!(written(&ticks((-0.3, 0.1), AxisKind::Number, 4), AxisKind::Number)[0], "\u{2212}0.3");
         assert!(ticks((1.0, 1.0), AxisKind::Number, 5).is_empty());
         assert!(ticks((0.0, f64::NAN), AxisKind::Number, 5).is_empty());
-        assert_eq!(opened((0.2, 47.0), 6), (0.0, 50.0));
     }
 
     #[test]

@@ -5,6 +5,8 @@ use crate::output::chart::{
     Align, Axis, Colour, Figure, KeyColumn, KeyEntry, Pane, Shape, Table,
 };
 use crate::output::grid::Cell;
+use crate::study::assessment::PREFERRED_REGION;
+use crate::study::curves::CombinedCurve;
 use crate::units::Kind;
 
 /// The picture; `id` begins the ids in it.
@@ -52,7 +54,7 @@ fn given(telling: &Telling) -> KeyColumn {
             stroke: Some(combined_stroke(curves, position)),
             underlaid: curves.combined[position].preferred.is_some(),
             tag: telling.number(position),
-            text: telling.combined(&curves.combined[position]),
+            text: key_words(telling, &curves.combined[position]),
             shape: None,
         })
         .collect();
@@ -66,6 +68,15 @@ fn given(telling: &Telling) -> KeyColumn {
     KeyColumn {
         heading: "Pumps, branch losses taken off".to_owned(),
         entries,
+    }
+}
+
+/// In a further case its pumps too.
+fn key_words(telling: &Telling, curve: &CombinedCurve) -> String {
+    let words = telling.combined(curve);
+    match curve.case {
+        0 => words,
+        case => format!("{words} ({})", telling.set(case, &curve.running)),
     }
 }
 
@@ -85,6 +96,7 @@ fn asked(telling: &Telling) -> KeyColumn {
 /// Only the marks that occur.
 fn marks(telling: &Telling) -> KeyColumn {
     let points = &telling.curves.points;
+    let (low, high) = PREFERRED_REGION;
     let occurs = |shape: Shape| points.iter().any(|point| point_shape(point) == shape);
     let mark = |shape, colour, text: &str| KeyEntry {
         shape: Some((shape, colour)),
@@ -92,21 +104,21 @@ fn marks(telling: &Telling) -> KeyColumn {
         ..KeyEntry::default()
     };
     let mut entries = Vec::new();
+    if telling.curves.combined.iter().any(|curve| curve.preferred.is_some()) {
+        entries.push(KeyEntry {
+            underlaid: true,
+            text: format!("preferred region, {:.0} to {:.0} % of BEP", 100.0 * low, 100.0 * high),
+            ..KeyEntry::default()
+        });
+    }
     for (shape, text) in [
         (Shape::Disc, "operating point"),
-        (Shape::Ring, "a pump outside its preferred region"),
-        (Shape::CrossedRing, "a pump off its curve, idle or short of NPSH"),
+        (Shape::Ring, "a pump outside it"),
+        (Shape::CrossedRing, "a pump off its curve, idle, NPSH short"),
     ] {
         if occurs(shape) {
             entries.push(mark(shape, Colour::Ink, text));
         }
-    }
-    if telling.curves.combined.iter().any(|curve| curve.preferred.is_some()) {
-        entries.push(KeyEntry {
-            underlaid: true,
-            text: "all pumps in their preferred region".to_owned(),
-            ..KeyEntry::default()
-        });
     }
     entries.push(mark(Shape::Square, Colour::Ink, "shut-off head"));
     entries.push(mark(Shape::End, Colour::Ink, "end of a pump's curve"));

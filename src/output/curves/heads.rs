@@ -42,7 +42,16 @@ fn range(telling: &Telling) -> (f64, f64) {
     let highest = given.map(|point| point.head).fold(0.0, f64::max);
     let asked = curves.systems.iter().flat_map(|system| &system.points);
     let lowest = asked.map(|point| point.head).fold(0.0, f64::min);
-    let low = lowest.max(-0.25 * highest);
+    let given = curves.combined.iter().flat_map(|curve| &curve.points);
+    let least = given.map(|point| point.head).fold(f64::INFINITY, f64::min);
+    let static_head = curves.systems.iter().filter_map(|system| system.points.first());
+    let least = static_head.map(|point| point.head).fold(least, f64::min);
+    // Where nothing happens in the lower half it is left out.
+    let low = if least > 0.5 * highest {
+        least - 0.25 * (highest - least)
+    } else {
+        lowest.max(-0.25 * highest)
+    };
     (telling.length(low), telling.length(ROOM * highest))
 }
 
@@ -74,7 +83,7 @@ fn system_curve(telling: &Telling, position: usize) -> Curve {
     let first = telling.case(system.cases[0]);
     let labels = match letter.as_str() {
         "" => vec!["system".to_owned()],
-        letter => vec![format!("{letter}  {first}"), letter.to_owned()],
+        letter => vec![format!("{letter}: {first}"), letter.to_owned()],
     };
     Curve {
         data: vec![("kind", "system".to_owned()), ("case", words), ("tag", letter)],
@@ -94,7 +103,7 @@ fn combined(telling: &Telling, position: usize, plot: &mut Plot) {
     let stroke = combined_stroke(telling.curves, position);
     let labels = match tag.as_str() {
         "" => vec![name.clone()],
-        tag => vec![format!("{tag}  {name}"), tag.to_owned()],
+        tag => vec![format!("{tag}: {name}"), tag.to_owned()],
     };
     let data = |kind: &str| {
         vec![

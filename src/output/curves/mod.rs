@@ -94,18 +94,26 @@ impl<'a> Telling<'a> {
         pumps.iter().map(name).collect::<Vec<_>>().join(" + ")
     }
 
-    /// What a combined curve is of: its pumps, and the case where it is not the first.
+    /// What a combined curve is of: its pumps in the first case; in another, which one.
     fn combined(&self, curve: &CombinedCurve) -> String {
-        let set = self.set(curve.case, &curve.running);
         match (curve.stage, curve.case) {
-            (Some(_), _) => format!("{set} alone"),
-            (None, 0) => set,
-            (None, case) => format!("{set}, {}", self.case(case)),
+            (Some(_), _) => format!("{} alone", self.set(curve.case, &curve.running)),
+            (None, 0) => self.set(curve.case, &curve.running),
+            (None, case) => self.case(case).to_owned(),
         }
     }
 
+    /// Pumps alike, a whole bank by its name; and the case where it is not the first.
     fn pump(&self, curve: &PumpCurve) -> String {
-        let set = self.set(curve.case, &curve.pumps);
+        let network = self.network(curve.case);
+        let whole = network.banks().iter().find(|bank| {
+            let of_bank = bank.lines.iter().flat_map(|line| network.line(*line).pumps());
+            of_bank.eq(curve.pumps.iter().copied())
+        });
+        let set = whole.map_or_else(
+            || self.set(curve.case, &curve.pumps),
+            |bank| bank.name.clone(),
+        );
         match curve.case {
             0 => set,
             case => format!("{set}, {}", self.case(case)),
@@ -113,8 +121,12 @@ impl<'a> Telling<'a> {
     }
 
     fn system(&self, position: usize) -> String {
-        let cases = self.curves.systems[position].cases.iter();
-        cases.map(|case| self.case(*case)).collect::<Vec<_>>().join("; ")
+        let cases = &self.curves.systems[position].cases;
+        let first = self.case(cases[0]);
+        match cases.len() - 1 {
+            0 => first.to_owned(),
+            others => format!("{first} (and {others} more)"),
+        }
     }
 
     /// Letter of a system curve; none where there is only one.
@@ -192,20 +204,54 @@ fn combined_stroke(curves: &Curves, position: usize) -> Stroke {
     }
 }
 
-/// Whether what is said of a pump can be relied on and is healthy; the worst of several counts.
-fn point_shape(point: &OperatingPoint) -> Shape {
-    let astray = |pump: &PumpOperation| {
-        pump.place != Place::OnCurve
-            || pump.flow <= 0.0
-            || pump.npsh_margin().is_some_and(|margin| margin < 0.0)
-    };
-    let (low, high) = PREFERRED_REGION;
-    let outside = |(least, most): (f64, f64)| least < low || most > high;
-    if point.pumps.iter().any(|(_, pump)| astray(pump)) {
-        Shape::CrossedRing
-    } else if point.shares().is_some_and(outside) {
-        Shape::Ring
-    } else {
-        Shape::Disc
+/// What is to be said of a point, the gravest first.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Remark {
+    PastCurve,
+    Idle,
+    NpshShort,
+    OutsidePreferred,
+    None,
+}
+
+impl Remark {
+    fn of(point: &OperatingPoint) -> Self {
+        let any = |holds: &dyn Fn(&PumpOperation) -> bool| {
+            point.pumps.iter().any(|(_, pump)| holds(pump))
+        };
+        let (low, high) = PREFERRED_REGION;
+        if any(&|pump| pump.place != Place::OnCurve) {
+            Self::PastCurve
+        } else if any(&|pump| pump.flow <= 0.0) {
+            Self::Idle
+        } else if any(&|pump| pump.npsh_margin().is_some_and(|margin| margin < 0.0)) {
+            Self::NpshShort
+        } else if point.shares().is_some_and(|(least, most)| least < low || most > high) {
+            Self::OutsidePreferred
+        } else {
+            Self::None
+        }
     }
+
+    fn words(self) -> &'static str {
+        match self {
+            Self::PastCurve => "off the curve",
+            Self::Idle => "one gives nothing",
+            Self::NpshShort => "NPSH short",
+            Self::OutsidePreferred => "outside preferred",
+            Self::None => "",
+        }
+    }
+
+    fn shape(self) -> Shape {
+        match self {
+            Self::PastCurve | Self::Idle | Self::NpshShort => Shape::CrossedRing,
+            Self::OutsidePreferred => Shape::Ring,
+            Self::None => Shape::Disc,
+        }
+    }
+}
+
+fn point_shape(point: &OperatingPoint) -> Shape {
+    Remark::of(point).shape()
 }

@@ -2,13 +2,15 @@
 
 use super::{Telling, dash, point_shape, system_stroke};
 use crate::output::chart::{Axis, Band, Colour, Curve, Dash, Mark, Plot, Rule, Shape, Stroke};
-use crate::solve::operation::PumpOperation;
+use crate::solve::operation::{Place, PumpOperation};
 use crate::study::assessment::PREFERRED_REGION;
 use crate::study::curves::{PumpCurve, SuctionCurve};
 use crate::units::Kind;
 
 /// Room above the highest figure.
 const ROOM: f64 = 1.12;
+/// NPSH available is shown up to so many times the most that is required.
+const ENOUGH: f64 = 4.0;
 
 /// The plots that have something to show.
 pub(super) fn plots(telling: &Telling) -> Vec<Plot> {
@@ -51,6 +53,12 @@ pub(super) fn plots(telling: &Telling) -> Vec<Plot> {
     for plot in &mut plots {
         plot.y.range.1 = ROOM * highest(plot);
     }
+    if let Some(npsh) = plots.iter_mut().find(|plot| plot.y.label.starts_with("NPSH")) {
+        // Far above what is required nothing is to be seen.
+        let required = telling.curves.pumps.iter().flat_map(|pump| &pump.points);
+        let most = required.filter_map(|point| point.npsh_required).fold(0.0, f64::max);
+        npsh.y.range.1 = npsh.y.range.1.min(telling.length(ENOUGH * most));
+    }
     plots
 }
 
@@ -64,11 +72,19 @@ struct Figure {
 
 impl Figure {
     fn plot(&self, telling: &Telling) -> Plot {
-        let several = telling.curves.pumps.len() > 1;
-        let pumps = telling.curves.pumps.iter().enumerate();
-        let curves: Vec<Curve> = pumps
-            .filter_map(|(position, pump)| self.curve(telling, position, pump, several))
-            .collect();
+        let mut curves: Vec<Curve> = Vec::new();
+        for (position, pump) in telling.curves.pumps.iter().enumerate() {
+            let curve = self.curve(telling, position, pump);
+            // Wear changes neither power nor NPSH required: one curve serves.
+            let drawn = |curve: &Curve| curves.iter().any(|other| coincide(other, curve));
+            curves.extend(curve.filter(|curve| !drawn(curve)));
+        }
+        if let [only] = curves.as_mut_slice() {
+            only.labels = match self.kind {
+                Kind::Length => vec!["required".to_owned()],
+                _ => Vec::new(),
+            };
+        }
         Plot {
             height: self.height,
             y: Axis {
@@ -82,13 +98,7 @@ impl Figure {
         }
     }
 
-    fn curve(
-        &self,
-        telling: &Telling,
-        position: usize,
-        pump: &PumpCurve,
-        several: bool,
-    ) -> Option<Curve> {
+    fn curve(&self, telling: &Telling, position: usize, pump: &PumpCurve) -> Option<Curve> {
         let words = telling.pump(pump);
         let value = |point: &PumpOperation| Some((point.flow, (self.of)(point)?));
         let known: Vec<(f64, f64)> = pump.points.iter().filter_map(value).collect();
@@ -104,12 +114,9 @@ impl Figure {
             ),
             _ => String::new(),
         };
-        let required = self.kind == Kind::Length;
-        let labels = match (several, required) {
-            (true, true) => vec![format!("required, {words}"), words.clone()],
-            (true, false) => vec![words.clone()],
-            (false, true) => vec!["required".to_owned()],
-            (false, false) => Vec::new(),
+        let labels = match self.kind {
+            Kind::Length => vec![format!("required, {words}"), "required".to_owned()],
+            _ => vec![words.clone()],
         };
         let place = |(flow, value): &(f64, f64)| {
             [telling.flow(*flow), telling.units.from_si(self.kind, *value)]
@@ -131,7 +138,9 @@ impl Figure {
         for point in &telling.curves.points {
             let mut known: Vec<(f64, f64)> = Vec::new();
             for (id, pump) in &point.pumps {
-                let Some(value) = (self.of)(pump) else {
+                // off its curve no figure is certain
+                let certain = pump.place == Place::OnCurve;
+                let Some(value) = (self.of)(pump).filter(|_| certain) else {
                     continue;
                 };
                 let near = |other: &(f64, f64)| {
@@ -160,6 +169,14 @@ impl Figure {
         }
         marks
     }
+}
+
+/// Whether one curve lies on another, as far as both go.
+fn coincide(a: &Curve, b: &Curve) -> bool {
+    let near = |(a, b): (&[f64; 2], &[f64; 2])| {
+        (0..2).all(|i| (a[i] - b[i]).abs() <= 1e-9 * (1.0 + a[i].abs()))
+    };
+    a.points.len() == b.points.len() && a.points.iter().zip(&b.points).all(near)
 }
 
 /// The lower plots are too low for anything but discs and rings.
@@ -259,13 +276,27 @@ fn suctions(telling: &Telling, plot: &mut Plot) {
         plot.curves.push(Curve {
             name: format!("NPSH {words}"),
             data: vec![("kind", "npsh available".to_owned())],
-            labels: vec![words.clone(), "available".to_owned()],
+            labels: vec![words.clone(), short(telling, suction)],
             stroke: suction_stroke(position),
             points: suction.points.iter().map(place).collect(),
             say: suction.points.iter().enumerate().map(say).collect(),
             underlaid: None,
         });
     }
+}
+
+/// The letter of the system, or the tag of the point that the case brings.
+fn short(telling: &Telling, suction: &SuctionCurve) -> String {
+    let case = suction.cases[0];
+    let curves = telling.curves;
+    let system = curves.systems.iter().position(|system| system.cases[0] == case);
+    let point = curves.points.iter().find(|point| point.case == case);
+    let name = match (system, point) {
+        (Some(system), _) if curves.systems.len() > 1 => telling.letter(system),
+        (_, Some(point)) => telling.tag(point),
+        _ => String::new(),
+    };
+    format!("available {name}").trim_end().to_owned()
 }
 
 fn available(telling: &Telling, suction: &SuctionCurve, several: bool) -> String {

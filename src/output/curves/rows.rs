@@ -1,6 +1,6 @@
 //! The plotted points as rows for programs, and the operating points as a table.
 
-use super::Telling;
+use super::{Remark, Telling};
 use crate::output::duty::listed;
 use crate::output::grid::{Cell, Column, Grid};
 use crate::part::PumpId;
@@ -30,6 +30,7 @@ pub fn points(telling: &Telling) -> Grid {
             each(&|pump| units.number(Kind::Flow, pump.flow)),
             each(&share),
             Cell::Figure(point.npsh_margin()),
+            Cell::Text(Remark::of(point).words().to_owned()),
         ]
     };
     Grid {
@@ -44,6 +45,7 @@ pub fn points(telling: &Telling) -> Grid {
             Column::in_unit("each", "flow_each", units.unit(Kind::Flow).symbol),
             Column::in_unit("of BEP", "share_of_bep", "%"),
             Column::figure("NPSH spare", "npsh_margin", Kind::Length),
+            Column::text("remark", "remark"),
         ],
         rows: telling.curves.points.iter().map(row).collect(),
     }

@@ -106,15 +106,11 @@ impl Rig<'_> {
         Some(FlowHead { flow, head })
     }
 
-    /// The curve, as far as the first end of a pump's curve, and on to `as_far_as` where that lies beyond; with points at
-    /// all `marks`.
-    pub fn sample(
-        &mut self,
-        network: &Network,
-        settings: &Settings,
-        marks: &[f64],
-        as_far_as: f64,
-    ) -> Sampled {
+    /// The curve, as far as the first end of a pump's curve, and on past the last of `marks` where that lies beyond; with
+    /// points at all `marks`.
+    pub fn sample(&mut self, network: &Network, settings: &Settings, marks: &[f64]) -> Sampled {
+        const ROOM: f64 = 1.04;
+        let last_mark = marks.iter().copied().fold(0.0, f64::max);
         let start = NEXT_TO_NONE * self.scale;
         let past_end = |id: PumpId, pump: &PumpOperation| pump.flow / end_of(network, settings, id);
         let end = self
@@ -129,8 +125,8 @@ impl Rig<'_> {
         };
         Sampled {
             points: along(self, start, end, STEPS),
-            beyond: if as_far_as > end {
-                along(self, end, as_far_as, STEPS / 4)
+            beyond: if last_mark > end * (1.0 + 1e-9) {
+                along(self, end, ROOM * last_mark, STEPS / 4)
             } else {
                 Vec::new()
             },

@@ -335,9 +335,8 @@ fn combined(
     let settings = scene.settings(running);
     let stages = stage.map_or(&scene.stages[..], |k| &scene.stages[k..=k]);
     let benches = Benches::new(scene.network, &settings, stages)?;
-    let farthest = marks.iter().copied().fold(0.0, f64::max) * ROOM;
     let Sampled { points, beyond, preferred } =
-        benches.rig().sample(scene.network, &settings, marks, farthest);
+        benches.rig().sample(scene.network, &settings, marks);
     Ok(CombinedCurve {
         case,
         running: running.to_vec(),
