@@ -176,6 +176,9 @@ pub(crate) struct ShiftOptions {
     /// Write what happened, in plain words with its cause, to this CSV file
     #[arg(long, value_name = "FILE")]
     pub events: Option<PathBuf>,
+    /// Write a picture of levels, flows and running pumps to this SVG file
+    #[arg(long, value_name = "FILE")]
+    pub svg: Option<PathBuf>,
     /// Print one JSON object instead of tables
     #[arg(long)]
     pub json: bool,

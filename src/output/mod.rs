@@ -6,6 +6,7 @@ pub mod describe;
 pub mod duty;
 pub mod grid;
 pub mod json;
+pub mod run_picture;
 pub mod shift;
 pub mod solve;
 pub mod words;

@@ -189,8 +189,6 @@ pub struct Rule {
 /// Rows of bars.
 #[derive(Clone, Debug, Default)]
 pub struct Strip {
-    /// What the rows are.
-    pub label: String,
     /// From top to bottom.
     pub rows: Vec<Bars>,
 }

@@ -110,7 +110,7 @@ impl Drawn<'_> {
                 _ => pieces.push(vec![a, b]),
             }
         }
-        pieces
+        pieces.iter().map(|piece| thinned(piece)).collect()
     }
 
     fn curves(&self, out: &mut Markup) {
@@ -294,6 +294,30 @@ pub(super) fn shape(out: &mut Markup, at: [f64; 2], shape: Shape, colour: Colour
         Shape::End => out.line([at[0], at[1] - 1.1], [at[0], at[1] + 1.1], &stroked(edge)),
         Shape::Square => out.rectangle([at[0] - 0.55, at[1] - 0.55], [1.1, 1.1], &filled(colour)),
     }
+}
+
+/// A long piece with no more than four points for each width that the eye can tell apart: first, lowest, highest and last.
+fn thinned(piece: &[[f64; 2]]) -> Vec<[f64; 2]> {
+    const LONG: usize = 2000;
+    const SEEN: f64 = 0.06;
+    if piece.len() <= LONG {
+        return piece.to_vec();
+    }
+    let column = |point: &[f64; 2]| (point[0] / SEEN).floor() as i64;
+    let mut kept = Vec::new();
+    for run in piece.chunk_by(|a, b| column(a) == column(b)) {
+        let height = |a: &usize, b: &usize| run[*a][1].total_cmp(&run[*b][1]);
+        let least = (0..run.len()).min_by(height).unwrap_or(0);
+        let most = (0..run.len()).max_by(height).unwrap_or(0);
+        let mut wanted = [0, least, most, run.len() - 1];
+        wanted.sort_unstable();
+        for (i, at) in wanted.iter().enumerate() {
+            if i == 0 || wanted[i - 1] != *at {
+                kept.push(run[*at]);
+            }
+        }
+    }
+    kept
 }
 
 /// Where a curve may be labelled: at its end, then along it, then at its beginning.
