@@ -41,6 +41,9 @@ pub(crate) enum Command {
     /// Draw what is not known exactly (`tolerances` of the file) many times: bands, shares of cases, what matters most
     #[command(after_help = TOLERANCE_EXAMPLES)]
     Tolerance(ToleranceOptions),
+    /// Draw what the pumps give against what the system asks for: head, efficiency, power and NPSH over flow
+    #[command(after_help = CURVES_EXAMPLES)]
+    Curves(CurvesOptions),
 }
 
 const SOLVE_EXAMPLES: &str = "\
@@ -93,6 +96,15 @@ Examples:
   dutybank tolerance networks/mill_pond_transfer.yaml --case 'full tank' --seed 7 --csv drawn.csv
 
 Exit codes: 0 the cases were drawn, needs met or not; 2 bad input, or a run that broke";
+const CURVES_EXAMPLES: &str = "\
+Examples:
+  dutybank curves networks/mill_pond_transfer.yaml --svg curves.svg
+  dutybank curves networks/mill_pond_transfer.yaml --cases 'as-is,low level,old pipe' --svg curves.svg --csv curves.csv
+  dutybank curves networks/two_lift_high_reservoir.yaml --bank upper_lift > upper.svg
+
+Without --svg and --csv the SVG goes to standard output where that is a file or a pipe; a terminal gets the operating points.
+
+Exit codes: 0 the curves were drawn; 2 bad input, or a run that broke";
 
 #[derive(Args)]
 pub(crate) struct FileOption {
@@ -183,6 +195,9 @@ pub(crate) struct ShiftOptions {
     /// Write what happened, in plain words with its cause, to this CSV file
     #[arg(long, value_name = "FILE")]
     pub events: Option<PathBuf>,
+    /// Write a picture of levels, flows and running pumps to this SVG file
+    #[arg(long, value_name = "FILE")]
+    pub svg: Option<PathBuf>,
     /// Print one JSON object instead of tables
     #[arg(long)]
     pub json: bool,
@@ -265,6 +280,27 @@ pub(crate) struct ToleranceOptions {
     #[arg(long)]
     pub json: bool,
     /// Write every case to this CSV file: what was drawn, and what came of it
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
+}
+
+#[derive(Args)]
+pub(crate) struct CurvesOptions {
+    #[command(flatten)]
+    pub input: FileOption,
+    /// Look from the headers of this bank, line or pump; if not given, those of most pumps, and what is in series with them
+    #[arg(long, value_name = "NAME")]
+    pub bank: Option<String>,
+    /// Only these cases; `as-is` is the file as it stands
+    #[arg(long, value_name = "NAME,..", value_delimiter = ',')]
+    pub cases: Option<Vec<String>>,
+    /// Switch only these pumps or banks; the others stay as the file has them
+    #[arg(long, value_name = "PUMP,..", value_delimiter = ',')]
+    pub pumps: Option<Vec<String>>,
+    /// Write the picture to this SVG file; `-` is standard output
+    #[arg(long, value_name = "FILE")]
+    pub svg: Option<PathBuf>,
+    /// Write all plotted points to this CSV file; `-` is standard output
     #[arg(long, value_name = "FILE")]
     pub csv: Option<PathBuf>,
 }

@@ -16,7 +16,7 @@ use crate::study::gain::{Gain, gains};
 use crate::study::mains;
 
 /// What `--cases` calls the file as it stands.
-const AS_IS: &str = "as-is";
+pub(super) const AS_IS: &str = "as-is";
 
 /// A case that has been solved.
 pub(super) struct Solved {
@@ -85,7 +85,7 @@ fn can_meet(case: &Solved) -> bool {
 }
 
 /// Whether a case changes nothing but which pumps run.
-fn only_switches(case: &Case) -> bool {
+pub(super) fn only_switches(case: &Case) -> bool {
     let mut changes = case.changes.iter();
     changes.all(|change| change.path().ends_with(".running"))
 }

@@ -3,6 +3,7 @@
 mod args;
 mod check;
 mod compare;
+mod curves;
 mod duty;
 mod files;
 mod report;
@@ -42,6 +43,7 @@ pub fn run() -> ExitCode {
         Command::Compare(options) => compare::compare(options),
         Command::Report(options) => report::report(options),
         Command::Tolerance(options) => tolerance::tolerance(options),
+        Command::Curves(options) => curves::curves(options),
     };
     match outcome {
         Ok(()) | Err(Failure::PipeClosed) => ExitCode::SUCCESS,

@@ -8,6 +8,8 @@ use super::args::ShiftOptions;
 use super::files::{Input, Pending, print};
 use super::solve::read_changed;
 use crate::output;
+use crate::output::chart::{Surface, draw};
+use crate::output::run_picture::{self, Traces};
 use crate::output::shift::{Story, Telling};
 use crate::output::words::Words;
 use crate::read::{Change, OverTime, System};
@@ -33,7 +35,15 @@ pub(super) fn shift(options: &ShiftOptions) -> Result<(), Failure> {
         "",
     )?;
     sink.keep = options.json;
+    let picture = options.svg.as_deref().map(Pending::open).transpose()?;
+    sink.traces = picture.is_some().then(|| Traces::new(&telling));
     let (run, story) = run_plan(telling, &over_time, &plan, &mut sink)?;
+    let answer = telling.answer(&story, &run.score, run.ends_at);
+    if let Some((picture, traces)) = picture.zip(sink.traces.take()) {
+        let title = system.title.as_deref().unwrap_or("");
+        let figure = run_picture::figure(&telling, &plan, &run, &traces, title, &answer);
+        picture.write_whole(draw(&figure, Surface::StandAlone).as_bytes())?;
+    }
     sink.finish()?;
     if options.json {
         return print(&format!("{:#}\n", telling.json(&run)));
@@ -42,7 +52,7 @@ pub(super) fn shift(options: &ShiftOptions) -> Result<(), Failure> {
     if let Some(title) = &system.title {
         out.push_str(&format!("{title}\n\n"));
     }
-    out.push_str(&telling.answer(&story, &run.score, run.ends_at));
+    out.push_str(&answer);
     out.push('\n');
     out.push_str(&output::shift::card(&telling, &run));
     out.push('\n');
@@ -160,6 +170,8 @@ pub(super) struct Writer<'a> {
     pub plan: String,
     /// Whether events are kept.
     pub keep: bool,
+    /// What a picture shows, where one is wanted.
+    pub traces: Option<Traces>,
     events: Vec<Event>,
     failure: Option<Failure>,
 }
@@ -179,6 +191,7 @@ impl<'a> Writer<'a> {
             happenings: open(happenings)?.map(csv::Writer::from_writer),
             plan: String::new(),
             keep: false,
+            traces: None,
             events: Vec::new(),
             failure: None,
         };
@@ -209,6 +222,9 @@ impl<'a> Writer<'a> {
     fn put(&mut self, row: Row<'_>) -> Result<(), csv::Error> {
         if self.keep {
             self.events.extend_from_slice(row.events);
+        }
+        if let Some(traces) = &mut self.traces {
+            traces.row(row);
         }
         let telling = self.telling;
         if let Some(happenings) = &mut self.happenings {

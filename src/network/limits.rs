@@ -232,6 +232,15 @@ impl Limits {
             .or(TABLE[name as usize].default)
     }
 
+    /// The preferred region as shares of best-efficiency flow, where the maker states none.
+    pub fn preferred(&self) -> (f64, f64) {
+        let value = |name, default| self.value(name).unwrap_or(default);
+        (
+            value(LimitName::PreferredLow, 0.0),
+            value(LimitName::PreferredHigh, f64::INFINITY),
+        )
+    }
+
     /// Who says so.
     pub fn source(&self, name: LimitName) -> &str {
         match &self.given[name as usize] {

@@ -151,7 +151,7 @@ fn limit_word(words: &Words, outcome: &Outcome) -> String {
 }
 
 /// `2 x 44.1` for equal figures, `46.9 + 37.9` for others.
-fn listed(figures: &[String]) -> String {
+pub(super) fn listed(figures: &[String]) -> String {
     match figures {
         [] => "-".to_owned(),
         [one] => one.clone(),

@@ -1,6 +1,8 @@
 //! Finished figures put into a form: tables, CSV, JSON, sentences. Computes nothing.
 
 mod cautions;
+pub mod chart;
+pub mod curves;
 pub mod describe;
 pub mod duty;
 pub mod grid;
@@ -8,6 +10,7 @@ pub mod json;
 pub mod limits;
 pub mod regulators;
 pub mod report;
+pub mod run_picture;
 pub mod shift;
 pub mod sketch;
 pub mod solve;

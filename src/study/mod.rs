@@ -2,6 +2,7 @@
 
 pub mod assessment;
 pub mod caution;
+pub mod curves;
 pub mod duty;
 pub mod gain;
 pub mod limit;
