@@ -245,6 +245,20 @@ pub(crate) struct ReportOptions {
 }
 
 impl ReportOptions {
+    /// What the curves of the page are asked for.
+    pub fn curves(&self) -> CurvesOptions {
+        CurvesOptions {
+            input: FileOption {
+                file: self.input.file.clone(),
+            },
+            bank: None,
+            cases: self.cases.clone(),
+            pumps: None,
+            svg: None,
+            csv: None,
+        }
+    }
+
     /// What the combination tables of the page are asked for.
     pub fn duty(&self) -> DutyOptions {
         DutyOptions {

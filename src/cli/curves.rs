@@ -12,7 +12,7 @@ use crate::network::Network;
 use crate::output::chart::{Surface, draw};
 use crate::output::curves::{Telling, figure, rows, summary};
 use crate::read::System;
-use crate::study::curves::{Case, CurvesError, curves as curves_of, stages};
+use crate::study::curves::{Case, Curves, CurvesError, curves as curves_of, stages};
 
 /// Most cases drawn unless they are named: more cannot be told apart.
 const MOST_CASES: usize = 12;
@@ -29,19 +29,7 @@ pub(super) fn curves(options: &CurvesOptions) -> Result<(), Failure> {
             .transpose()
     };
     let (svg, csv) = (open(&options.svg)?, open(&options.csv)?);
-    let cases = systems
-        .iter()
-        .map(|(_, system)| {
-            let network = &system.network;
-            let switched = match &options.pumps {
-                Some(names) => pumps_named(network, names)?,
-                None => network.pump_ids().collect(),
-            };
-            Ok(Case { network, switched })
-        })
-        .collect::<Result<Vec<Case>, Failure>>()?;
-    let drawn = curves_of(&cases, options.bank.as_deref())
-        .map_err(|why| refused(&why, &systems, &input.name))?;
+    let drawn = drawn(options, &systems, &input.name)?;
     let Some((_, first)) = systems.first() else {
         return Err(Failure::Broken(format!(
             "{} has no case to draw",
@@ -91,6 +79,47 @@ pub(super) fn curves(options: &CurvesOptions) -> Result<(), Failure> {
         ));
     }
     print(&out)
+}
+
+/// The curves of the cases.
+fn drawn(
+    options: &CurvesOptions,
+    systems: &[(String, System)],
+    file: &str,
+) -> Result<Curves, Failure> {
+    let cases = systems
+        .iter()
+        .map(|(_, system)| {
+            let network = &system.network;
+            let switched = match &options.pumps {
+                Some(names) => pumps_named(network, names)?,
+                None => network.pump_ids().collect(),
+            };
+            Ok(Case { network, switched })
+        })
+        .collect::<Result<Vec<Case>, Failure>>()?;
+    curves_of(&cases, options.bank.as_deref()).map_err(|why| refused(&why, systems, file))
+}
+
+/// The picture for a page, of the cases named or those that fit; none where there is nothing that curves can show.
+pub(super) fn embedded(options: &CurvesOptions, input: &Input) -> Result<Option<String>, Failure> {
+    let (systems, _) = systems(options, input)?;
+    let Ok(drawn) = drawn(options, &systems, &input.name) else {
+        return Ok(None);
+    };
+    let named: Vec<(String, &Network)> = systems
+        .iter()
+        .map(|(name, system)| (name.clone(), &system.network))
+        .collect();
+    Ok(systems.first().map(|(_, first)| {
+        let telling = Telling {
+            curves: &drawn,
+            cases: &named,
+            units: &first.units,
+            title: "",
+        };
+        draw(&figure(&telling, "picture-of-curves"), Surface::Embedded)
+    }))
 }
 
 /// The systems of the cases to draw with their names (that of the file as it stands is empty), and how many were left out.

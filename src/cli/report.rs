@@ -4,14 +4,17 @@ use sha2::{Digest, Sha256};
 
 use super::Failure;
 use super::args::ReportOptions;
+use super::curves;
 use super::duty::{self, solve_cases};
 use super::files::{Input, Pending};
 use super::shift::{Writer, over_time, run_plan};
 use super::solve::read;
 use crate::network::Network;
 use crate::output;
+use crate::output::chart::{Surface, draw};
 use crate::output::grid::Grid;
-use crate::output::report::{Report, RunShown, page};
+use crate::output::report::{Picture, Report, RunShown, page};
+use crate::output::run_picture::{self, Traces};
 use crate::output::shift::Telling;
 use crate::output::words::Words;
 use crate::read::{OverTime, System};
@@ -67,7 +70,13 @@ pub(super) fn report(options: &ReportOptions) -> Result<(), Failure> {
             .collect(),
         velocities,
         combinations: solved.iter().map(duty::case_grid).collect(),
-        curves: Vec::new(),
+        curves: curves::embedded(&options.curves(), &input)?
+            .map(|svg| Picture {
+                caption: "What the pumps give, what the system asks for, and where they meet, in each case.".to_owned(),
+                svg,
+            })
+            .into_iter()
+            .collect(),
         scores: scores(network, &runs),
         runs,
         worked: worked::worked(network, settings, &balances.first),
@@ -86,14 +95,25 @@ fn runs<'a>(system: &'a System, over_time: &'a OverTime) -> Result<Vec<RunShown<
     over_time
         .plans
         .iter()
-        .map(|plan| {
+        .enumerate()
+        .map(|(number, plan)| {
             let mut writer = Writer::open(telling, None, None, "")?;
+            writer.traces = Some(Traces::new(&telling));
             let (run, story) = run_plan(telling, over_time, plan, &mut writer)?;
+            let answer = telling.answer(&story, &run.score, run.ends_at);
+            let picture = |traces: Traces| {
+                let mut figure = run_picture::figure(&telling, plan, &run, &traces, "", &answer);
+                figure.id = format!("run-{number}");
+                Picture {
+                    caption: format!("Levels, flows and running pumps under {}.", plan.name),
+                    svg: draw(&figure, Surface::Embedded),
+                }
+            };
             Ok(RunShown {
                 telling,
-                answer: telling.answer(&story, &run.score, run.ends_at),
+                chart: writer.traces.take().map(picture),
+                answer,
                 run,
-                chart: None,
             })
         })
         .collect()
