@@ -20,7 +20,8 @@ const MOST_CASES: usize = 12;
 pub(super) fn curves(options: &CurvesOptions) -> Result<(), Failure> {
     let input = Input::open(&options.input.file)?;
     let (systems, left_out) = systems(options, &input)?;
-    let standard_output = |path: &Option<std::path::PathBuf>| path.as_deref() == Some(Path::new("-"));
+    let standard_output =
+        |path: &Option<std::path::PathBuf>| path.as_deref() == Some(Path::new("-"));
     let open = |path: &Option<std::path::PathBuf>| {
         path.as_deref()
             .filter(|path| *path != Path::new("-"))
@@ -42,7 +43,10 @@ pub(super) fn curves(options: &CurvesOptions) -> Result<(), Failure> {
     let drawn = curves_of(&cases, options.bank.as_deref())
         .map_err(|why| refused(&why, &systems, &input.name))?;
     let Some((_, first)) = systems.first() else {
-        return Err(Failure::Broken(format!("{} has no case to draw", input.name)));
+        return Err(Failure::Broken(format!(
+            "{} has no case to draw",
+            input.name
+        )));
     };
     let named: Vec<(String, &Network)> = systems
         .iter()
@@ -109,7 +113,11 @@ fn systems(
             )
             .collect(),
     };
-    let left_out = if chosen { 0 } else { names.len().saturating_sub(MOST_CASES) };
+    let left_out = if chosen {
+        0
+    } else {
+        names.len().saturating_sub(MOST_CASES)
+    };
     names.truncate(names.len() - left_out);
     let system = |name: String| {
         if name == AS_IS {
@@ -119,7 +127,10 @@ fn systems(
         let system = read(input, &changes)?;
         Ok((name, system))
     };
-    let systems = names.into_iter().map(system).collect::<Result<_, Failure>>()?;
+    let systems = names
+        .into_iter()
+        .map(system)
+        .collect::<Result<_, Failure>>()?;
     Ok((systems, left_out))
 }
 
@@ -142,8 +153,10 @@ fn refused(why: &CurvesError, systems: &[(String, System)], file: &str) -> Failu
     let message = match (why, systems) {
         (CurvesError::NoBank(name), [(_, system), ..]) => {
             let network = &system.network;
-            let known: Vec<String> =
-                stages(network).iter().map(|stage| stage.name(network)).collect();
+            let known: Vec<String> = stages(network)
+                .iter()
+                .map(|stage| stage.name(network))
+                .collect();
             let near = crate::diagnostic::nearest(name, known.iter().map(String::as_str));
             let help = near.map_or_else(
                 || format!("there are {}", known.join(", ")),

@@ -1,8 +1,8 @@
 //! A run as a picture: levels with their alarm, start and stop lines, flows, and who ran when.
 
 use super::chart::{
-    Align, Axis, AxisKind, Band, Bars, Colour, Curve, Dash, Figure, KeyColumn, KeyEntry, Pane,
-    Plot, Rule, Strip, Stroke, Table,
+    Align, Axis, AxisKind, Band, Bars, Colour, Column, Curve, Dash, Figure, KeyColumn, KeyEntry,
+    Pane, Plot, Rule, Strip, Stroke, Table,
 };
 use super::shift::Telling;
 use crate::network::NodeId;
@@ -48,7 +48,8 @@ impl Traces {
     pub fn new(telling: &Telling) -> Self {
         let all = columns(telling.network, telling.shift);
         let find = |name: &str, figure: &str| {
-            all.iter().position(|column| column.name == name && column.figure == figure)
+            all.iter()
+                .position(|column| column.name == name && column.figure == figure)
         };
         let tank = |node: NodeId| {
             let name = &telling.network.node(node).name;
@@ -71,7 +72,12 @@ impl Traces {
             })
         };
         Self {
-            tanks: telling.shift.tanks.iter().filter_map(|it| tank(it.node)).collect(),
+            tanks: telling
+                .shift
+                .tanks
+                .iter()
+                .filter_map(|it| tank(it.node))
+                .collect(),
             pumps: telling.network.pump_ids().filter_map(pump).collect(),
         }
     }
@@ -124,17 +130,27 @@ pub fn figure(
     panes.push(Pane::Strip(strip(telling, run, traces)));
     let mut notes: Vec<String> = Vec::new();
     if traces.tanks.len() > MOST_TANKS {
-        notes.push(format!("{} more tanks are not drawn.", traces.tanks.len() - MOST_TANKS));
+        notes.push(format!(
+            "{} more tanks are not drawn.",
+            traces.tanks.len() - MOST_TANKS
+        ));
     }
     notes.extend(super::CAUTION.lines().map(str::to_owned));
-    let heading = if title.is_empty() { "Run over the shift" } else { title };
+    let heading = if title.is_empty() {
+        "Run over the shift"
+    } else {
+        title
+    };
     Figure {
         id: "run".to_owned(),
         title: heading.to_owned(),
         subtitle: std::iter::once(format!("Plan {}", run.plan))
             .chain(answer.lines().map(str::to_owned))
             .collect(),
-        description: format!("Levels and running pumps over time. {}", answer.replace('\n', " ")),
+        description: format!(
+            "Levels and running pumps over time. {}",
+            answer.replace('\n', " ")
+        ),
         x: Axis {
             label: "Time of day".to_owned(),
             range: (0.0, run.ends_at.max(1.0)),
@@ -142,29 +158,27 @@ pub fn figure(
                 starts: telling.shift.starts,
             },
         },
+        key: key(&panes),
         panes,
-        key: key(traces),
         table: Some(table(telling, run)),
         notes,
     }
 }
 
-const INFLOW: Stroke = Stroke {
-    colour: Colour::Green,
-    dash: Dash::Long,
-    width: 0.4,
-};
-const OUTFLOW: Stroke = Stroke {
-    colour: Colour::Ink,
-    dash: Dash::Solid,
-    width: 0.25,
-};
+const LEVEL: Stroke = stroke(Colour::Blue, Dash::Solid, 0.5);
+const INFLOW: Stroke = stroke(Colour::Green, Dash::Long, 0.4);
+const OUTFLOW: Stroke = stroke(Colour::Ink, Dash::Solid, 0.25);
+const START: Stroke = stroke(Colour::Green, Dash::Short, 0.3);
+const STOP: Stroke = stroke(Colour::Purple, Dash::DashDot, 0.3);
+const BRIM: Stroke = stroke(Colour::Vermillion, Dash::Solid, 0.3);
+const ALARM: Stroke = stroke(Colour::Vermillion, Dash::Long, 0.3);
+const TRIP: Stroke = stroke(Colour::Vermillion, Dash::Dots, 0.3);
 
-fn line(colour: Colour, dash: Dash) -> Stroke {
+const fn stroke(colour: Colour, dash: Dash, width: f64) -> Stroke {
     Stroke {
         colour,
         dash,
-        width: 0.3,
+        width,
     }
 }
 
@@ -175,10 +189,18 @@ fn levels(telling: &Telling, plan: &Plan, tank: &TankTrace) -> Plot {
     let points: Vec<[f64; 2]> = tank.level.iter().map(convert).collect();
     let rules = rules(telling, plan, tank.node);
     let of_rules = rules.iter().map(|rule| rule.at);
-    let highest = points.iter().map(|point| point[1]).chain(of_rules).fold(0.0, f64::max);
+    let highest = points
+        .iter()
+        .map(|point| point[1])
+        .chain(of_rules)
+        .fold(0.0, f64::max);
     let say = |point: &[f64; 2]| {
         let level = units.number(Kind::Length, units.to_si(Kind::Length, point[1]));
-        format!("{} {name} at {level} {}", telling.clock(point[0]), units.unit(Kind::Length).symbol)
+        format!(
+            "{} {name} at {level} {}",
+            telling.clock(point[0]),
+            units.unit(Kind::Length).symbol
+        )
     };
     // so many under the pointer that none is far, so few that the file stays small
     let every = points.len().div_ceil(200).max(1);
@@ -192,11 +214,17 @@ fn levels(telling: &Telling, plan: &Plan, tank: &TankTrace) -> Plot {
         curves: vec![Curve {
             name: format!("level of {name}"),
             data: vec![("kind", "level".to_owned())],
-            stroke: Stroke { colour: Colour::Blue, dash: Dash::Solid, width: 0.5 },
+            stroke: LEVEL,
             say: points
                 .iter()
                 .enumerate()
-                .map(|(i, point)| if i % every == 0 { say(point) } else { String::new() })
+                .map(|(i, point)| {
+                    if i % every == 0 {
+                        say(point)
+                    } else {
+                        String::new()
+                    }
+                })
                 .collect(),
             points,
             ..Curve::default()
@@ -227,23 +255,24 @@ fn spills(telling: &Telling, tank: &TankTrace) -> Vec<Band> {
 fn rules(telling: &Telling, plan: &Plan, node: NodeId) -> Vec<Rule> {
     let units = telling.units;
     let mut lines: Vec<(f64, Stroke, Vec<String>)> = Vec::new();
-    let mut add = |at: f64, stroke: Stroke, name: String| {
-        match lines.iter_mut().find(|(level, _, _)| (level - at).abs() < 1e-9) {
-            Some((_, _, names)) if names.contains(&name) => {}
-            Some((_, _, names)) => names.push(name),
-            None => lines.push((at, stroke, vec![name])),
-        }
+    let mut add = |at: f64, stroke: Stroke, name: String| match lines
+        .iter_mut()
+        .find(|(level, _, _)| (level - at).abs() < 1e-9)
+    {
+        Some((_, _, names)) if names.contains(&name) => {}
+        Some((_, _, names)) => names.push(name),
+        None => lines.push((at, stroke, vec![name])),
     };
     let tank = telling.shift.tanks.iter().find(|tank| tank.node == node);
     if let Some(tank) = tank {
-        add(tank.brim, line(Colour::Vermillion, Dash::Solid), "overflow".to_owned());
+        add(tank.brim, BRIM, "overflow".to_owned());
         if let Some(alarm) = tank.alarm {
-            add(alarm, line(Colour::Vermillion, Dash::Long), "alarm".to_owned());
+            add(alarm, ALARM, "alarm".to_owned());
         }
     }
     let of_tank = |trip: &&Trip| trip.tank == node;
     for trip in plan.trips.iter().filter(of_tank) {
-        add(trip.level, line(Colour::Vermillion, Dash::Dots), "trip".to_owned());
+        add(trip.level, TRIP, "trip".to_owned());
     }
     for group in &plan.groups {
         let Call::Bands(bands) = &group.call else {
@@ -253,9 +282,13 @@ fn rules(telling: &Telling, plan: &Plan, node: NodeId) -> Vec<Rule> {
             continue;
         }
         for (k, step) in bands.steps.iter().enumerate() {
-            let number = if bands.steps.len() > 1 { format!(" {}", k + 1) } else { String::new() };
-            add(step.start, line(Colour::Green, Dash::Short), format!("start{number}"));
-            add(step.stop, line(Colour::Purple, Dash::DashDot), format!("stop{number}"));
+            let number = if bands.steps.len() > 1 {
+                format!(" {}", k + 1)
+            } else {
+                String::new()
+            };
+            add(step.start, START, format!("start{number}"));
+            add(step.stop, STOP, format!("stop{number}"));
         }
     }
     lines
@@ -274,7 +307,11 @@ fn counted(names: &[String]) -> String {
     let mut last = "";
     for name in names {
         let (word, number) = name.split_once(' ').unwrap_or((name, ""));
-        let next = if word == last && !number.is_empty() { number } else { name };
+        let next = if word == last && !number.is_empty() {
+            number
+        } else {
+            name
+        };
         if !out.is_empty() {
             out.push_str(", ");
         }
@@ -302,7 +339,10 @@ fn flows(telling: &Telling, tank: &TankTrace) -> Option<Plot> {
         curve("outflow", &tank.outflow, OUTFLOW),
         curve("inflow", &tank.inflow, INFLOW),
     ];
-    let values = curves.iter().flat_map(|curve| &curve.points).map(|point| point[1]);
+    let values = curves
+        .iter()
+        .flat_map(|curve| &curve.points)
+        .map(|point| point[1]);
     let (low, high) = values.fold((0.0, 0.0), |(low, high), value| {
         (f64::min(low, value), f64::max(high, value))
     });
@@ -320,14 +360,22 @@ fn flows(telling: &Telling, tank: &TankTrace) -> Option<Plot> {
 
 fn strip(telling: &Telling, run: &Run, traces: &Traces) -> Strip {
     let row = |trace: &PumpTrace| {
-        let score = run.score.pumps.iter().find(|score| score.pump == trace.pump);
+        let score = run
+            .score
+            .pumps
+            .iter()
+            .find(|score| score.pump == trace.pump);
         let note = score.map_or_else(String::new, |score| {
             let word = if score.starts == 1 { "start" } else { "starts" };
             format!("{} {word}, {:.1} h", score.starts, score.run_time / HOUR)
         });
         Bars {
             name: telling.network.pump(trace.pump).name.clone(),
-            bars: trace.runs.iter().map(|(from, to)| (*from, to.min(run.ends_at))).collect(),
+            bars: trace
+                .runs
+                .iter()
+                .map(|(from, to)| (*from, to.min(run.ends_at)))
+                .collect(),
             colour: Colour::Blue,
             note,
         }
@@ -337,39 +385,35 @@ fn strip(telling: &Telling, run: &Run, traces: &Traces) -> Strip {
     }
 }
 
-fn key(traces: &Traces) -> Vec<KeyColumn> {
-    let entry = |stroke, text: &str| KeyEntry {
-        stroke: Some(stroke),
-        text: text.to_owned(),
-        ..KeyEntry::default()
-    };
-    if traces.tanks.is_empty() {
-        return Vec::new();
+/// The lines that occur.
+fn key(panes: &[Pane]) -> Vec<KeyColumn> {
+    let mut strokes: Vec<Stroke> = Vec::new();
+    for pane in panes {
+        if let Pane::Plot(plot) = pane {
+            strokes.extend(plot.curves.iter().map(|curve| curve.stroke));
+            strokes.extend(plot.rules.iter().map(|rule| rule.stroke));
+        }
     }
+    let column = |entries: &[(Stroke, &str)]| KeyColumn {
+        heading: String::new(),
+        entries: entries
+            .iter()
+            .filter(|(stroke, _)| strokes.contains(stroke))
+            .map(|(stroke, text)| KeyEntry {
+                stroke: Some(*stroke),
+                text: (*text).to_owned(),
+                ..KeyEntry::default()
+            })
+            .collect(),
+    };
     vec![
-        KeyColumn {
-            heading: "Tanks".to_owned(),
-            entries: vec![
-                entry(Stroke { colour: Colour::Blue, dash: Dash::Solid, width: 0.5 }, "level"),
-                entry(INFLOW, "inflow"),
-                entry(OUTFLOW, "outflow"),
-            ],
-        },
-        KeyColumn {
-            heading: "Levels".to_owned(),
-            entries: vec![
-                entry(line(Colour::Green, Dash::Short), "start"),
-                entry(line(Colour::Purple, Dash::DashDot), "stop"),
-            ],
-        },
-        KeyColumn {
-            heading: String::new(),
-            entries: vec![
-                entry(line(Colour::Vermillion, Dash::Solid), "overflow"),
-                entry(line(Colour::Vermillion, Dash::Long), "alarm"),
-                entry(line(Colour::Vermillion, Dash::Dots), "low-level trip"),
-            ],
-        },
+        column(&[(LEVEL, "level"), (INFLOW, "inflow"), (OUTFLOW, "outflow")]),
+        column(&[(START, "start"), (STOP, "stop")]),
+        column(&[
+            (BRIM, "overflow"),
+            (ALARM, "alarm"),
+            (TRIP, "low-level trip"),
+        ]),
     ]
 }
 
@@ -378,7 +422,10 @@ fn table(telling: &Telling, run: &Run) -> Table {
     const KILOWATT_HOUR: f64 = 3.6e6;
     let units = telling.units;
     let energy = |joules: Option<f64>| {
-        joules.map_or_else(|| "-".to_owned(), |joules| format!("{:.1}", joules / KILOWATT_HOUR))
+        joules.map_or_else(
+            || "-".to_owned(),
+            |joules| format!("{:.1}", joules / KILOWATT_HOUR),
+        )
     };
     let rows = run.score.pumps.iter().map(|pump| {
         vec![
@@ -390,16 +437,23 @@ fn table(telling: &Telling, run: &Run) -> Table {
             energy(pump.energy),
         ]
     });
-    let column = |name: String| (name, Align::Right);
+    let column = |heading: &str, unit: &str| Column {
+        heading: heading.to_owned(),
+        unit: unit.to_owned(),
+        align: Align::Right,
+    };
     Table {
         title: "Pumps".to_owned(),
         columns: vec![
-            ("pump".to_owned(), Align::Left),
-            column("starts".to_owned()),
-            column("most in an hour".to_owned()),
-            column("run, h".to_owned()),
-            column(format!("volume, {}", units.unit(Kind::Volume).symbol)),
-            column("energy, kWh".to_owned()),
+            Column {
+                align: Align::Left,
+                ..column("pump", "")
+            },
+            column("starts", ""),
+            column("most in an hour", ""),
+            column("run", "h"),
+            column("volume", units.unit(Kind::Volume).symbol),
+            column("energy", "kWh"),
         ],
         rows: rows.collect(),
     }

@@ -85,9 +85,17 @@ fn heading(out: &mut Markup, figure: &Figure, mut y: f64) -> f64 {
     let room = WIDTH - 2.0 * EDGE;
     if !figure.title.is_empty() {
         y += TITLE;
-        out.text([EDGE, y], &shortened(&figure.title, TITLE, room), Type::of(TITLE).bold());
+        out.text(
+            [EDGE, y],
+            &shortened(&figure.title, TITLE, room),
+            Type::of(TITLE).bold(),
+        );
     }
-    for line in figure.subtitle.iter().flat_map(|text| wrapped(text, NAME, room)) {
+    for line in figure
+        .subtitle
+        .iter()
+        .flat_map(|text| wrapped(text, NAME, room))
+    {
         y += 1.45 * NAME;
         out.text([EDGE, y], &line, Type::of(NAME));
     }
@@ -107,7 +115,12 @@ fn panes(out: &mut Markup, figure: &Figure, mut y: f64) -> f64 {
             Pane::Strip(strip) => ROW * strip.rows.len() as f64,
         };
         let frame = Frame {
-            area: Area { left, top: y, right, bottom: y + height },
+            area: Area {
+                left,
+                top: y,
+                right,
+                bottom: y + height,
+            },
             margin: RIGHT - EDGE,
             edge: EDGE,
         };
@@ -121,7 +134,11 @@ fn panes(out: &mut Markup, figure: &Figure, mut y: f64) -> f64 {
     let words = written(&marked, figure.x.kind);
     y += 1.3 * LABEL;
     for (value, word) in marked.iter().zip(&words) {
-        out.text([x.at(*value), y], word, Type::of(LABEL).anchored(Anchor::Middle));
+        out.text(
+            [x.at(*value), y],
+            word,
+            Type::of(LABEL).anchored(Anchor::Middle),
+        );
     }
     y += 1.5 * NAME;
     let set = Type::of(NAME).anchored(Anchor::Middle);
@@ -130,27 +147,41 @@ fn panes(out: &mut Markup, figure: &Figure, mut y: f64) -> f64 {
 }
 
 fn key(out: &mut Markup, columns: &[KeyColumn], y: f64) -> f64 {
-    let columns: Vec<&KeyColumn> = columns.iter().filter(|column| !column.entries.is_empty()).collect();
+    let columns: Vec<&KeyColumn> = columns
+        .iter()
+        .filter(|column| !column.entries.is_empty())
+        .collect();
     let mut lowest = y;
     let mut next = EDGE;
     for (column, room) in columns.iter().zip(key_widths(&columns)) {
         let left = next;
         next += room;
-        let mut y = y + LABEL;
-        out.text([left, y], &shortened(&column.heading, LABEL, room - 2.0), Type::of(LABEL).bold());
+        let mut y = if column.heading.is_empty() {
+            y
+        } else {
+            y + LABEL
+        };
+        let heading = shortened(&column.heading, LABEL, room - 2.0);
+        out.text([left, y], &heading, Type::of(LABEL).bold());
         for entry in &column.entries {
             y += LINE;
             self::entry(out, entry, [left, y], room - 2.0);
         }
         lowest = lowest.max(y);
     }
-    if columns.is_empty() { y } else { lowest + BETWEEN + 1.0 }
+    if columns.is_empty() {
+        y
+    } else {
+        lowest + BETWEEN + 1.0
+    }
 }
 
 /// What each column needs; the widest give way where that is too much.
 fn key_widths(columns: &[&KeyColumn]) -> Vec<f64> {
     const APART: f64 = 5.0;
-    let need = |entry: &KeyEntry| SAMPLE + 2.7 + width(&entry.tag, LABEL).max(2.6) + width(&entry.text, LABEL);
+    let need = |entry: &KeyEntry| {
+        SAMPLE + 2.7 + width(&entry.tag, LABEL).max(2.6) + width(&entry.text, LABEL)
+    };
     let mut widths: Vec<f64> = columns
         .iter()
         .map(|column| {
@@ -184,8 +215,16 @@ fn entry(out: &mut Markup, entry: &KeyEntry, [left, y]: [f64; 2], room: f64) {
     let (from, to) = ([left, middle], [left + SAMPLE, middle]);
     if entry.underlaid {
         let colour = entry.stroke.map_or(Colour::Ink, |stroke| stroke.colour);
-        let under = Stroke { colour, dash: Dash::Solid, width: 2.4 };
-        out.line(from, to, &format!("{} stroke-opacity=\"0.2\"", stroked(under)));
+        let under = Stroke {
+            colour,
+            dash: Dash::Solid,
+            width: 2.4,
+        };
+        out.line(
+            from,
+            to,
+            &format!("{} stroke-opacity=\"0.2\"", stroked(under)),
+        );
     }
     if let Some(stroke) = entry.stroke {
         out.line(from, to, &stroked(stroke));
@@ -198,43 +237,67 @@ fn entry(out: &mut Markup, entry: &KeyEntry, [left, y]: [f64; 2], room: f64) {
         out.text([x, y], &entry.tag, Type::of(LABEL).bold());
         x += width(&entry.tag, LABEL).max(2.6) + 1.2;
     }
-    out.text([x, y], &shortened(&entry.text, LABEL, left + room - x), Type::of(LABEL));
+    out.text(
+        [x, y],
+        &shortened(&entry.text, LABEL, left + room - x),
+        Type::of(LABEL),
+    );
 }
 
 fn table(out: &mut Markup, table: &Table, mut y: f64) -> f64 {
-    const GAP: f64 = 3.5;
-    let columns = table.columns.len();
-    let mut widths: Vec<f64> = table.columns.iter().map(|(name, _)| width(name, LABEL)).collect();
-    for row in &table.rows {
-        for (wide, cell) in widths.iter_mut().zip(row) {
-            *wide = wide.max(width(cell, LABEL));
-        }
-    }
-    // Words give way where the table is too wide, the widest first.
-    let room = WIDTH - 2.0 * EDGE - GAP * columns.saturating_sub(1) as f64;
-    shrink(&mut widths, |i| table.columns[i].1 == Align::Left, room);
-    y += LABEL;
-    out.text([EDGE, y], &table.title, Type::of(LABEL).bold());
-    y += 1.2;
+    const GAP: f64 = 3.0;
+    const SIZES: [f64; 3] = [LABEL, 2.4, 2.25];
+    let gaps = GAP * table.columns.len().saturating_sub(1) as f64;
+    let room = WIDTH - 2.0 * EDGE - gaps;
+    let fits = |size: &f64| column_widths(table, *size).iter().sum::<f64>() <= room;
+    let size = SIZES.into_iter().find(fits).unwrap_or(SIZES[2]);
+    let mut widths = column_widths(table, size);
+    shrink(&mut widths, |i| table.columns[i].align == Align::Left, room);
     let line = |out: &mut Markup, y: f64, cells: &mut dyn Iterator<Item = &str>, colour: Colour| {
         let mut x = EDGE;
-        for ((cell, wide), (_, align)) in cells.zip(&widths).zip(&table.columns) {
-            let set = Type::of(LABEL).coloured(colour);
-            let cell = shortened(cell, LABEL, *wide + 0.01);
-            match align {
+        for ((cell, wide), column) in cells.zip(&widths).zip(&table.columns) {
+            let set = Type::of(size).coloured(colour);
+            let cell = shortened(cell, size, *wide + 0.01);
+            match column.align {
                 Align::Left => out.text([x, y], &cell, set),
                 Align::Right => out.text([x + wide, y], &cell, set.anchored(Anchor::End)),
             }
             x += wide + GAP;
         }
     };
-    y += 0.85 * LINE;
-    line(out, y, &mut table.columns.iter().map(|(name, _)| name.as_str()), Colour::Grey);
+    let columns = || table.columns.iter();
+    y += LABEL;
+    out.text([EDGE, y], &table.title, Type::of(LABEL).bold());
+    y += LINE + 1.0;
+    line(
+        out,
+        y,
+        &mut columns().map(|column| column.heading.as_str()),
+        Colour::Grey,
+    );
+    y += 0.8 * LINE;
+    line(
+        out,
+        y,
+        &mut columns().map(|column| column.unit.as_str()),
+        Colour::Grey,
+    );
+    y += 0.2;
     for row in &table.rows {
         y += LINE;
         line(out, y, &mut row.iter().map(String::as_str), Colour::Ink);
     }
     y + BETWEEN
+}
+
+/// What the widest cell of each column needs.
+fn column_widths(table: &Table, size: f64) -> Vec<f64> {
+    let of_column = |(i, column): (usize, &super::Column)| {
+        let heading = width(&column.heading, size).max(width(&column.unit, size));
+        let cells = table.rows.iter().filter_map(|row| row.get(i));
+        cells.map(|cell| width(cell, size)).fold(heading, f64::max)
+    };
+    table.columns.iter().enumerate().map(of_column).collect()
 }
 
 fn notes(out: &mut Markup, notes: &[String], mut y: f64) -> f64 {

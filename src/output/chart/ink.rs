@@ -144,7 +144,9 @@ pub(super) fn style(id: &str, surface: Surface) -> String {
     let mut out = format!("#{id}{{{}}}", set(paper, &light));
     for colour in Colour::ALL {
         let n = colour.number();
-        out.push_str(&format!("#{id} .s{n}{{stroke:var(--c{n})}}#{id} .f{n}{{fill:var(--c{n})}}"));
+        out.push_str(&format!(
+            "#{id} .s{n}{{stroke:var(--c{n})}}#{id} .f{n}{{fill:var(--c{n})}}"
+        ));
     }
     out.push_str(&format!(
         "#{id} .paper{{fill:var(--paper)}}#{id} .halo{{stroke:var(--paper)}}#{id} .curve:hover path{{stroke-width:.9}}"

@@ -83,7 +83,11 @@ pub(super) fn stroked(stroke: Stroke) -> String {
 
 /// Attributes of a fill.
 pub(super) fn filled(colour: Colour) -> String {
-    format!(" class=\"f{}\" fill=\"{}\"", colour.number(), colour.on_light())
+    format!(
+        " class=\"f{}\" fill=\"{}\"",
+        colour.number(),
+        colour.on_light()
+    )
 }
 
 impl Markup {
@@ -146,7 +150,8 @@ impl Markup {
 
     /// A circle.
     pub fn circle(&mut self, centre: [f64; 2], radius: f64, attributes: &str) {
-        let place = attribute("cx", centre[0]) + &attribute("cy", centre[1]) + &attribute("r", radius);
+        let place =
+            attribute("cx", centre[0]) + &attribute("cy", centre[1]) + &attribute("r", radius);
         self.raw(&format!("<circle{place}{attributes}/>"));
     }
 
@@ -157,18 +162,26 @@ impl Markup {
 
     /// A text that reads upwards.
     pub fn upright(&mut self, at: [f64; 2], text: &str, set: Type) {
-        let turn = format!(" transform=\"rotate(-90 {} {})\"", number(at[0]), number(at[1]));
+        let turn = format!(
+            " transform=\"rotate(-90 {} {})\"",
+            number(at[0]),
+            number(at[1])
+        );
         self.text_with(at, text, set, &turn);
     }
 
     fn text_with(&mut self, at: [f64; 2], text: &str, set: Type, more: &str) {
+        if text.is_empty() {
+            return;
+        }
         let anchor = match set.anchor {
             Anchor::Start => "",
             Anchor::Middle => " text-anchor=\"middle\"",
             Anchor::End => " text-anchor=\"end\"",
         };
         let weight = if set.bold { " font-weight=\"600\"" } else { "" };
-        let place = attribute("x", at[0]) + &attribute("y", at[1]) + &attribute("font-size", set.size);
+        let place =
+            attribute("x", at[0]) + &attribute("y", at[1]) + &attribute("font-size", set.size);
         let text = escaped(text);
         if set.halo {
             // Under the text and not in it: readers that do not know paint-order would draw the paper over the letters.
@@ -178,7 +191,10 @@ impl Markup {
                 super::ink::PAPER
             ));
         }
-        self.raw(&format!("<text{place}{anchor}{weight}{more}{}>{text}</text>", filled(set.colour)));
+        self.raw(&format!(
+            "<text{place}{anchor}{weight}{more}{}>{text}</text>",
+            filled(set.colour)
+        ));
     }
 
     /// All that was written.

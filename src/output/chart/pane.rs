@@ -1,7 +1,7 @@
 //! A plot: bands, curves, level lines and marks over the common axis, with their labels.
 
 use super::ink::{Colour, Dash, Stroke};
-use super::label::{Area, Places, Wanted};
+use super::label::{Area, Places, UPPER_RIGHT, Wanted};
 use super::markup::{Anchor, Markup, Type, filled, number, stroked};
 use super::scale::{Scale, ticks, written};
 use super::{Curve, Mark, Plot, Shape};
@@ -48,7 +48,11 @@ struct Drawn<'a> {
 
 /// Faint lines behind everything.
 fn faint(width: f64, opacity: f64) -> String {
-    let stroke = Stroke { colour: Colour::Grey, dash: Dash::Solid, width };
+    let stroke = Stroke {
+        colour: Colour::Grey,
+        dash: Dash::Solid,
+        width,
+    };
     format!("{} stroke-opacity=\"{}\"", stroked(stroke), number(opacity))
 }
 
@@ -58,7 +62,12 @@ impl Drawn<'_> {
     }
 
     fn bands(&self, out: &mut Markup) {
-        let Area { left, right, top, bottom } = self.frame.area;
+        let Area {
+            left,
+            right,
+            top,
+            bottom,
+        } = self.frame.area;
         for band in &self.plot.bands {
             let from = self.x.at(band.range.0).clamp(left, right);
             let to = self.x.at(band.range.1).clamp(left, right);
@@ -71,8 +80,13 @@ impl Drawn<'_> {
     }
 
     fn axes(&self, out: &mut Markup, marked: &[f64]) {
-        let Area { left, right, top, bottom } = self.frame.area;
-        let rows = ((bottom - top) / 6.0).round().clamp(2.0, 10.0) as usize;
+        let Area {
+            left,
+            right,
+            top,
+            bottom,
+        } = self.frame.area;
+        let rows = ((bottom - top) / 6.0).round().clamp(2.0, 12.0) as usize;
         let levels = ticks(self.plot.y.range, self.plot.y.kind, rows);
         let words = written(&levels, self.plot.y.kind);
         out.open(" class=\"axis\"");
@@ -86,11 +100,19 @@ impl Drawn<'_> {
             let set = Type::of(LABEL).anchored(Anchor::End);
             out.text([left - 1.2, y + 0.36 * LABEL], word, set);
         }
-        let edge = Stroke { colour: Colour::Ink, dash: Dash::Solid, width: 0.22 };
+        let edge = Stroke {
+            colour: Colour::Ink,
+            dash: Dash::Solid,
+            width: 0.22,
+        };
         out.line([left, top], [left, bottom], &stroked(edge));
         out.line([left, bottom], [right, bottom], &stroked(edge));
         let set = Type::of(NAME).anchored(Anchor::Middle);
-        out.upright([self.frame.edge + NAME, 0.5 * (top + bottom)], &self.plot.y.label, set);
+        out.upright(
+            [self.frame.edge + NAME, 0.5 * (top + bottom)],
+            &self.plot.y.label,
+            set,
+        );
         out.close();
     }
 
@@ -124,7 +146,11 @@ impl Drawn<'_> {
                 .copied()
                 .filter(|point| (low..=high).contains(&point[0]))
                 .collect();
-            let under = Stroke { colour: curve.stroke.colour, dash: Dash::Solid, width: 2.4 };
+            let under = Stroke {
+                colour: curve.stroke.colour,
+                dash: Dash::Solid,
+                width: 2.4,
+            };
             for piece in self.visible(&part) {
                 let look = format!("{} stroke-opacity=\"0.2\"", stroked(under));
                 out.path(&piece, &look);
@@ -144,7 +170,10 @@ impl Drawn<'_> {
     }
 
     fn curve(&self, out: &mut Markup, curve: &Curve) {
-        let mut attributes = format!(" class=\"curve\" data-name=\"{}\"", super::text::escaped(&curve.name));
+        let mut attributes = format!(
+            " class=\"curve\" data-name=\"{}\"",
+            super::text::escaped(&curve.name)
+        );
         for (key, value) in &curve.data {
             attributes.push_str(&format!(" data-{key}=\"{}\"", super::text::escaped(value)));
         }
@@ -168,17 +197,26 @@ impl Drawn<'_> {
     }
 
     fn labels_and_marks(&self, out: &mut Markup) {
-        let Area { left, right, top, bottom } = self.frame.area;
+        let Area {
+            left,
+            right,
+            top,
+            bottom,
+        } = self.frame.area;
         let mut places = Places::new(Area {
             left: left + 0.4,
             top: top - ABOVE,
             right: right + self.frame.margin,
             bottom: bottom - 0.3,
         });
-        let in_sight = |mark: &&Mark| self.frame.area.overlaps(&Area::around(self.place(mark.at), 0.01));
+        let in_sight = |mark: &&Mark| {
+            self.frame
+                .area
+                .overlaps(&Area::around(self.place(mark.at), 0.01))
+        };
         let marks: Vec<&Mark> = self.plot.marks.iter().filter(in_sight).collect();
         for mark in &marks {
-            places.take(Area::around(self.place(mark.at), half(mark.shape)));
+            places.mark(Area::around(self.place(mark.at), half(mark.shape)));
         }
         for curve in &self.plot.curves {
             for piece in self.visible(&curve.points) {
@@ -196,6 +234,7 @@ impl Drawn<'_> {
                 size: LABEL,
                 anchors: vec![self.place(mark.at)],
                 gap: half(mark.shape) + 0.25,
+                towards: UPPER_RIGHT,
                 modest: mark.modest,
             };
             wanted.push((label, plain));
@@ -206,12 +245,17 @@ impl Drawn<'_> {
                 size: LABEL,
                 anchors: anchors(&self.visible(&curve.points)),
                 gap: 0.7,
+                towards: UPPER_RIGHT,
                 modest: false,
             };
             wanted.push((label, plain));
         }
-        let of_rules: Vec<[String; 1]> =
-            self.plot.rules.iter().map(|rule| [rule.label.clone()]).collect();
+        let of_rules: Vec<[String; 1]> = self
+            .plot
+            .rules
+            .iter()
+            .map(|rule| [rule.label.clone()])
+            .collect();
         for (rule, texts) in self.plot.rules.iter().zip(&of_rules) {
             let y = self.y.at(rule.at);
             let label = Wanted {
@@ -219,17 +263,22 @@ impl Drawn<'_> {
                 size: LABEL,
                 anchors: vec![[right + 0.3, y], [left + 1.0, y], [0.5 * (left + right), y]],
                 gap: 0.6,
+                towards: 0.0,
                 modest: false,
             };
             wanted.push((label, plain));
         }
         for band in &self.plot.bands {
-            let middle = self.x.at(0.5 * (band.range.0 + band.range.1)).clamp(left, right);
+            let middle = self
+                .x
+                .at(0.5 * (band.range.0 + band.range.1))
+                .clamp(left, right);
             let label = Wanted {
                 texts: &band.labels,
                 size: LABEL,
                 anchors: vec![[middle, top + 0.4], [middle, bottom - 0.8]],
                 gap: 0.3,
+                towards: UPPER_RIGHT,
                 modest: true,
             };
             wanted.push((label, plain.coloured(Colour::Grey)));
@@ -239,7 +288,11 @@ impl Drawn<'_> {
             .filter(|(label, _)| !label.texts.is_empty() && !label.anchors.is_empty())
             .filter_map(|(label, set)| Some((places.place(label)?, *set)))
             .collect();
-        let thin = Stroke { colour: Colour::Grey, dash: Dash::Solid, width: 0.18 };
+        let thin = Stroke {
+            colour: Colour::Grey,
+            dash: Dash::Solid,
+            width: 0.18,
+        };
         for (placed, _) in &found {
             if let Some([from, to]) = placed.leader {
                 out.line(from, to, &stroked(thin));
@@ -276,9 +329,17 @@ fn half(shape: Shape) -> f64 {
 
 /// A mark on paper.
 pub(super) fn shape(out: &mut Markup, at: [f64; 2], shape: Shape, colour: Colour) {
-    let edge = Stroke { colour, dash: Dash::Solid, width: 0.4 };
+    let edge = Stroke {
+        colour,
+        dash: Dash::Solid,
+        width: 0.4,
+    };
     let ring = |out: &mut Markup| {
-        out.circle(at, MARK - 0.2, &format!(" class=\"paper\" fill=\"{}\"", super::ink::PAPER));
+        out.circle(
+            at,
+            MARK - 0.2,
+            &format!(" class=\"paper\" fill=\"{}\"", super::ink::PAPER),
+        );
         out.circle(at, MARK - 0.2, &stroked(edge));
     };
     match shape {
@@ -326,7 +387,9 @@ fn anchors(pieces: &[Vec<[f64; 2]>]) -> Vec<[f64; 2]> {
         return Vec::new();
     };
     let at = |share: f64| longest[((longest.len() - 1) as f64 * share).round() as usize];
-    [1.0, 0.9, 0.8, 0.7, 0.58, 0.45, 0.3, 0.15, 0.0].map(at).to_vec()
+    [1.0, 0.9, 0.8, 0.7, 0.58, 0.45, 0.3, 0.15, 0.0]
+        .map(at)
+        .to_vec()
 }
 
 /// The part of a straight line inside an area's height.

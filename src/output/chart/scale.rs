@@ -66,19 +66,28 @@ pub fn ticks(range: (f64, f64), kind: AxisKind, count: usize) -> Vec<f64> {
         let unit = 10f64.powi(decimals);
         (value * unit).round() / unit + 0.0
     });
-    if last < first { Vec::new() } else { marked.collect() }
+    if last < first {
+        Vec::new()
+    } else {
+        marked.collect()
+    }
 }
 
 /// The least of 1, 2, 5 times a power of ten that is not below `about`.
 fn nice(about: f64) -> f64 {
     let power = 10f64.powf(about.log10().floor());
-    let fits = [1.0, 2.0, 5.0].into_iter().find(|m| m * power >= about * (1.0 - 1e-9));
+    let fits = [1.0, 2.0, 5.0]
+        .into_iter()
+        .find(|m| m * power >= about * (1.0 - 1e-9));
     fits.unwrap_or(10.0) * power
 }
 
 /// How the marks of an axis are written, alike for all of them.
 pub(super) fn written(marks: &[f64], kind: AxisKind) -> Vec<String> {
-    let step = marks.windows(2).map(|pair| pair[1] - pair[0]).fold(f64::INFINITY, f64::min);
+    let step = marks
+        .windows(2)
+        .map(|pair| pair[1] - pair[0])
+        .fold(f64::INFINITY, f64::min);
     match kind {
         AxisKind::Number => {
             let decimals = if step.is_finite() {
@@ -114,9 +123,18 @@ mod tests {
 
     #[test]
     fn numbers_are_marked_in_round_steps() {
-        assert_eq!(ticks((0.0, 47.0), AxisKind::Number, 6), [0.0, 10.0, 20.0, 30.0, 40.0]);
-        assert_eq!(ticks((-0.3, 0.4), AxisKind::Number, 7), [-0.3, -0.2, -0.1, 0.0, 0.1, 0.2, 0.3, 0.4]);
-        assert_eq!(written(&ticks((-0.3, 0.1), AxisKind::Number, 4), AxisKind::Number)[0], "\u{2212}0.3");
+        assert_eq!(
+            ticks((0.0, 47.0), AxisKind::Number, 6),
+            [0.0, 10.0, 20.0, 30.0, 40.0]
+        );
+        assert_eq!(
+            ticks((-0.3, 0.4), AxisKind::Number, 7),
+            [-0.3, -0.2, -0.1, 0.0, 0.1, 0.2, 0.3, 0.4]
+        );
+        assert_eq!(
+            written(&ticks((-0.3, 0.1), AxisKind::Number, 4), AxisKind::Number)[0],
+            "\u{2212}0.3"
+        );
         assert!(ticks((1.0, 1.0), AxisKind::Number, 5).is_empty());
         assert!(ticks((0.0, f64::NAN), AxisKind::Number, 5).is_empty());
     }
@@ -127,7 +145,9 @@ mod tests {
         let marks = ticks((0.0, 8.0 * HOUR), kind, 8);
         assert_eq!(marks[0], 0.5 * HOUR);
         assert_eq!(written(&marks, kind)[0], "07:00");
-        let night = AxisKind::Clock { starts: 22.0 * HOUR };
+        let night = AxisKind::Clock {
+            starts: 22.0 * HOUR,
+        };
         let marks = ticks((0.0, 6.0 * HOUR), night, 3);
         assert_eq!(written(&marks, night), ["22:00", "00:00", "02:00", "04:00"]);
         let year = AxisKind::Clock { starts: 0.0 };

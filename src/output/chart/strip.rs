@@ -16,9 +16,18 @@ const SEEN: f64 = 0.06;
 
 /// Draws the rows; the frame's area is theirs.
 pub(super) fn strip(out: &mut Markup, strip: &Strip, frame: Frame, x: Scale, marked: &[f64]) {
-    let Area { left, right, top, bottom } = frame.area;
+    let Area {
+        left,
+        right,
+        top,
+        bottom,
+    } = frame.area;
     out.open(" class=\"pane\"");
-    let faint = Stroke { colour: Colour::Grey, dash: Dash::Solid, width: 0.12 };
+    let faint = Stroke {
+        colour: Colour::Grey,
+        dash: Dash::Solid,
+        width: 0.12,
+    };
     for value in marked {
         let at = x.at(*value);
         let look = format!("{} stroke-opacity=\"{}\"", stroked(faint), number(0.45));
@@ -27,7 +36,11 @@ pub(super) fn strip(out: &mut Markup, strip: &Strip, frame: Frame, x: Scale, mar
     for (k, row) in strip.rows.iter().enumerate() {
         self::row(out, row, top + ROW * k as f64, frame, x);
     }
-    let edge = Stroke { colour: Colour::Ink, dash: Dash::Solid, width: 0.22 };
+    let edge = Stroke {
+        colour: Colour::Ink,
+        dash: Dash::Solid,
+        width: 0.22,
+    };
     out.line([left, bottom], [right, bottom], &stroked(edge));
     out.close();
 }
@@ -35,12 +48,23 @@ pub(super) fn strip(out: &mut Markup, strip: &Strip, frame: Frame, x: Scale, mar
 fn row(out: &mut Markup, row: &Bars, top: f64, frame: Frame, x: Scale) {
     let Area { left, right, .. } = frame.area;
     let base = top + 0.5 * ROW + 0.36 * LABEL;
-    out.open(&format!(" class=\"bars\" data-name=\"{}\"", super::text::escaped(&row.name)));
+    out.open(&format!(
+        " class=\"bars\" data-name=\"{}\"",
+        super::text::escaped(&row.name)
+    ));
     out.title(&format!("{}: {}", row.name, row.note));
     let name = shortened(&row.name, LABEL, left - frame.edge - 1.5);
-    out.text([left - 1.2, base], &name, Type::of(LABEL).anchored(Anchor::End));
+    out.text(
+        [left - 1.2, base],
+        &name,
+        Type::of(LABEL).anchored(Anchor::End),
+    );
     let middle = top + 0.5 * ROW;
-    let rest = Stroke { colour: Colour::Grey, dash: Dash::Solid, width: 0.15 };
+    let rest = Stroke {
+        colour: Colour::Grey,
+        dash: Dash::Solid,
+        width: 0.15,
+    };
     out.line([left, middle], [right, middle], &stroked(rest));
     let mut joined: Vec<(f64, f64)> = Vec::new();
     for (from, to) in &row.bars {
@@ -52,7 +76,11 @@ fn row(out: &mut Markup, row: &Bars, top: f64, frame: Frame, x: Scale) {
         }
     }
     for (from, to) in joined {
-        out.rectangle([from, middle - 0.5 * BAR], [to - from, BAR], &filled(row.colour));
+        out.rectangle(
+            [from, middle - 0.5 * BAR],
+            [to - from, BAR],
+            &filled(row.colour),
+        );
     }
     let note = shortened(&row.note, LABEL, frame.margin - 1.5);
     out.text([right + 1.5, base], &note, Type::of(LABEL));

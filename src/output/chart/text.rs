@@ -132,7 +132,10 @@ mod tests {
 
     #[test]
     fn what_xml_reserves_is_escaped() {
-        assert_eq!(escaped("a<b & \"c\" 'd'>"), "a&lt;b &amp; &quot;c&quot; &#39;d&#39;&gt;");
+        assert_eq!(
+            escaped("a<b & \"c\" 'd'>"),
+            "a&lt;b &amp; &quot;c&quot; &#39;d&#39;&gt;"
+        );
         assert_eq!(escaped("x\u{1}\ny"), "x\u{fffd} y");
     }
 }

@@ -1,8 +1,10 @@
 //! The picture as a whole.
 
-use super::{Telling, combined_stroke, heads, own_flow, point_shape, rows, sentences, system_stroke};
+use super::{
+    Telling, combined_stroke, heads, own_flow, point_shape, rows, sentences, system_stroke,
+};
 use crate::output::chart::{
-    Align, Axis, Colour, Figure, KeyColumn, KeyEntry, Pane, Shape, Table,
+    Align, Axis, Colour, Column, Figure, KeyColumn, KeyEntry, Pane, Shape, Table,
 };
 use crate::output::grid::Cell;
 use crate::study::assessment::PREFERRED_REGION;
@@ -104,17 +106,26 @@ fn marks(telling: &Telling) -> KeyColumn {
         ..KeyEntry::default()
     };
     let mut entries = Vec::new();
-    if telling.curves.combined.iter().any(|curve| curve.preferred.is_some()) {
+    if telling
+        .curves
+        .combined
+        .iter()
+        .any(|curve| curve.preferred.is_some())
+    {
         entries.push(KeyEntry {
             underlaid: true,
-            text: format!("preferred region, {:.0} to {:.0} % of BEP", 100.0 * low, 100.0 * high),
+            text: format!(
+                "preferred: {:.0} to {:.0} % of BEP",
+                100.0 * low,
+                100.0 * high
+            ),
             ..KeyEntry::default()
         });
     }
     for (shape, text) in [
         (Shape::Disc, "operating point"),
         (Shape::Ring, "a pump outside it"),
-        (Shape::CrossedRing, "a pump off its curve, idle, NPSH short"),
+        (Shape::CrossedRing, "off its curve, idle, NPSH short"),
     ] {
         if occurs(shape) {
             entries.push(mark(shape, Colour::Ink, text));
@@ -142,17 +153,19 @@ fn table(telling: &Telling) -> Table {
     let shown: Vec<usize> = (0..grid.columns.len()).filter(filled).collect();
     let heading = |i: &usize| {
         let column = &grid.columns[*i];
-        let symbol = column.kind.map_or(column.unit.as_str(), |kind| units.unit(kind).symbol);
+        let symbol = column
+            .kind
+            .map_or(column.unit.as_str(), |kind| units.unit(kind).symbol);
         let align = if column.kind.is_some() || !symbol.is_empty() {
             Align::Right
         } else {
             Align::Left
         };
-        let words = match symbol {
-            "" => column.heading.clone(),
-            symbol => format!("{}, {symbol}", column.heading),
-        };
-        (words, align)
+        Column {
+            heading: column.heading.clone(),
+            unit: symbol.to_owned(),
+            align,
+        }
     };
     let cell = |row: &[Cell], i: &usize| match (&row[*i], grid.columns[*i].kind) {
         (Cell::Text(text), _) => text.clone(),

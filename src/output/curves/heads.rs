@@ -7,6 +7,8 @@ use crate::units::Kind;
 
 /// Height of the plot, mm.
 const HEIGHT: f64 = 96.0;
+/// So many points have room for their flows.
+const FEW: usize = 4;
 /// Room above the highest shut-off head.
 const ROOM: f64 = 1.07;
 /// A pump's own curve is drawn where its branch takes at least this share of its head somewhere.
@@ -44,7 +46,10 @@ fn range(telling: &Telling) -> (f64, f64) {
     let lowest = asked.map(|point| point.head).fold(0.0, f64::min);
     let given = curves.combined.iter().flat_map(|curve| &curve.points);
     let least = given.map(|point| point.head).fold(f64::INFINITY, f64::min);
-    let static_head = curves.systems.iter().filter_map(|system| system.points.first());
+    let static_head = curves
+        .systems
+        .iter()
+        .filter_map(|system| system.points.first());
     let least = static_head.map(|point| point.head).fold(least, f64::min);
     // Where nothing happens in the lower half it is left out.
     let low = if least > 0.5 * highest {
@@ -56,12 +61,19 @@ fn range(telling: &Telling) -> (f64, f64) {
 }
 
 fn coordinates(telling: &Telling, points: &[FlowHead]) -> Vec<[f64; 2]> {
-    points.iter().map(|point| [telling.flow(point.flow), telling.length(point.head)]).collect()
+    points
+        .iter()
+        .map(|point| [telling.flow(point.flow), telling.length(point.head)])
+        .collect()
 }
 
 fn said(telling: &Telling, name: &str, points: &[FlowHead], every: usize) -> Vec<String> {
     let say = |(i, point): (usize, &FlowHead)| match i % every {
-        0 => format!("{name}: {} at {}", head(telling, point.head), flow(telling, point.flow)),
+        0 => format!(
+            "{name}: {} at {}",
+            head(telling, point.head),
+            flow(telling, point.flow)
+        ),
         _ => String::new(),
     };
     points.iter().enumerate().map(say).collect()
@@ -86,7 +98,11 @@ fn system_curve(telling: &Telling, position: usize) -> Curve {
         letter => vec![format!("{letter}: {first}"), letter.to_owned()],
     };
     Curve {
-        data: vec![("kind", "system".to_owned()), ("case", words), ("tag", letter)],
+        data: vec![
+            ("kind", "system".to_owned()),
+            ("case", words),
+            ("tag", letter),
+        ],
         labels,
         stroke: system_stroke(position),
         points: coordinates(telling, &system.points),
@@ -120,7 +136,9 @@ fn combined(telling: &Telling, position: usize, plot: &mut Plot) {
         points: coordinates(telling, &curve.points),
         say: said(telling, &name, &curve.points, 4),
         name: name.clone(),
-        underlaid: curve.preferred.map(|(low, high)| (telling.flow(low), telling.flow(high))),
+        underlaid: curve
+            .preferred
+            .map(|(low, high)| (telling.flow(low), telling.flow(high))),
     });
     if !curve.beyond.is_empty() {
         let name = format!("{name}, past the end of a pump's curve");
@@ -136,7 +154,8 @@ fn combined(telling: &Telling, position: usize, plot: &mut Plot) {
             ..Curve::default()
         });
     }
-    plot.marks.extend(ends(telling, curve, &name, stroke.colour));
+    plot.marks
+        .extend(ends(telling, curve, &name, stroke.colour));
 }
 
 /// Shut-off and end of curve.
@@ -164,17 +183,28 @@ fn ends(telling: &Telling, curve: &CombinedCurve, name: &str, colour: Colour) ->
 }
 
 fn points<'t>(telling: &'t Telling) -> impl Iterator<Item = Mark> + 't {
-    telling.curves.points.iter().map(|point| {
+    let few = telling.curves.points.len() <= FEW;
+    telling.curves.points.iter().map(move |point| {
         let tag = telling.tag(point);
         let curve = &telling.curves.combined[point.combined];
         let set = telling.set(point.case, &curve.running);
-        let flows = point.pumps.iter().map(|(_, pump)| telling.units.number(Kind::Flow, pump.flow));
+        let flows = point
+            .pumps
+            .iter()
+            .map(|(_, pump)| telling.units.number(Kind::Flow, pump.flow));
         let each = crate::output::duty::listed(&flows.collect::<Vec<_>>());
         Mark {
             at: [telling.flow(point.at.flow), telling.length(point.at.head)],
             shape: point_shape(point),
             colour: system_stroke(point.system).colour,
-            labels: vec![tag.clone()],
+            labels: if few {
+                vec![
+                    format!("{tag}  {}", flow(telling, point.at.flow)),
+                    tag.clone(),
+                ]
+            } else {
+                vec![tag.clone()]
+            },
             modest: false,
             say: format!(
                 "{tag}  {}, {set}: {} at {} ({each} {} each)",
@@ -212,7 +242,12 @@ pub(super) fn own<'t>(telling: &'t Telling) -> Vec<&'t PumpCurve> {
         let highest = alone.points.first().map_or(0.0, |point| point.head);
         (own - end.head).abs() > VISIBLE * highest
     };
-    curves.pumps.iter().filter(|pump| pump.case == 0).filter(differs).collect()
+    curves
+        .pumps
+        .iter()
+        .filter(|pump| pump.case == 0)
+        .filter(differs)
+        .collect()
 }
 
 pub(super) const OWN: Stroke = Stroke {
@@ -226,10 +261,18 @@ fn own_curve(telling: &Telling, pump: &PumpCurve) -> Curve {
     let points: Vec<FlowHead> = pump
         .points
         .iter()
-        .filter_map(|point| Some(FlowHead { flow: point.flow, head: point.head? }))
+        .filter_map(|point| {
+            Some(FlowHead {
+                flow: point.flow,
+                head: point.head?,
+            })
+        })
         .collect();
     Curve {
-        data: vec![("kind", "pump".to_owned()), ("case", telling.case(pump.case).to_owned())],
+        data: vec![
+            ("kind", "pump".to_owned()),
+            ("case", telling.case(pump.case).to_owned()),
+        ],
         stroke: OWN,
         points: coordinates(telling, &points),
         say: said(telling, &name, &points, 6),

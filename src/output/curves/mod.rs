@@ -74,17 +74,22 @@ impl<'a> Telling<'a> {
         for pump in pumps {
             let line = network.line_of(*pump);
             let name = network.pump(*pump).name.as_str();
-            let bank = network.banks().iter().find(|bank| bank.lines.contains(&line));
+            let bank = network
+                .banks()
+                .iter()
+                .find(|bank| bank.lines.contains(&line));
             let group = bank.map_or(name, |bank| bank.name.as_str());
             match groups.iter_mut().find(|(known, _)| *known == group) {
                 Some((_, members)) => members.push(name),
                 None => groups.push((group, vec![name])),
             }
         }
-        let words = groups.iter().map(|(group, members)| match members.as_slice() {
-            [one] => (*one).to_owned(),
-            several => format!("{} \u{d7} {group}", several.len()),
-        });
+        let words = groups
+            .iter()
+            .map(|(group, members)| match members.as_slice() {
+                [one] => (*one).to_owned(),
+                several => format!("{} \u{d7} {group}", several.len()),
+            });
         words.collect::<Vec<_>>().join(" + ")
     }
 
@@ -107,7 +112,10 @@ impl<'a> Telling<'a> {
     fn pump(&self, curve: &PumpCurve) -> String {
         let network = self.network(curve.case);
         let whole = network.banks().iter().find(|bank| {
-            let of_bank = bank.lines.iter().flat_map(|line| network.line(*line).pumps());
+            let of_bank = bank
+                .lines
+                .iter()
+                .flat_map(|line| network.line(*line).pumps());
             of_bank.eq(curve.pumps.iter().copied())
         });
         let set = whole.map_or_else(
@@ -146,6 +154,20 @@ impl<'a> Telling<'a> {
         match self.curves.combined[combined].stage {
             None => (combined + 1).to_string(),
             Some(_) => String::new(),
+        }
+    }
+
+    /// The case of a pump's own curve by the number of the combined curve that it brings.
+    fn pump_in_short(&self, curve: &PumpCurve) -> String {
+        let set = self.set(curve.case, &curve.pumps);
+        let combined = self
+            .curves
+            .combined
+            .iter()
+            .position(|other| other.case == curve.case);
+        match combined.filter(|_| curve.case > 0) {
+            Some(combined) => format!("{set} ({})", self.number(combined)),
+            None => set,
         }
     }
 
@@ -226,7 +248,10 @@ impl Remark {
             Self::Idle
         } else if any(&|pump| pump.npsh_margin().is_some_and(|margin| margin < 0.0)) {
             Self::NpshShort
-        } else if point.shares().is_some_and(|(least, most)| least < low || most > high) {
+        } else if point
+            .shares()
+            .is_some_and(|(least, most)| least < low || most > high)
+        {
             Self::OutsidePreferred
         } else {
             Self::None
@@ -236,9 +261,9 @@ impl Remark {
     fn words(self) -> &'static str {
         match self {
             Self::PastCurve => "off the curve",
-            Self::Idle => "one gives nothing",
+            Self::Idle => "one idle",
             Self::NpshShort => "NPSH short",
-            Self::OutsidePreferred => "outside preferred",
+            Self::OutsidePreferred => "outside region",
             Self::None => "",
         }
     }

@@ -32,31 +32,38 @@ pub(super) fn plots(telling: &Telling) -> Vec<Plot> {
         height: 34.0,
         of: |pump| pump.npsh_required,
     };
-    let mut plots = vec![efficiency.plot(telling), power.plot(telling), npsh.plot(telling)];
+    let mut plots = vec![
+        efficiency.plot(telling),
+        power.plot(telling),
+        npsh.plot(telling),
+    ];
     ratings(telling, &mut plots[1]);
     suctions(telling, &mut plots[2]);
     plots.retain(|plot| !plot.curves.is_empty());
     if let Some(first) = plots.first_mut() {
         let (low, high) = PREFERRED_REGION;
-        let region = format!("{:.0} to {:.0} % of best efficiency", 100.0 * low, 100.0 * high);
-        let short = "preferred".to_owned();
-        let several = first.bands.len() > 1;
-        let pumps: Vec<&PumpCurve> = banded(telling).collect();
-        for (band, pump) in first.bands.iter_mut().zip(pumps) {
-            band.labels = if several {
-                vec![format!("preferred for {}", telling.pump(pump)), short.clone()]
-            } else {
-                vec![format!("preferred: {region}"), short.clone()]
-            };
+        let region = format!(
+            "{:.0} to {:.0} % of best efficiency",
+            100.0 * low,
+            100.0 * high
+        );
+        // Several would take each other's room; the key says what they are.
+        if let [band] = first.bands.as_mut_slice() {
+            band.labels = vec![format!("preferred: {region}"), "preferred".to_owned()];
         }
     }
     for plot in &mut plots {
         plot.y.range.1 = ROOM * highest(plot);
     }
-    if let Some(npsh) = plots.iter_mut().find(|plot| plot.y.label.starts_with("NPSH")) {
+    if let Some(npsh) = plots
+        .iter_mut()
+        .find(|plot| plot.y.label.starts_with("NPSH"))
+    {
         // Far above what is required nothing is to be seen.
         let required = telling.curves.pumps.iter().flat_map(|pump| &pump.points);
-        let most = required.filter_map(|point| point.npsh_required).fold(0.0, f64::max);
+        let most = required
+            .filter_map(|point| point.npsh_required)
+            .fold(0.0, f64::max);
         npsh.y.range.1 = npsh.y.range.1.min(telling.length(ENOUGH * most));
     }
     plots
@@ -91,7 +98,11 @@ impl Figure {
                 label: format!("{}, {}", self.name, telling.symbol(self.kind)),
                 ..Axis::default()
             },
-            marks: if curves.is_empty() { Vec::new() } else { self.marks(telling) },
+            marks: if curves.is_empty() {
+                Vec::new()
+            } else {
+                self.marks(telling)
+            },
             bands: banded(telling).map(|pump| band(telling, pump)).collect(),
             curves,
             rules: Vec::new(),
@@ -114,12 +125,16 @@ impl Figure {
             ),
             _ => String::new(),
         };
+        let short = telling.pump_in_short(pump);
         let labels = match self.kind {
-            Kind::Length => vec![format!("required, {words}"), "required".to_owned()],
-            _ => vec![words.clone()],
+            Kind::Length => vec![format!("required, {words}"), format!("required, {short}")],
+            _ => vec![words.clone(), short],
         };
         let place = |(flow, value): &(f64, f64)| {
-            [telling.flow(*flow), telling.units.from_si(self.kind, *value)]
+            [
+                telling.flow(*flow),
+                telling.units.from_si(self.kind, *value),
+            ]
         };
         Some(Curve {
             name: words.clone(),
@@ -144,7 +159,8 @@ impl Figure {
                     continue;
                 };
                 let near = |other: &(f64, f64)| {
-                    (other.0 - pump.flow).abs() < 1e-9 && (other.1 - value).abs() < 1e-9 * value.abs()
+                    (other.0 - pump.flow).abs() < 1e-9
+                        && (other.1 - value).abs() < 1e-9 * value.abs()
                 };
                 if known.iter().any(near) {
                     continue;
@@ -152,7 +168,10 @@ impl Figure {
                 known.push((pump.flow, value));
                 let tag = telling.tag(point);
                 marks.push(Mark {
-                    at: [telling.flow(pump.flow), telling.units.from_si(self.kind, value)],
+                    at: [
+                        telling.flow(pump.flow),
+                        telling.units.from_si(self.kind, value),
+                    ],
                     shape: small(point_shape(point)),
                     colour: system_stroke(point.system).colour,
                     modest: true,
@@ -213,7 +232,9 @@ fn band(telling: &Telling, pump: &PumpCurve) -> Band {
 pub(super) fn pump_stroke(telling: &Telling, position: usize) -> Stroke {
     let pumps = &telling.curves.pumps;
     let first = pumps[position].case == 0;
-    let before = pumps[..position].iter().filter(|other| (other.case == 0) == first);
+    let before = pumps[..position]
+        .iter()
+        .filter(|other| (other.case == 0) == first);
     Stroke {
         colour: if first { Colour::Blue } else { Colour::Purple },
         dash: dash(before.count() + usize::from(!first)),
@@ -241,7 +262,11 @@ fn ratings(telling: &Telling, plot: &mut Plot) {
         };
         plot.rules.push(Rule {
             at: telling.units.from_si(Kind::Power, rating),
-            stroke: Stroke { colour: Colour::Grey, dash: Dash::Short, width: 0.3 },
+            stroke: Stroke {
+                colour: Colour::Grey,
+                dash: Dash::Short,
+                width: 0.3,
+            },
             label: format!("{of}motor {}", telling.units.format(Kind::Power, rating)),
         });
     }
@@ -263,8 +288,7 @@ fn suctions(telling: &Telling, plot: &mut Plot) {
     let suctions = &telling.curves.suctions;
     for (position, suction) in suctions.iter().enumerate() {
         let words = available(telling, suction, suctions.len() > 1);
-        let place =
-            |(flow, head): &(f64, f64)| [telling.flow(*flow), telling.length(*head)];
+        let place = |(flow, head): &(f64, f64)| [telling.flow(*flow), telling.length(*head)];
         let say = |(i, (flow, head)): (usize, &(f64, f64))| match i % 4 {
             0 => format!(
                 "NPSH {words}: {} at {}",
@@ -289,7 +313,10 @@ fn suctions(telling: &Telling, plot: &mut Plot) {
 fn short(telling: &Telling, suction: &SuctionCurve) -> String {
     let case = suction.cases[0];
     let curves = telling.curves;
-    let system = curves.systems.iter().position(|system| system.cases[0] == case);
+    let system = curves
+        .systems
+        .iter()
+        .position(|system| system.cases[0] == case);
     let point = curves.points.iter().find(|point| point.case == case);
     let name = match (system, point) {
         (Some(system), _) if curves.systems.len() > 1 => telling.letter(system),
@@ -316,7 +343,11 @@ fn available(telling: &Telling, suction: &SuctionCurve, several: bool) -> String
 }
 
 fn highest(plot: &Plot) -> f64 {
-    let of_curves = plot.curves.iter().flat_map(|curve| &curve.points).map(|point| point[1]);
+    let of_curves = plot
+        .curves
+        .iter()
+        .flat_map(|curve| &curve.points)
+        .map(|point| point[1]);
     let of_rules = plot.rules.iter().map(|rule| rule.at);
     of_curves.chain(of_rules).fold(0.0, f64::max)
 }

@@ -143,7 +143,10 @@ pub fn rows(telling: &Telling) -> Grid {
         rows.extend(pump.points.iter().map(|point| {
             // its inlet on a bench tells nothing of the suction
             let npsh_available = None;
-            head.row(Figures { npsh_available, ..point.into() })
+            head.row(Figures {
+                npsh_available,
+                ..point.into()
+            })
         }));
     }
     for suction in &curves.suctions {
@@ -151,7 +154,9 @@ pub fn rows(telling: &Telling) -> Grid {
         let head = Head {
             what: "suction curve",
             case: telling.cases_for_programs(&suction.cases),
-            running: suction.beside.map_or_else(String::new, |pumps| pumps.to_string()),
+            running: suction
+                .beside
+                .map_or_else(String::new, |pumps| pumps.to_string()),
             pump: network.pump(suction.pump).name.clone(),
             ..Head::default()
         };
@@ -198,9 +203,23 @@ fn combined(telling: &Telling, position: usize, curve: &CombinedCurve, rows: &mu
         running: telling.names(curve.case, &curve.running),
         ..Head::default()
     };
-    let whole = if curve.stage.is_some() { "stage curve" } else { "combined curve" };
-    rows.extend(curve.points.iter().map(|point| head(whole).row(point.into())));
-    rows.extend(curve.beyond.iter().map(|point| head("past the end").row(point.into())));
+    let whole = if curve.stage.is_some() {
+        "stage curve"
+    } else {
+        "combined curve"
+    };
+    rows.extend(
+        curve
+            .points
+            .iter()
+            .map(|point| head(whole).row(point.into())),
+    );
+    rows.extend(
+        curve
+            .beyond
+            .iter()
+            .map(|point| head("past the end").row(point.into())),
+    );
     let mut mark = |what, point: Option<&FlowHead>| {
         rows.extend(point.map(|point| head(what).row(point.into())));
     };

@@ -15,13 +15,20 @@ fn listed(names: &[String]) -> String {
         [] => String::new(),
         [one] => one.clone(),
         [rest @ .., last] if names.len() <= NAMED => format!("{} and {last}", rest.join(", ")),
-        _ => format!("{} and {} more", names[..NAMED].join(", "), names.len() - NAMED),
+        _ => format!(
+            "{} and {} more",
+            names[..NAMED].join(", "),
+            names.len() - NAMED
+        ),
     }
 }
 
 fn nodes(telling: &Telling, ids: &[NodeId]) -> String {
     let network = telling.network(0);
-    let names: Vec<String> = ids.iter().map(|id| network.node(*id).name.clone()).collect();
+    let names: Vec<String> = ids
+        .iter()
+        .map(|id| network.node(*id).name.clone())
+        .collect();
     listed(&names)
 }
 
@@ -61,12 +68,18 @@ fn branching(telling: &Telling) -> Option<String> {
         .iter()
         .map(|branching| match branching {
             Branching::OtherPumps(pumps) => {
-                let names: Vec<String> =
-                    pumps.iter().map(|pump| network.pump(*pump).name.clone()).collect();
+                let names: Vec<String> = pumps
+                    .iter()
+                    .map(|pump| network.pump(*pump).name.clone())
+                    .collect();
                 format!("other pumps run ({})", listed(&names))
             }
-            Branching::Draws(ids) => format!("water is drawn or flows in at {}", nodes(telling, ids)),
-            Branching::SeveralEnds(ids) => format!("several heads are held ({})", nodes(telling, ids)),
+            Branching::Draws(ids) => {
+                format!("water is drawn or flows in at {}", nodes(telling, ids))
+            }
+            Branching::SeveralEnds(ids) => {
+                format!("several heads are held ({})", nodes(telling, ids))
+            }
             Branching::WayRound => "water can pass beside the pumps".to_owned(),
         })
         .collect();
@@ -103,7 +116,11 @@ pub(super) fn description(telling: &Telling) -> String {
     format!(
         "Head against flow of {}: {} and {}. Operating points: {}.",
         station(telling),
-        counted(curves.combined.len(), "curve of what pumps give", "curves of what pumps give"),
+        counted(
+            curves.combined.len(),
+            "curve of what pumps give",
+            "curves of what pumps give"
+        ),
         counted(curves.systems.len(), "system curve", "system curves"),
         points.join("; ")
     )
@@ -123,7 +140,10 @@ pub fn notes(telling: &Telling) -> Vec<String> {
     for idle in &curves.idle {
         let what = match &idle.error {
             None => "moves no water".to_owned(),
-            Some(error) => format!("does not balance: {}", error.message(telling.network(idle.case))),
+            Some(error) => format!(
+                "does not balance: {}",
+                error.message(telling.network(idle.case))
+            ),
         };
         notes.push(format!(
             "{} in the case \u{2018}{}\u{2019} {what}; no point is drawn.",
@@ -137,7 +157,10 @@ pub fn notes(telling: &Telling) -> Vec<String> {
         ));
     }
     if curves.combined.iter().any(|curve| !curve.beyond.is_empty()) {
-        notes.push("Dotted past the end of a pump's curve: a straight guess; no figure there is certain.".to_owned());
+        notes.push(
+            "Dotted past the end of a pump's curve: a straight guess; no figure there is certain."
+                .to_owned(),
+        );
     }
     let (low, high) = PREFERRED_REGION;
     notes.push(format!(

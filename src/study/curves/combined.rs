@@ -118,7 +118,12 @@ impl Rig<'_> {
             .unwrap_or(self.scale);
         let preferred = self.preferred(start, end);
         let mut marks = marks.to_vec();
-        marks.extend(preferred.map(|(low, high)| [low, high]).into_iter().flatten());
+        marks.extend(
+            preferred
+                .map(|(low, high)| [low, high])
+                .into_iter()
+                .flatten(),
+        );
         let along = |rig: &mut Self, start, end, steps| {
             let flows = flows(start, end, steps, &marks).into_iter();
             flows.filter_map(|flow| rig.point(flow)).collect()
@@ -145,7 +150,12 @@ impl Rig<'_> {
             .all(|(_, pump)| pump.share_of_bep.is_some())
             .then_some(())?;
         let share = |_: PumpId, pump: &PumpOperation| pump.share_of_bep.unwrap_or(0.0);
-        let enters = self.crossing(start, end, |pumps| -greatest(pumps, |id, p| -share(id, p)), low)?;
+        let enters = self.crossing(
+            start,
+            end,
+            |pumps| -greatest(pumps, |id, p| -share(id, p)),
+            low,
+        )?;
         let leaves = self
             .crossing(start, end, |pumps| greatest(pumps, share), high)
             .unwrap_or(end);

@@ -112,9 +112,18 @@ impl<'n> Scene<'n> {
     fn settle(&self, solver: &mut Solver<'_>, running: &[PumpId]) -> Result<Settled, SolveError> {
         let settings = self.settings(running);
         let solution = solver.balances(&settings)?.first;
-        let flow = self.stages[0].lines.iter().map(|line| solution.flow(*line)).sum();
+        let flow = self.stages[0]
+            .lines
+            .iter()
+            .map(|line| solution.flow(*line))
+            .sum();
         let head = |stage: &Stage| Some(solution.head(stage.to)? - solution.head(stage.from)?);
-        let does = |id: &PumpId| (*id, operation::pump(self.network, &settings, &solution, *id));
+        let does = |id: &PumpId| {
+            (
+                *id,
+                operation::pump(self.network, &settings, &solution, *id),
+            )
+        };
         let head: Option<f64> = self.stages.iter().map(head).sum();
         Ok(Settled {
             at: head.map(|head| FlowHead { flow, head }),
@@ -196,7 +205,10 @@ pub fn curves(cases: &[Case], bank: Option<&str>) -> Result<Curves, CurvesError>
         idle: found.idle,
     };
     let last = |points: &[FlowHead]| points.last().map_or(0.0, |point| point.flow);
-    let ends = curves.combined.iter().map(|curve| last(&curve.points).max(last(&curve.beyond)));
+    let ends = curves
+        .combined
+        .iter()
+        .map(|curve| last(&curve.points).max(last(&curve.beyond)));
     let largest = ROOM * ends.fold(0.0, f64::max);
     for (system, (_, cases)) in found.systems.into_iter().enumerate() {
         let points = curves.points.iter().filter(|point| point.system == system);
@@ -235,7 +247,11 @@ impl Found {
     ) -> Result<(), CurvesError> {
         let tried = flows(NEXT_TO_NONE * scale, scale, 6, &[]).into_iter();
         let signature: Signature = tried.map(|flow| asked.at(flow)).collect();
-        let system = match self.systems.iter().position(|(other, _)| alike(other, &signature)) {
+        let system = match self
+            .systems
+            .iter()
+            .position(|(other, _)| alike(other, &signature))
+        {
             Some(system) => {
                 self.systems[system].1.push(case);
                 system
@@ -255,16 +271,34 @@ impl Found {
             let Some(combined) = self.given_by(case, scene, &running, wanted)? else {
                 continue;
             };
-            let known = |point: &OperatingPoint| (point.system, point.combined) == (system, combined);
+            let known =
+                |point: &OperatingPoint| (point.system, point.combined) == (system, combined);
             if self.points.iter().any(known) {
                 continue;
             }
             match scene.settle(&mut solver, &running) {
-                Ok(Settled { at: Some(at), pumps }) if at.flow > STILL => {
-                    self.points.push(OperatingPoint { case, system, combined, at, pumps });
+                Ok(Settled {
+                    at: Some(at),
+                    pumps,
+                }) if at.flow > STILL => {
+                    self.points.push(OperatingPoint {
+                        case,
+                        system,
+                        combined,
+                        at,
+                        pumps,
+                    });
                 }
-                Ok(_) => self.idle.push(Idle { case, running, error: None }),
-                Err(error) => self.idle.push(Idle { case, running, error: Some(error) }),
+                Ok(_) => self.idle.push(Idle {
+                    case,
+                    running,
+                    error: None,
+                }),
+                Err(error) => self.idle.push(Idle {
+                    case,
+                    running,
+                    error: Some(error),
+                }),
             }
         }
         Ok(())
@@ -304,13 +338,20 @@ impl Found {
     fn combined_curves(&self, scenes: &[Scene]) -> Result<Vec<CombinedCurve>, CurvesError> {
         let mut curves = Vec::new();
         for (position, given) in self.given.iter().enumerate() {
-            let here = self.points.iter().filter(|point| point.combined == position);
+            let here = self
+                .points
+                .iter()
+                .filter(|point| point.combined == position);
             let marks: Vec<f64> = here.map(|point| point.at.flow).collect();
             let scene = &scenes[given.case];
             curves.push(combined(scene, given.case, &given.running, None, &marks)?);
         }
         let first = &scenes[0];
-        let alone = if first.stages.len() > 1 { first.stages.len() } else { 0 };
+        let alone = if first.stages.len() > 1 {
+            first.stages.len()
+        } else {
+            0
+        };
         for stage in 0..alone {
             let of_stage = first.stages[stage].pumps(first.network);
             let groups = sets::groups(first.network, first.network.settings(), &of_stage);
@@ -335,8 +376,11 @@ fn combined(
     let settings = scene.settings(running);
     let stages = stage.map_or(&scene.stages[..], |k| &scene.stages[k..=k]);
     let benches = Benches::new(scene.network, &settings, stages)?;
-    let Sampled { points, beyond, preferred } =
-        benches.rig().sample(scene.network, &settings, marks);
+    let Sampled {
+        points,
+        beyond,
+        preferred,
+    } = benches.rig().sample(scene.network, &settings, marks);
     Ok(CombinedCurve {
         case,
         running: running.to_vec(),

@@ -203,7 +203,11 @@ const NEXT_TO_NONE: f64 = 1e-6;
 fn flows(start: f64, end: f64, steps: usize, more: &[f64]) -> Vec<f64> {
     let step = |i: usize| start + (end - start) * i as f64 / steps as f64;
     let mut flows: Vec<f64> = (0..=steps).map(step).collect();
-    flows.extend(more.iter().copied().filter(|flow| (start..=end).contains(flow)));
+    flows.extend(
+        more.iter()
+            .copied()
+            .filter(|flow| (start..=end).contains(flow)),
+    );
     flows.sort_by(f64::total_cmp);
     flows.dedup();
     flows

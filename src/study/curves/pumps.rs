@@ -20,7 +20,12 @@ const ALIKE: f64 = 1e-6;
 fn alike(a: (&Network, PumpId), b: (&Network, PumpId)) -> bool {
     let state = |(network, id): (&Network, PumpId)| {
         let setting = network.settings().pump(id);
-        (setting.ratio(), setting.speed, setting.wear, network.fluid().density)
+        (
+            setting.ratio(),
+            setting.speed,
+            setting.wear,
+            network.fluid().density,
+        )
     };
     a.0.model(a.1).name == b.0.model(b.1).name && state(a) == state(b)
 }
@@ -35,7 +40,10 @@ pub(super) fn add(
     let network = scenes[case].network;
     for &pump in running {
         let fits = |curve: &&mut PumpCurve| {
-            alike((scenes[curve.case].network, curve.pumps[0]), (network, pump))
+            alike(
+                (scenes[curve.case].network, curve.pumps[0]),
+                (network, pump),
+            )
         };
         match curves.iter_mut().find(fits) {
             Some(curve) if curve.case == case && !curve.pumps.contains(&pump) => {
@@ -129,9 +137,8 @@ fn kinds_of(scene: &Scene, stage: &Stage) -> Vec<PumpId> {
 }
 
 fn same(a: &SuctionCurve, b: &SuctionCurve) -> bool {
-    let close = |(a, b): (&(f64, f64), &(f64, f64))| {
-        (a.0 - b.0).abs() < 1e-9 && (a.1 - b.1).abs() < ALIKE
-    };
+    let close =
+        |(a, b): (&(f64, f64), &(f64, f64))| (a.0 - b.0).abs() < 1e-9 && (a.1 - b.1).abs() < ALIKE;
     a.beside.is_some() == b.beside.is_some() && a.points.iter().zip(&b.points).all(close)
 }
 

@@ -30,7 +30,10 @@ impl Stage {
     pub fn name(&self, network: &Network) -> String {
         let mut names: Vec<&str> = Vec::new();
         for line in &self.lines {
-            let bank = network.banks().iter().find(|bank| bank.lines.contains(line));
+            let bank = network
+                .banks()
+                .iter()
+                .find(|bank| bank.lines.contains(line));
             let name = bank.map_or(&network.line(*line).name, |bank| &bank.name);
             if !names.contains(&name.as_str()) {
                 names.push(name);
@@ -86,16 +89,18 @@ pub(super) fn choose(network: &Network, bank: Option<&str>) -> Option<Vec<Stage>
             .find(|stage| stage.is_called(network, name))
             .map(|stage| vec![stage]);
     }
-    let most = all
-        .iter()
-        .map(|stage| stage.pumps(network).len())
-        .max()?;
+    let most = all.iter().map(|stage| stage.pumps(network).len()).max()?;
     let first = all
         .iter()
         .find(|stage| stage.pumps(network).len() == most)?
         .clone();
     let in_series = |stage: &Stage| *stage == first || carries_the_same(network, &first, stage);
-    Some(all.iter().filter(|stage| in_series(stage)).cloned().collect())
+    Some(
+        all.iter()
+            .filter(|stage| in_series(stage))
+            .cloned()
+            .collect(),
+    )
 }
 
 /// Whether all that flows through one stage flows through another: seen by trying two flows with every pump running.
@@ -131,19 +136,28 @@ pub enum Branching {
 }
 
 /// What makes the system of these stages branch; empty where one curve tells all.
-pub(super) fn branchings(network: &Network, settings: &Settings, stages: &[Stage]) -> Vec<Branching> {
+pub(super) fn branchings(
+    network: &Network,
+    settings: &Settings,
+    stages: &[Stage],
+) -> Vec<Branching> {
     let mut pumps = Vec::new();
     let mut draws = Vec::new();
     let mut several = Vec::new();
     let mut way_round = false;
     for (k, stage) in stages.iter().enumerate() {
-        let outer = |first: bool| if first { k == 0 } else { k + 1 == stages.len() };
-        for (header, is_outer) in [(stage.from, outer(true)), (stage.to, outer(false))] {
+        let outer = [k == 0, k + 1 == stages.len()];
+        for (header, opposite) in [(stage.from, stage.to), (stage.to, stage.from)] {
             let seen = reached(network, settings, stages, header);
-            way_round |= header == stage.from && seen.points.contains(&stage.to);
+            let joined = seen.points.contains(&opposite);
+            way_round |= joined;
             pumps.extend(seen.pumps);
-            draws.extend(seen.points.iter().filter(|node| settings.draw(**node) != 0.0));
-            if seen.ends.len() > usize::from(is_outer) {
+            let drawn = |node: &&NodeId| settings.draw(**node) != 0.0;
+            draws.extend(seen.points.iter().filter(drawn));
+            // An outer side has one end of its own, and sides that are joined see each other's.
+            let own = outer[usize::from(header == stage.to)];
+            let other = joined && outer[usize::from(opposite == stage.to)];
+            if seen.ends.len() > usize::from(own) + usize::from(other) {
                 several.extend(seen.ends);
             }
         }
