@@ -1,8 +1,8 @@
 //! A run as a picture: levels with their alarm, start and stop lines, flows, and who ran when.
 
 use super::chart::{
-    Align, Axis, AxisKind, Band, Bars, Colour, Curve, Dash, Figure, KeyColumn, KeyEntry, Pane,
-    Plot, Rule, Strip, Stroke, Table,
+    Align, Axis, AxisKind, Band, Bars, Colour, Column, Curve, Dash, Figure, KeyColumn, KeyEntry,
+    Pane, Plot, Rule, Strip, Stroke, Table,
 };
 use super::shift::Telling;
 use crate::network::NodeId;
@@ -158,29 +158,27 @@ pub fn figure(
                 starts: telling.shift.starts,
             },
         },
+        key: key(&panes),
         panes,
-        key: key(traces),
         table: Some(table(telling, run)),
         notes,
     }
 }
 
-const INFLOW: Stroke = Stroke {
-    colour: Colour::Green,
-    dash: Dash::Long,
-    width: 0.4,
-};
-const OUTFLOW: Stroke = Stroke {
-    colour: Colour::Ink,
-    dash: Dash::Solid,
-    width: 0.25,
-};
+const LEVEL: Stroke = stroke(Colour::Blue, Dash::Solid, 0.5);
+const INFLOW: Stroke = stroke(Colour::Green, Dash::Long, 0.4);
+const OUTFLOW: Stroke = stroke(Colour::Ink, Dash::Solid, 0.25);
+const START: Stroke = stroke(Colour::Green, Dash::Short, 0.3);
+const STOP: Stroke = stroke(Colour::Purple, Dash::DashDot, 0.3);
+const BRIM: Stroke = stroke(Colour::Vermillion, Dash::Solid, 0.3);
+const ALARM: Stroke = stroke(Colour::Vermillion, Dash::Long, 0.3);
+const TRIP: Stroke = stroke(Colour::Vermillion, Dash::Dots, 0.3);
 
-fn line(colour: Colour, dash: Dash) -> Stroke {
+const fn stroke(colour: Colour, dash: Dash, width: f64) -> Stroke {
     Stroke {
         colour,
         dash,
-        width: 0.3,
+        width,
     }
 }
 
@@ -216,11 +214,7 @@ fn levels(telling: &Telling, plan: &Plan, tank: &TankTrace) -> Plot {
         curves: vec![Curve {
             name: format!("level of {name}"),
             data: vec![("kind", "level".to_owned())],
-            stroke: Stroke {
-                colour: Colour::Blue,
-                dash: Dash::Solid,
-                width: 0.5,
-            },
+            stroke: LEVEL,
             say: points
                 .iter()
                 .enumerate()
@@ -271,26 +265,14 @@ fn rules(telling: &Telling, plan: &Plan, node: NodeId) -> Vec<Rule> {
     };
     let tank = telling.shift.tanks.iter().find(|tank| tank.node == node);
     if let Some(tank) = tank {
-        add(
-            tank.brim,
-            line(Colour::Vermillion, Dash::Solid),
-            "overflow".to_owned(),
-        );
+        add(tank.brim, BRIM, "overflow".to_owned());
         if let Some(alarm) = tank.alarm {
-            add(
-                alarm,
-                line(Colour::Vermillion, Dash::Long),
-                "alarm".to_owned(),
-            );
+            add(alarm, ALARM, "alarm".to_owned());
         }
     }
     let of_tank = |trip: &&Trip| trip.tank == node;
     for trip in plan.trips.iter().filter(of_tank) {
-        add(
-            trip.level,
-            line(Colour::Vermillion, Dash::Dots),
-            "trip".to_owned(),
-        );
+        add(trip.level, TRIP, "trip".to_owned());
     }
     for group in &plan.groups {
         let Call::Bands(bands) = &group.call else {
@@ -305,16 +287,8 @@ fn rules(telling: &Telling, plan: &Plan, node: NodeId) -> Vec<Rule> {
             } else {
                 String::new()
             };
-            add(
-                step.start,
-                line(Colour::Green, Dash::Short),
-                format!("start{number}"),
-            );
-            add(
-                step.stop,
-                line(Colour::Purple, Dash::DashDot),
-                format!("stop{number}"),
-            );
+            add(step.start, START, format!("start{number}"));
+            add(step.stop, STOP, format!("stop{number}"));
         }
     }
     lines
@@ -411,46 +385,35 @@ fn strip(telling: &Telling, run: &Run, traces: &Traces) -> Strip {
     }
 }
 
-fn key(traces: &Traces) -> Vec<KeyColumn> {
-    let entry = |stroke, text: &str| KeyEntry {
-        stroke: Some(stroke),
-        text: text.to_owned(),
-        ..KeyEntry::default()
-    };
-    if traces.tanks.is_empty() {
-        return Vec::new();
+/// The lines that occur.
+fn key(panes: &[Pane]) -> Vec<KeyColumn> {
+    let mut strokes: Vec<Stroke> = Vec::new();
+    for pane in panes {
+        if let Pane::Plot(plot) = pane {
+            strokes.extend(plot.curves.iter().map(|curve| curve.stroke));
+            strokes.extend(plot.rules.iter().map(|rule| rule.stroke));
+        }
     }
+    let column = |entries: &[(Stroke, &str)]| KeyColumn {
+        heading: String::new(),
+        entries: entries
+            .iter()
+            .filter(|(stroke, _)| strokes.contains(stroke))
+            .map(|(stroke, text)| KeyEntry {
+                stroke: Some(*stroke),
+                text: (*text).to_owned(),
+                ..KeyEntry::default()
+            })
+            .collect(),
+    };
     vec![
-        KeyColumn {
-            heading: "Tanks".to_owned(),
-            entries: vec![
-                entry(
-                    Stroke {
-                        colour: Colour::Blue,
-                        dash: Dash::Solid,
-                        width: 0.5,
-                    },
-                    "level",
-                ),
-                entry(INFLOW, "inflow"),
-                entry(OUTFLOW, "outflow"),
-            ],
-        },
-        KeyColumn {
-            heading: "Levels".to_owned(),
-            entries: vec![
-                entry(line(Colour::Green, Dash::Short), "start"),
-                entry(line(Colour::Purple, Dash::DashDot), "stop"),
-            ],
-        },
-        KeyColumn {
-            heading: String::new(),
-            entries: vec![
-                entry(line(Colour::Vermillion, Dash::Solid), "overflow"),
-                entry(line(Colour::Vermillion, Dash::Long), "alarm"),
-                entry(line(Colour::Vermillion, Dash::Dots), "low-level trip"),
-            ],
-        },
+        column(&[(LEVEL, "level"), (INFLOW, "inflow"), (OUTFLOW, "outflow")]),
+        column(&[(START, "start"), (STOP, "stop")]),
+        column(&[
+            (BRIM, "overflow"),
+            (ALARM, "alarm"),
+            (TRIP, "low-level trip"),
+        ]),
     ]
 }
 
@@ -474,16 +437,23 @@ fn table(telling: &Telling, run: &Run) -> Table {
             energy(pump.energy),
         ]
     });
-    let column = |name: String| (name, Align::Right);
+    let column = |heading: &str, unit: &str| Column {
+        heading: heading.to_owned(),
+        unit: unit.to_owned(),
+        align: Align::Right,
+    };
     Table {
         title: "Pumps".to_owned(),
         columns: vec![
-            ("pump".to_owned(), Align::Left),
-            column("starts".to_owned()),
-            column("most in an hour".to_owned()),
-            column("run, h".to_owned()),
-            column(format!("volume, {}", units.unit(Kind::Volume).symbol)),
-            column("energy, kWh".to_owned()),
+            Column {
+                align: Align::Left,
+                ..column("pump", "")
+            },
+            column("starts", ""),
+            column("most in an hour", ""),
+            column("run", "h"),
+            column("volume", units.unit(Kind::Volume).symbol),
+            column("energy", "kWh"),
         ],
         rows: rows.collect(),
     }

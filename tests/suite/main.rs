@@ -4,6 +4,7 @@ mod bad;
 mod banks;
 mod command;
 mod command_over_time;
+mod curves;
 mod description;
 mod effort;
 mod heads;

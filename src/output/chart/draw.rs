@@ -156,12 +156,13 @@ fn key(out: &mut Markup, columns: &[KeyColumn], y: f64) -> f64 {
     for (column, room) in columns.iter().zip(key_widths(&columns)) {
         let left = next;
         next += room;
-        let mut y = y + LABEL;
-        out.text(
-            [left, y],
-            &shortened(&column.heading, LABEL, room - 2.0),
-            Type::of(LABEL).bold(),
-        );
+        let mut y = if column.heading.is_empty() {
+            y
+        } else {
+            y + LABEL
+        };
+        let heading = shortened(&column.heading, LABEL, room - 2.0);
+        out.text([left, y], &heading, Type::of(LABEL).bold());
         for entry in &column.entries {
             y += LINE;
             self::entry(out, entry, [left, y], room - 2.0);
@@ -244,48 +245,59 @@ fn entry(out: &mut Markup, entry: &KeyEntry, [left, y]: [f64; 2], room: f64) {
 }
 
 fn table(out: &mut Markup, table: &Table, mut y: f64) -> f64 {
-    const GAP: f64 = 3.5;
-    let columns = table.columns.len();
-    let mut widths: Vec<f64> = table
-        .columns
-        .iter()
-        .map(|(name, _)| width(name, LABEL))
-        .collect();
-    for row in &table.rows {
-        for (wide, cell) in widths.iter_mut().zip(row) {
-            *wide = wide.max(width(cell, LABEL));
-        }
-    }
-    // Words give way where the table is too wide, the widest first.
-    let room = WIDTH - 2.0 * EDGE - GAP * columns.saturating_sub(1) as f64;
-    shrink(&mut widths, |i| table.columns[i].1 == Align::Left, room);
-    y += LABEL;
-    out.text([EDGE, y], &table.title, Type::of(LABEL).bold());
-    y += 1.2;
+    const GAP: f64 = 3.0;
+    const SIZES: [f64; 3] = [LABEL, 2.4, 2.25];
+    let gaps = GAP * table.columns.len().saturating_sub(1) as f64;
+    let room = WIDTH - 2.0 * EDGE - gaps;
+    let fits = |size: &f64| column_widths(table, *size).iter().sum::<f64>() <= room;
+    let size = SIZES.into_iter().find(fits).unwrap_or(SIZES[2]);
+    let mut widths = column_widths(table, size);
+    shrink(&mut widths, |i| table.columns[i].align == Align::Left, room);
     let line = |out: &mut Markup, y: f64, cells: &mut dyn Iterator<Item = &str>, colour: Colour| {
         let mut x = EDGE;
-        for ((cell, wide), (_, align)) in cells.zip(&widths).zip(&table.columns) {
-            let set = Type::of(LABEL).coloured(colour);
-            let cell = shortened(cell, LABEL, *wide + 0.01);
-            match align {
+        for ((cell, wide), column) in cells.zip(&widths).zip(&table.columns) {
+            let set = Type::of(size).coloured(colour);
+            let cell = shortened(cell, size, *wide + 0.01);
+            match column.align {
                 Align::Left => out.text([x, y], &cell, set),
                 Align::Right => out.text([x + wide, y], &cell, set.anchored(Anchor::End)),
             }
             x += wide + GAP;
         }
     };
-    y += 0.85 * LINE;
+    let columns = || table.columns.iter();
+    y += LABEL;
+    out.text([EDGE, y], &table.title, Type::of(LABEL).bold());
+    y += LINE + 1.0;
     line(
         out,
         y,
-        &mut table.columns.iter().map(|(name, _)| name.as_str()),
+        &mut columns().map(|column| column.heading.as_str()),
         Colour::Grey,
     );
+    y += 0.8 * LINE;
+    line(
+        out,
+        y,
+        &mut columns().map(|column| column.unit.as_str()),
+        Colour::Grey,
+    );
+    y += 0.2;
     for row in &table.rows {
         y += LINE;
         line(out, y, &mut row.iter().map(String::as_str), Colour::Ink);
     }
     y + BETWEEN
+}
+
+/// What the widest cell of each column needs.
+fn column_widths(table: &Table, size: f64) -> Vec<f64> {
+    let of_column = |(i, column): (usize, &super::Column)| {
+        let heading = width(&column.heading, size).max(width(&column.unit, size));
+        let cells = table.rows.iter().filter_map(|row| row.get(i));
+        cells.map(|cell| width(cell, size)).fold(heading, f64::max)
+    };
+    table.columns.iter().enumerate().map(of_column).collect()
 }
 
 fn notes(out: &mut Markup, notes: &[String], mut y: f64) -> f64 {

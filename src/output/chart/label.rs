@@ -27,6 +27,14 @@ impl Area {
             && other.bottom <= self.bottom
     }
 
+    fn widened(self, by: f64) -> Self {
+        Self {
+            left: self.left - by,
+            right: self.right + by,
+            ..self
+        }
+    }
+
     pub fn around(centre: [f64; 2], half: f64) -> Self {
         Self {
             left: centre[0] - half,
@@ -67,9 +75,14 @@ pub(super) struct Wanted<'a> {
     pub anchors: Vec<[f64; 2]>,
     /// How far from the place it has to stay, mm.
     pub gap: f64,
+    /// Direction in which it is tried first, radians from the right, clockwise.
+    pub towards: f64,
     /// Whether it is left out rather than led to.
     pub modest: bool,
 }
+
+/// To the upper right, as people write.
+pub(super) const UPPER_RIGHT: f64 = -std::f64::consts::FRAC_PI_4;
 
 /// Where a label has found its place.
 #[derive(Clone, Debug, PartialEq)]
@@ -86,6 +99,7 @@ pub(super) struct Placed {
 pub(super) struct Places {
     bounds: Area,
     taken: Vec<Area>,
+    marks: Vec<Area>,
     lines: Vec<[[f64; 2]; 2]>,
 }
 
@@ -95,26 +109,38 @@ const HEIGHT: f64 = 1.12;
 const RISE: f64 = 0.84;
 /// What a crossed line costs, against 1 per mm of distance.
 const CROSSING: f64 = 9.0;
+/// What a mark costs that a leader passes over.
+const PASSING: f64 = 1.5;
 /// What each further choice of text or place costs.
 const CHOICE: f64 = 0.35;
 const SHORTER: f64 = 6.0;
-/// Distances at which a label is led to, mm.
-const RINGS: [f64; 4] = [4.0, 7.0, 11.0, 16.0];
+/// Distances at which a label is led to, mm, and in how many directions.
+const RINGS: [(f64, usize); 6] = [
+    (4.0, 16),
+    (7.0, 16),
+    (11.0, 24),
+    (16.0, 32),
+    (22.0, 40),
+    (28.0, 48),
+];
+/// Left free to both sides of a label, mm.
+const APART: f64 = 0.6;
 /// A label that would cross more than this stands elsewhere.
-const WORST: f64 = 40.0;
+const WORST: f64 = 60.0;
 
 impl Places {
     pub fn new(bounds: Area) -> Self {
         Self {
             bounds,
             taken: Vec::new(),
+            marks: Vec::new(),
             lines: Vec::new(),
         }
     }
 
-    /// Nothing may stand here.
-    pub fn take(&mut self, area: Area) {
-        self.taken.push(area);
+    /// A mark stands here: no label may, but a leader can pass.
+    pub fn mark(&mut self, area: Area) {
+        self.marks.push(area);
     }
 
     /// A line that labels had better not cover.
@@ -135,7 +161,7 @@ impl Places {
             let size = [width(text, wanted.size), HEIGHT * wanted.size];
             let base = SHORTER * shorter as f64;
             for (choice, anchor) in wanted.anchors.iter().enumerate() {
-                let near = directions(8);
+                let near = directions(8, wanted.towards);
                 let cost = base + CHOICE * choice as f64;
                 for (turn, direction) in near.iter().enumerate() {
                     let area = beside(*anchor, *direction, wanted.gap, size);
@@ -147,8 +173,8 @@ impl Places {
                 if wanted.modest || choice % 2 == 1 {
                     continue;
                 }
-                for distance in RINGS {
-                    for direction in directions(16) {
+                for (distance, count) in RINGS {
+                    for direction in directions(count, wanted.towards) {
                         let area = beside(*anchor, direction, distance, size);
                         let Some(covers) = self.cost(&area) else {
                             continue;
@@ -161,7 +187,11 @@ impl Places {
                         {
                             continue;
                         }
-                        let cost = cost + 2.0 + distance + covers;
+                        let passed = self.marks.iter();
+                        let passed = passed
+                            .filter(|mark| crosses_apart(mark, leader, *anchor))
+                            .count();
+                        let cost = cost + 2.0 + distance + covers + PASSING * passed as f64;
                         consider(cost, placed(text, area, wanted.size, Some(leader)));
                     }
                 }
@@ -169,7 +199,7 @@ impl Places {
         }
         let limit = if wanted.modest { CROSSING } else { WORST };
         let (_, placed) = best.filter(|(cost, _)| *cost < limit)?;
-        self.taken.push(placed.area);
+        self.taken.push(placed.area.widened(APART));
         if let Some(leader) = placed.leader {
             self.lines.push(leader);
         }
@@ -178,7 +208,8 @@ impl Places {
 
     /// What standing there would cover; none where something stands.
     fn cost(&self, area: &Area) -> Option<f64> {
-        if !self.bounds.holds(area) || self.taken.iter().any(|other| other.overlaps(area)) {
+        let mut standing = self.taken.iter().chain(&self.marks);
+        if !self.bounds.holds(area) || standing.any(|other| other.overlaps(area)) {
             return None;
         }
         let crossed = self
@@ -206,10 +237,9 @@ fn placed(text: &str, area: Area, size: f64, leader: Option<[[f64; 2]; 2]>) -> P
     }
 }
 
-/// Directions all round, the one to the upper right first and then in turn to both sides of it, as people write.
-fn directions(count: usize) -> Vec<[f64; 2]> {
+/// Directions all round, `first` first and then in turn to both sides of it.
+fn directions(count: usize, first: f64) -> Vec<[f64; 2]> {
     let turn = std::f64::consts::TAU / count as f64;
-    let first = -std::f64::consts::FRAC_PI_4;
     (0..count)
         .map(|i| {
             let side = if i % 2 == 1 { 1.0 } else { -1.0 };
@@ -260,6 +290,7 @@ mod tests {
             size: 2.6,
             anchors: vec![at],
             gap: 1.0,
+            towards: UPPER_RIGHT,
             modest: false,
         }
     }

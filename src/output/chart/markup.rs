@@ -171,6 +171,9 @@ impl Markup {
     }
 
     fn text_with(&mut self, at: [f64; 2], text: &str, set: Type, more: &str) {
+        if text.is_empty() {
+            return;
+        }
         let anchor = match set.anchor {
             Anchor::Start => "",
             Anchor::Middle => " text-anchor=\"middle\"",

@@ -235,10 +235,21 @@ pub struct KeyEntry {
 pub struct Table {
     /// Heading.
     pub title: String,
-    /// Headings of the columns; figures are set to the right.
-    pub columns: Vec<(String, Align)>,
+    /// Its columns.
+    pub columns: Vec<Column>,
     /// As long as the columns.
     pub rows: Vec<Vec<String>>,
+}
+
+/// A column of a table.
+#[derive(Clone, Debug, Default)]
+pub struct Column {
+    /// Its name.
+    pub heading: String,
+    /// The unit of its figures, under the name.
+    pub unit: String,
+    /// How it is set.
+    pub align: Align,
 }
 
 /// How a column is set.

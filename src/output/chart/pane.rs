@@ -1,7 +1,7 @@
 //! A plot: bands, curves, level lines and marks over the common axis, with their labels.
 
 use super::ink::{Colour, Dash, Stroke};
-use super::label::{Area, Places, Wanted};
+use super::label::{Area, Places, UPPER_RIGHT, Wanted};
 use super::markup::{Anchor, Markup, Type, filled, number, stroked};
 use super::scale::{Scale, ticks, written};
 use super::{Curve, Mark, Plot, Shape};
@@ -86,7 +86,7 @@ impl Drawn<'_> {
             top,
             bottom,
         } = self.frame.area;
-        let rows = ((bottom - top) / 6.0).round().clamp(2.0, 10.0) as usize;
+        let rows = ((bottom - top) / 6.0).round().clamp(2.0, 12.0) as usize;
         let levels = ticks(self.plot.y.range, self.plot.y.kind, rows);
         let words = written(&levels, self.plot.y.kind);
         out.open(" class=\"axis\"");
@@ -216,7 +216,7 @@ impl Drawn<'_> {
         };
         let marks: Vec<&Mark> = self.plot.marks.iter().filter(in_sight).collect();
         for mark in &marks {
-            places.take(Area::around(self.place(mark.at), half(mark.shape)));
+            places.mark(Area::around(self.place(mark.at), half(mark.shape)));
         }
         for curve in &self.plot.curves {
             for piece in self.visible(&curve.points) {
@@ -234,6 +234,7 @@ impl Drawn<'_> {
                 size: LABEL,
                 anchors: vec![self.place(mark.at)],
                 gap: half(mark.shape) + 0.25,
+                towards: UPPER_RIGHT,
                 modest: mark.modest,
             };
             wanted.push((label, plain));
@@ -244,6 +245,7 @@ impl Drawn<'_> {
                 size: LABEL,
                 anchors: anchors(&self.visible(&curve.points)),
                 gap: 0.7,
+                towards: UPPER_RIGHT,
                 modest: false,
             };
             wanted.push((label, plain));
@@ -261,6 +263,7 @@ impl Drawn<'_> {
                 size: LABEL,
                 anchors: vec![[right + 0.3, y], [left + 1.0, y], [0.5 * (left + right), y]],
                 gap: 0.6,
+                towards: 0.0,
                 modest: false,
             };
             wanted.push((label, plain));
@@ -275,6 +278,7 @@ impl Drawn<'_> {
                 size: LABEL,
                 anchors: vec![[middle, top + 0.4], [middle, bottom - 0.8]],
                 gap: 0.3,
+                towards: UPPER_RIGHT,
                 modest: true,
             };
             wanted.push((label, plain.coloured(Colour::Grey)));

@@ -3,7 +3,9 @@
 use super::{
     Telling, combined_stroke, heads, own_flow, point_shape, rows, sentences, system_stroke,
 };
-use crate::output::chart::{Align, Axis, Colour, Figure, KeyColumn, KeyEntry, Pane, Shape, Table};
+use crate::output::chart::{
+    Align, Axis, Colour, Column, Figure, KeyColumn, KeyEntry, Pane, Shape, Table,
+};
 use crate::output::grid::Cell;
 use crate::study::curves::CombinedCurve;
 use crate::units::Kind;
@@ -116,7 +118,7 @@ fn marks(telling: &Telling) -> KeyColumn {
         entries.push(KeyEntry {
             underlaid: true,
             text: format!(
-                "preferred region, {:.0} to {:.0} % of BEP",
+                "preferred: {:.0} to {:.0} % of BEP",
                 100.0 * low,
                 100.0 * high
             ),
@@ -126,7 +128,7 @@ fn marks(telling: &Telling) -> KeyColumn {
     for (shape, text) in [
         (Shape::Disc, "operating point"),
         (Shape::Ring, "a pump outside it"),
-        (Shape::CrossedRing, "a pump off its curve, idle, NPSH short"),
+        (Shape::CrossedRing, "off its curve, idle, NPSH short"),
     ] {
         if occurs(shape) {
             entries.push(mark(shape, Colour::Ink, text));
@@ -162,11 +164,11 @@ fn table(telling: &Telling) -> Table {
         } else {
             Align::Left
         };
-        let words = match symbol {
-            "" => column.heading.clone(),
-            symbol => format!("{}, {symbol}", column.heading),
-        };
-        (words, align)
+        Column {
+            heading: column.heading.clone(),
+            unit: symbol.to_owned(),
+            align,
+        }
     };
     let cell = |row: &[Cell], i: &usize| match (&row[*i], grid.columns[*i].kind) {
         (Cell::Text(text), _) => text.clone(),

@@ -7,6 +7,8 @@ use crate::units::Kind;
 
 /// Height of the plot, mm.
 const HEIGHT: f64 = 96.0;
+/// So many points have room for their flows.
+const FEW: usize = 4;
 /// Room above the highest shut-off head.
 const ROOM: f64 = 1.07;
 /// A pump's own curve is drawn where its branch takes at least this share of its head somewhere.
@@ -181,7 +183,8 @@ fn ends(telling: &Telling, curve: &CombinedCurve, name: &str, colour: Colour) ->
 }
 
 fn points<'t>(telling: &'t Telling) -> impl Iterator<Item = Mark> + 't {
-    telling.curves.points.iter().map(|point| {
+    let few = telling.curves.points.len() <= FEW;
+    telling.curves.points.iter().map(move |point| {
         let tag = telling.tag(point);
         let curve = &telling.curves.combined[point.combined];
         let set = telling.set(point.case, &curve.running);
@@ -194,7 +197,14 @@ fn points<'t>(telling: &'t Telling) -> impl Iterator<Item = Mark> + 't {
             at: [telling.flow(point.at.flow), telling.length(point.at.head)],
             shape: point_shape(telling, point),
             colour: system_stroke(point.system).colour,
-            labels: vec![tag.clone()],
+            labels: if few {
+                vec![
+                    format!("{tag}  {}", flow(telling, point.at.flow)),
+                    tag.clone(),
+                ]
+            } else {
+                vec![tag.clone()]
+            },
             modest: false,
             say: format!(
                 "{tag}  {}, {set}: {} at {} ({each} {} each)",

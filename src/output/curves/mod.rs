@@ -161,6 +161,20 @@ impl<'a> Telling<'a> {
         }
     }
 
+    /// The case of a pump's own curve by the number of the combined curve that it brings.
+    fn pump_in_short(&self, curve: &PumpCurve) -> String {
+        let set = self.set(curve.case, &curve.pumps);
+        let combined = self
+            .curves
+            .combined
+            .iter()
+            .position(|other| other.case == curve.case);
+        match combined.filter(|_| curve.case > 0) {
+            Some(combined) => format!("{set} ({})", self.number(combined)),
+            None => set,
+        }
+    }
+
     fn tag(&self, point: &OperatingPoint) -> String {
         self.letter(point.system) + &self.number(point.combined)
     }
@@ -251,9 +265,9 @@ impl Remark {
     fn words(self) -> &'static str {
         match self {
             Self::PastCurve => "off the curve",
-            Self::Idle => "one gives nothing",
+            Self::Idle => "one idle",
             Self::NpshShort => "NPSH short",
-            Self::OutsidePreferred => "outside preferred",
+            Self::OutsidePreferred => "outside region",
             Self::None => "",
         }
     }

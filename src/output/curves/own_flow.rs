@@ -46,18 +46,9 @@ pub(super) fn plots(telling: &Telling) -> Vec<Plot> {
             100.0 * low,
             100.0 * high
         );
-        let short = "preferred".to_owned();
-        let several = first.bands.len() > 1;
-        let pumps: Vec<&PumpCurve> = banded(telling).collect();
-        for (band, pump) in first.bands.iter_mut().zip(pumps) {
-            band.labels = if several {
-                vec![
-                    format!("preferred for {}", telling.pump(pump)),
-                    short.clone(),
-                ]
-            } else {
-                vec![format!("preferred: {region}"), short.clone()]
-            };
+        // Several would take each other's room; the key says what they are.
+        if let [band] = first.bands.as_mut_slice() {
+            band.labels = vec![format!("preferred: {region}"), "preferred".to_owned()];
         }
     }
     for plot in &mut plots {
@@ -133,9 +124,10 @@ impl Figure {
             ),
             _ => String::new(),
         };
+        let short = telling.pump_in_short(pump);
         let labels = match self.kind {
-            Kind::Length => vec![format!("required, {words}"), "required".to_owned()],
-            _ => vec![words.clone()],
+            Kind::Length => vec![format!("required, {words}"), format!("required, {short}")],
+            _ => vec![words.clone(), short],
         };
         let place = |(flow, value): &(f64, f64)| {
             [

@@ -146,17 +146,18 @@ pub(super) fn branchings(
     let mut several = Vec::new();
     let mut way_round = false;
     for (k, stage) in stages.iter().enumerate() {
-        let outer = |first: bool| if first { k == 0 } else { k + 1 == stages.len() };
-        for (header, is_outer) in [(stage.from, outer(true)), (stage.to, outer(false))] {
+        let outer = [k == 0, k + 1 == stages.len()];
+        for (header, opposite) in [(stage.from, stage.to), (stage.to, stage.from)] {
             let seen = reached(network, settings, stages, header);
-            way_round |= header == stage.from && seen.points.contains(&stage.to);
+            let joined = seen.points.contains(&opposite);
+            way_round |= joined;
             pumps.extend(seen.pumps);
-            draws.extend(
-                seen.points
-                    .iter()
-                    .filter(|node| settings.draw(**node) != 0.0),
-            );
-            if seen.ends.len() > usize::from(is_outer) {
+            let drawn = |node: &&NodeId| settings.draw(**node) != 0.0;
+            draws.extend(seen.points.iter().filter(drawn));
+            // An outer side has one end of its own, and sides that are joined see each other's.
+            let own = outer[usize::from(header == stage.to)];
+            let other = joined && outer[usize::from(opposite == stage.to)];
+            if seen.ends.len() > usize::from(own) + usize::from(other) {
                 several.extend(seen.ends);
             }
         }
