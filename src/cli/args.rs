@@ -44,6 +44,14 @@ pub(crate) enum Command {
     /// Draw what the pumps give against what the system asks for: head, efficiency, power and NPSH over flow
     #[command(after_help = CURVES_EXAMPLES)]
     Curves(CurvesOptions),
+    /// Print the completions for a shell
+    #[command(
+        after_help = "Example:\n  dutybank completions bash > ~/.local/share/bash-completion/completions/dutybank"
+    )]
+    Completions(CompletionsOptions),
+    /// Print the manual page
+    #[command(after_help = "Example:\n  dutybank man | man -l -")]
+    Man,
 }
 
 const SOLVE_EXAMPLES: &str = "\
@@ -317,4 +325,10 @@ pub(crate) struct CurvesOptions {
     /// Write all plotted points to this CSV file; `-` is standard output
     #[arg(long, value_name = "FILE")]
     pub csv: Option<PathBuf>,
+}
+
+#[derive(Args)]
+pub(crate) struct CompletionsOptions {
+    /// Which shell
+    pub shell: clap_complete::Shell,
 }

@@ -6,6 +6,7 @@ mod compare;
 mod curves;
 mod duty;
 mod files;
+mod manual;
 mod report;
 mod shift;
 mod solve;
@@ -41,6 +42,8 @@ pub fn run() -> ExitCode {
         Command::Duty(options) => duty::duty(options),
         Command::Shift(options) => shift::shift(options),
         Command::Compare(options) => compare::compare(options),
+        Command::Completions(options) => manual::completions(options),
+        Command::Man => manual::man(),
         Command::Report(options) => report::report(options),
         Command::Tolerance(options) => tolerance::tolerance(options),
         Command::Curves(options) => curves::curves(options),

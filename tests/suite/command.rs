@@ -215,3 +215,24 @@ fn a_closed_pipe_is_a_quiet_success() {
     assert_eq!(output.status.code(), Some(0));
     assert!(output.stderr.is_empty());
 }
+
+#[test]
+fn shells_and_manual_readers_are_served() {
+    let run = |arguments: &[&str]| {
+        let output = Command::cargo_bin("dutybank")
+            .unwrap()
+            .args(arguments)
+            .output()
+            .unwrap();
+        assert!(output.status.success(), "{arguments:?}");
+        String::from_utf8(output.stdout).unwrap()
+    };
+    for shell in ["bash", "zsh", "fish", "elvish", "powershell"] {
+        assert!(
+            run(&["completions", shell]).contains("tolerance"),
+            "{shell}"
+        );
+    }
+    let manual = run(&["man"]);
+    assert!(manual.contains(".TH dutybank") && manual.contains("report"));
+}
