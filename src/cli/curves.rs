@@ -75,7 +75,7 @@ pub(super) fn curves(options: &CurvesOptions) -> Result<(), Failure> {
     if nothing_asked {
         out.push_str(&format!(
             "\nFor the picture: dutybank curves {} --svg curves.svg\n",
-            input.name
+            options.input.file.display()
         ));
     }
     print(&out)

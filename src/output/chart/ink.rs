@@ -50,7 +50,7 @@ impl Colour {
             Self::Purple => ("#cc79a7", "#dd9cc0"),
             Self::Orange => ("#e69f00", "#f0b840"),
             Self::Sky => ("#56b4e9", "#7cc8f2"),
-            Self::Grey => ("#7a8087", "#8f969d"),
+            Self::Grey => ("#686e75", "#9aa1a8"),
         }
     }
 

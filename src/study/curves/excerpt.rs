@@ -1,11 +1,18 @@
 //! A part of a network as a network of its own: the lines one wants to look at, with the nodes they join.
 
-use crate::network::{BuildError, LineId, Network, NetworkBuilder, NodeId, NodeKind, Settings};
+use crate::network::{
+    BuildError, End, LineId, Network, NetworkBuilder, NodeId, NodeKind, Settings,
+};
 use crate::part::{Part, PumpId};
 
 /// A copy of some lines of a network, and what its ids are there.
 pub(super) struct Excerpt {
     pub network: Network,
+    ids: Ids,
+}
+
+/// Ids in the copy by those in the whole.
+struct Ids {
     nodes: Vec<Option<NodeId>>,
     lines: Vec<Option<LineId>>,
     pumps: Vec<Option<PumpId>>,
@@ -54,8 +61,7 @@ impl Excerpt {
         for model in network.models() {
             builder.model(model.clone());
         }
-        let mut copy = Self {
-            network: network.clone(),
+        let mut ids = Ids {
             nodes: vec![None; network.nodes().len()],
             lines: vec![None; network.lines().len()],
             pumps: vec![None; network.pumps().len()],
@@ -63,7 +69,7 @@ impl Excerpt {
         for id in network.node_ids().filter(|id| touched[id.index()]) {
             let Stand { kind, level, draw } = stand(id);
             let new = builder.node(&network.node(id).name, kind, draw, level);
-            copy.nodes[id.index()] = Some(new);
+            ids.nodes[id.index()] = Some(new);
             if kind == network.node(id).kind {
                 let (gas, mode) = (settings.gas_pressure(id), settings.tank_mode(id));
                 builder.settings_mut().set_gas_pressure(new, gas);
@@ -71,13 +77,32 @@ impl Excerpt {
             }
         }
         for id in kept {
-            copy.line(network, settings, &mut builder, id);
+            ids.copy_line(network, settings, &mut builder, id);
         }
-        copy.network = builder.build()?;
-        Ok(copy)
+        Ok(Self {
+            network: builder.build()?,
+            ids,
+        })
     }
 
-    fn line(
+    /// The node in the copy.
+    pub fn node(&self, id: NodeId) -> Option<NodeId> {
+        self.ids.nodes[id.index()]
+    }
+
+    /// The pump in the copy.
+    pub fn pump(&self, id: PumpId) -> Option<PumpId> {
+        self.ids.pumps[id.index()]
+    }
+
+    /// The line in the copy.
+    pub fn line(&self, id: LineId) -> Option<LineId> {
+        self.ids.lines[id.index()]
+    }
+}
+
+impl Ids {
+    fn copy_line(
         &mut self,
         network: &Network,
         settings: &Settings,
@@ -85,7 +110,8 @@ impl Excerpt {
         id: LineId,
     ) {
         let line = network.line(id);
-        let (Some(from), Some(to)) = (self.node(line.from), self.node(line.to)) else {
+        let ends = [line.from, line.to].map(|end| self.nodes[end.index()]);
+        let [Some(from), Some(to)] = ends else {
             return;
         };
         let parts = line.parts.iter().map(|part| match part {
@@ -105,28 +131,10 @@ impl Excerpt {
         let copied = builder.settings_mut();
         copied.set_check(new, settings.check(id));
         copied.set_fouling(new, settings.fouling(id));
-        for (end, port) in [crate::network::End::From, crate::network::End::To]
-            .into_iter()
-            .zip(line.ports)
-        {
+        for (end, port) in [End::From, End::To].into_iter().zip(line.ports) {
             if let Some(height) = port {
                 builder.port(new, end, height);
             }
         }
-    }
-
-    /// The node in the copy.
-    pub fn node(&self, id: NodeId) -> Option<NodeId> {
-        self.nodes[id.index()]
-    }
-
-    /// The pump in the copy.
-    pub fn pump(&self, id: PumpId) -> Option<PumpId> {
-        self.pumps[id.index()]
-    }
-
-    /// The line in the copy.
-    pub fn line_of(&self, id: LineId) -> Option<LineId> {
-        self.lines[id.index()]
     }
 }

@@ -60,7 +60,7 @@ impl SystemSide {
         lines: &[LineId],
     ) -> Option<f64> {
         let solution = self.solve(solver, flow)?;
-        let carried = |id: &LineId| Some(solution.flow(self.excerpt.line_of(*id)?));
+        let carried = |id: &LineId| Some(solution.flow(self.excerpt.line(*id)?));
         lines.iter().map(carried).sum()
     }
 
