@@ -7,6 +7,7 @@ mod command_over_time;
 mod curves;
 mod description;
 mod effort;
+mod fluids;
 mod heads;
 mod judgement;
 mod laws;
